@@ -1,0 +1,1 @@
+"""The language's grammar and reference, as package data (`nodal.grammar`)."""

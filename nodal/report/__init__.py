@@ -1,0 +1,1 @@
+"""See DEVELOPERS.md, "How the code is laid out"."""
