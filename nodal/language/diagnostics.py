@@ -46,11 +46,20 @@ class Collector:
     found: list[Diagnostic] = field(default_factory=list)
     sources: dict[str, str] = field(default_factory=dict)
 
-    def add(self, code: str, span: Span | None, /, *, name: str = "", **arguments: Any) -> None:
+    def add(
+        self,
+        code: str,
+        span: Span | None,
+        /,
+        *,
+        name: str = "",
+        related: Iterable[tuple[Span, str]] = (),
+        **arguments: Any,
+    ) -> None:
         """Record a finding of the table: its severity, message and help are filled in with `arguments`."""
         from nodal.language.codes import make
 
-        self.found.append(make(code, span, name=name, arguments=arguments))
+        self.found.append(make(code, span, name=name, arguments=arguments, related=tuple(related)))
 
     @property
     def failed(self) -> bool:
