@@ -1,7 +1,7 @@
 """The figures of merit by name: what they are asked about, their unit and a line of description.
 
-A light table without numerics: the language checks `require` statements against it, `nodal.figures` holds a function
-for each row that is `available`, and the command line lists it. Adding a figure adds its row here.
+A light table without numerics: the language checks `require` statements against it, `nodal.figures` holds a
+function for each row that is `available`, and the command line lists it. Adding a figure adds its row here.
 """
 
 from __future__ import annotations
@@ -20,11 +20,11 @@ frequencies (`from F to F`, the sweep where left out), or an edge response (take
 class FigureName:
     """One row: a figure, its arguments, unit and meaning.
 
-    `required` arguments stand in this order; the `optional` ones follow in any order, each once at most, and are told
-    apart by form (a contact is a name, a frequency a quantity in hertz).
+    `required` arguments stand in this order; the `optional` ones follow in any order, each once at most, and
+    are told apart by form (a contact is a name, a frequency a quantity in hertz).
     `unit` is an SI symbol, "" for a ratio, or one of the words resolved by `unit_of`: "gain" and "reading".
-    `signed` figures are bounded in absolute value by `<=`. `decibels` says whether a limit in dB makes sense: the
-    figure's `Result.decibels` then holds the equal of its value.
+    `signed` figures are bounded in absolute value by `<=`. `decibels` says whether a limit in dB makes sense:
+    the figure's `Result.decibels` then holds the equal of its value.
     """
 
     name: str
@@ -35,6 +35,8 @@ class FigureName:
     description: str
     signed: bool = False
     decibels: bool = False
+    driven: bool = True
+    """Whether its value depends on which sources drive."""
     available: bool = True
 
 
@@ -54,21 +56,21 @@ TABLE: tuple[FigureName, ...] = (
     FigureName("peaking", "span", ("reading",), _NORMAL, "",
                "largest |gain| over its reference, less one", decibels=True),
     FigureName("impedance", "point", ("contact",), (), "Ω",
-               "magnitude of the chain's impedance seen at a contact"),
+               "magnitude of the chain's impedance seen at a contact", driven=False),
     FigureName("resistance", "point", ("contact",), (), "Ω",
-               "parallel equivalent resistance of the chain at a contact"),
+               "parallel equivalent resistance of the chain at a contact", driven=False),
     FigureName("capacitance", "point", ("contact",), (), "F",
-               "parallel equivalent capacitance of the chain at a contact", signed=True),
+               "parallel equivalent capacitance of the chain at a contact", signed=True, driven=False),
     FigureName("disturbance", "point", ("contact",), (), "",
                "|loaded / undisturbed| - 1 at a contact", signed=True, decibels=True),
     FigureName("error", "point", ("reading",), ("contact",), "",
                "|reading| / |undisturbed| - 1", signed=True, decibels=True),
     FigureName("rejection", "point", ("reading", "drive", "drive"), (), "",
-               "|gain| under the first drive over |gain| under the second", decibels=True),
+               "|gain| under the first drive over |gain| under the second", decibels=True, driven=False),
     FigureName("noise", "span", ("reading",), (), "reading",
-               "rms noise of a reading over the span"),
+               "rms noise of a reading over the span", driven=False),
     FigureName("noise_density", "point", ("reading",), (), "reading/√Hz",
-               "one-sided noise density of a reading"),
+               "one-sided noise density of a reading", driven=False),
     FigureName("rise", "edge", ("reading",), ("contact",), "s",
                "10 % to 90 % transition duration of a rising edge", available=False),
     FigureName("fall", "edge", ("reading",), ("contact",), "s",
@@ -100,7 +102,7 @@ def ratio_unit(over: str, under: str) -> str:
 
 
 def unit_of(row: FigureName, reading_unit: str = "", drive_unit: str = "", *, relative: bool = False) -> str:
-    """The unit of a figure's value. `relative`: a reference frequency is given, so that a gain is a pure ratio.
+    """The unit of a figure's value; `relative`: a reference frequency is given, so that a gain is a ratio.
 
     A gain normalised by a contact's voltage has `drive_unit` "V".
     """

@@ -79,6 +79,16 @@ class Response:
         """(H, dH/ds) of a reading; s in rad/s."""
         raise NotImplementedError
 
+    def loaded_derivative(
+        self, frequencies: ArrayLike, contact: str, drive: str | None = None
+    ) -> tuple[Curve, Curve]:
+        """(V, dV/ds) of the loaded voltage at a contact: the group delay from there to a reading needs it."""
+        raise NotImplementedError
+
+    def capacitance_at_rest(self, contact: str) -> float:
+        """F: the limit of Im(1/Z)/ω of the chain at a contact as ω goes to 0, that is dY/ds at s = 0."""
+        raise NotImplementedError
+
     def noise_density(self, frequencies: ArrayLike, reading: str) -> NDArray[np.float64]:
         """One-sided amplitude density at the displayed reading, reading's unit per √Hz."""
         raise NotImplementedError
