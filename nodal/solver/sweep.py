@@ -1,0 +1,319 @@
+"""Solve A(s) x = b at many points, for chosen outputs, with an error estimate for each.
+
+After every block the residual is formed term by term and the correction solved with the same factors: the relative
+correction of an output is its error estimate. A point that stays above TOLERANCE is refined further, planned again
+at its own frequency, solved with many digits; what is still above is reported with its estimate.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from nodal.solver.arithmetic import MpArithmetic
+from nodal.solver.exact import Exact
+from nodal.solver.matrix import System
+from nodal.solver.pattern import Complexes, Floats
+from nodal.solver.plan import Plan, Singular, exact_order, generic, make_plan
+
+Source = Mapping[int, Any]
+"""Right-hand side: {equation: number, or array over the points}."""
+Output = Mapping[int, float]
+"""Linear functional of the solution: {unknown: weight}."""
+
+TOLERANCE = 1e-11
+"""Largest relative correction of an output that is taken as settled."""
+
+_STEPS = 8
+_BLOCK_BYTES = 1 << 22
+_BLOCK_POINTS = (192, 1024)
+_DIGITS = (50, 100, 200)
+
+
+@dataclass(frozen=True, slots=True)
+class Solution:
+    """`values` and `error`: (n_sources, n_outputs, n_points), complex and the estimated relative error.
+
+    `error` is 0 for an output that is exactly zero and infinite where there is no value. `refined`: (n_points,), true
+    where one correction step was not enough; `replanned`, `extended`: how many points were planned again, and how
+    many were solved with many digits.
+    """
+
+    values: Complexes
+    error: Floats
+    refined: NDArray[np.bool_]
+    replanned: int = 0
+    extended: int = 0
+
+
+def solve(
+    system: System, s: ArrayLike, sources: Sequence[Source], outputs: Sequence[Output], plan: Plan | None = None
+) -> Solution:
+    """Outputs of A(s) x = b for every source at the points s (rad/s, complex, nonzero, shape (n_points,)).
+
+    Memory is bounded whatever the number of points: only the outputs are kept. `plan` may come from other
+    frequencies or other values of the same structure (ValueError if not). Raises Singular where the system has no
+    unique solution at any frequency; where only one point is without, its values and errors are infinite.
+    """
+    return _Run(system, _points(s), sources, outputs, plan, slopes=False).solution(0)
+
+
+def derivative(
+    system: System, s: ArrayLike, sources: Sequence[Source], outputs: Sequence[Output], plan: Plan | None = None
+) -> tuple[Solution, Solution]:
+    """(values, d/ds of the values) as `solve`, from dx/ds = -A⁻¹ (dA/ds) x; sources do not depend on s.
+
+    The error of a slope is relative to the larger of the slope and of |value/s|.
+    """
+    run = _Run(system, _points(s), sources, outputs, plan, slopes=True)
+    return run.solution(0), run.solution(1)
+
+
+def plan_for(system: System, s: ArrayLike) -> Plan:
+    """A plan from samples spread over the points s."""
+    points = _points(s)
+    magnitudes = np.abs(points)
+    low, high = magnitudes.min(), magnitudes.max()
+    levels = np.geomspace(low, high, 4) if high > low else [low]
+    nearest = {int(np.argmin(np.abs(np.log(magnitudes) - np.log(level)))) for level in levels}
+    return make_plan(system, points[sorted(nearest)])
+
+
+def _points(s: ArrayLike) -> Complexes:
+    points = np.atleast_1d(np.asarray(s, dtype=complex))
+    if points.ndim != 1:
+        raise ValueError("s must have shape (n_points,)")
+    if not np.isfinite(points).all() or (points == 0).any():
+        raise ValueError("s must be finite and not zero: zero frequency is a limit")
+    return points
+
+
+class _Run:
+    """One call of `solve` or `derivative`: its results, and the ladder of means that fills them."""
+
+    def __init__(
+        self, system: System, s: Complexes, sources: Sequence[Source], outputs: Sequence[Output], plan: Plan | None,
+        slopes: bool,
+    ) -> None:
+        self.s, self.sources, self.outputs, self.slopes = s, sources, outputs, slopes
+        shape = (2 if slopes else 1, len(sources), len(outputs), len(s))
+        self.values: Complexes = np.zeros(shape, dtype=complex)
+        self.error: Floats = np.full(shape, np.inf)
+        self.refined: NDArray[np.bool_] = np.zeros(len(s), dtype=bool)
+        self.replanned = self.extended = 0
+        if self.values.size == 0:
+            return
+        plan = plan_for(system, s) if plan is None else plan.fitted(system)
+        self._pass(plan, np.arange(len(s)), careful=slopes)
+        unsettled = self._unsettled()
+        self.refined[unsettled] = True
+        if len(unsettled) and not slopes:
+            self._pass(plan, unsettled, careful=True)
+            unsettled = self._unsettled()
+        self.replanned = len(unsettled)
+        for group in self._by_frequency(unsettled):
+            self._pass(plan_for(system, s[group]), group, careful=True)
+        unsettled = self._unsettled()
+        self.extended = len(unsettled)
+        for point in unsettled:
+            self._extend(plan, int(point))
+
+    def solution(self, which: int) -> Solution:
+        return Solution(self.values[which], self.error[which], self.refined, self.replanned, self.extended)
+
+    def _unsettled(self) -> NDArray[np.intp]:
+        return np.nonzero((self.error > TOLERANCE).any(axis=(0, 1, 2)))[0]
+
+    def _by_frequency(self, points: NDArray[np.intp]) -> list[NDArray[np.intp]]:
+        """Groups that a plan of their own may serve, none wider than two decades."""
+        decade = np.floor(np.log10(np.abs(self.s[points])) / 2)
+        return [points[decade == d] for d in np.unique(decade)]
+
+    def _source(self, source: Source, points: Any) -> dict[int, Any]:
+        return {k: v if np.ndim(v) == 0 else np.asarray(v)[points] for k, v in source.items()}
+
+    def _pass(self, plan: Plan, points: NDArray[np.intp], careful: bool) -> None:
+        order, pattern = plan.order, plan.pattern
+        rows = order.slots + 3 * len(pattern.g) + 4 * order.size
+        per_block = int(np.clip(_BLOCK_BYTES // (16 * rows), *_BLOCK_POINTS))
+        blocks = -(-len(points) // per_block)
+        # Divisions by zero and overflow end as infinite estimates, which send the point further down the ladder.
+        with np.errstate(all="ignore"):
+            for chosen in np.array_split(points, blocks):
+                block = _Block(plan, self.s[chosen])
+                for k, source in enumerate(self.sources):
+                    at = self._source(source, chosen)
+                    if careful:
+                        results = block.careful(block.right_side(at), self.outputs, self.slopes)
+                    else:
+                        results = [block.quick(at, self.outputs)]
+                    for which, (values, error) in enumerate(results):
+                        self._keep(which, k, chosen, values, error)
+
+    def _keep(self, which: int, source: int, points: NDArray[np.intp], values: Complexes, error: Floats) -> None:
+        error = np.where(np.isfinite(values) & np.isfinite(error), error, np.inf)
+        old = self.error[which, source][:, points]
+        better = (error < old) | np.isinf(old)
+        self.values[which, source][:, points] = np.where(better, values, self.values[which, source][:, points])
+        self.error[which, source][:, points] = np.where(better, error, old)
+
+    def _extend(self, plan: Plan, point: int) -> None:
+        for attempt, digits in enumerate(_DIGITS):
+            try:
+                exact = Exact(plan.pattern, complex(self.s[point]), MpArithmetic(digits), None if attempt else plan.order)
+            except Singular:
+                exact_order(plan.pattern, generic(self.s[point]))  # raises where no frequency has a solution
+                self.values[:, :, :, point] = np.inf
+                self.error[:, :, :, point] = np.inf
+                return
+            before = self.values[..., point].copy()
+            for k, source in enumerate(self.sources):
+                for which, (values, error) in enumerate(self._exact_results(exact, self._source(source, point), before[:, k])):
+                    self.values[which, k, :, point] = values
+                    self.error[which, k, :, point] = error
+            if (self.error[..., point] <= TOLERANCE).all():
+                return
+
+    def _exact_results(self, exact: Exact, source: Source, before: Complexes) -> list[tuple[list[complex], list[float]]]:
+        """(values, errors) of all outputs for one source, and those of the slopes where they are asked for."""
+        x, correction = exact.solve(source)
+        values = [exact.output(o, x) for o in self.outputs]
+        errors = [_relative(exact.output(o, correction), v, v) for o, v in zip(self.outputs, values, strict=True)]
+        results = [_rounded(values, errors, before[0])]
+        if self.slopes:
+            slopes = exact.pattern.exact_slopes(exact.s, exact.arithmetic)
+            b = exact.spread([-k * d for k, d in zip(slopes, exact.drops(x), strict=True)])
+            x, correction = exact.solve_all(b)
+            slope_values = [exact.output(o, x) for o in self.outputs]
+            errors = [
+                _relative(exact.output(o, correction), d, v / exact.s)
+                for o, d, v in zip(self.outputs, slope_values, values, strict=True)
+            ]
+            results.append(_rounded(slope_values, errors, before[1]))
+        return results
+
+
+def _relative(change: Any, value: Any, other: Any) -> float:
+    if change == 0:
+        return 0.0
+    scale = max(abs(value), abs(other))
+    return float(abs(change) / scale) if scale else float("inf")
+
+
+def _rounded(values: list[Any], errors: list[float], before: Complexes) -> tuple[list[complex], list[float]]:
+    """Doubles; an output that shrank with the digits it is computed with is rounding around an exact zero."""
+    result = [complex(v) for v in values]
+    for k, error in enumerate(errors):
+        if error > TOLERANCE and 0 < abs(result[k]) < 1e-20 * abs(before[k]):
+            result[k], errors[k] = 0j, 0.0
+    return result, errors
+
+
+class _Block:
+    """A(s) factored at a block of points."""
+
+    def __init__(self, plan: Plan, s: Complexes) -> None:
+        self.plan, self.s = plan, s
+        self.coefficients = plan.pattern.coefficients(s)
+        entries = _product(plan.scaled_entries, self.coefficients)
+        fill = np.zeros((plan.order.slots - len(entries), len(s)), dtype=complex)
+        self.w = [*entries, *fill]
+        self.spare: Complexes = np.empty(len(s), dtype=complex)
+        plan.kernel.factor(self.w, self.spare)
+
+    def quick(self, source: Source, outputs: Sequence[Output]) -> tuple[Complexes, Floats]:
+        """One solution and one correction, the latter for the outputs only."""
+        kernel, order = self.plan.kernel, self.plan.order
+        places = {int(order.place[k]): v * self.plan.row_scale[k] for k, v in source.items()}
+        x = np.zeros((order.size, len(self.s)), dtype=complex)
+        for place, value in places.items():
+            x[place] = value
+        kernel.solve(self.w, list(x), self.spare, kernel.forward_from(places))
+        correction = self._residual(x)
+        for place, value in places.items():
+            correction[place] += value
+        kernel.solve(
+            self.w, list(correction), self.spare, backward=kernel.backward_to(k for o in outputs for k in o)
+        )
+        change = self._outputs(outputs, correction)
+        values = self._outputs(outputs, x) + change
+        return values, _ratio(change, values)
+
+    def right_side(self, source: Source) -> Complexes:
+        """Scaled, and ordered as the kernel wants it."""
+        order = self.plan.order
+        b = np.zeros((order.size, len(self.s)), dtype=complex)
+        for k, value in source.items():
+            b[order.place[k]] = value * self.plan.row_scale[k]
+        return b
+
+    def careful(
+        self, b: Complexes, outputs: Sequence[Output], slopes: bool
+    ) -> list[tuple[Complexes, Floats]]:
+        """Corrections for as long as they help; (values, errors), and those of the slopes."""
+        x, small, values, change = self._refine(b, outputs, None)
+        results = [(values, _ratio(change, values))]
+        if slopes:
+            drops = _product(self.plan.scaled_taking, x) + _product(self.plan.scaled_taking, small)
+            drops *= self.plan.pattern.slopes(self.s)
+            floor = np.abs(values / self.s)
+            _, _, slope, change = self._refine(-_product(self.plan.scaled_giving, drops), outputs, floor)
+            results.append((slope, _ratio(change, np.maximum(np.abs(slope), floor))))
+        return results
+
+    def _refine(
+        self, b: Complexes, outputs: Sequence[Output], floor: Floats | None
+    ) -> tuple[Complexes, Complexes, Complexes, Complexes]:
+        """(x, small, outputs, their last change); x + small, unevaluated, holds differences of nearly equal unknowns."""
+        kernel = self.plan.kernel
+        x = b.copy()
+        kernel.solve(self.w, list(x), self.spare)
+        small = np.zeros_like(x)
+        error: Floats | None = None
+        for _ in range(_STEPS):
+            correction = b + self._residual(x, small)
+            kernel.solve(self.w, list(correction), self.spare)
+            small += correction
+            total = x + small
+            small -= total - x
+            x = total
+            change = self._outputs(outputs, correction)
+            values = self._outputs(outputs, x) + self._outputs(outputs, small)
+            last, error = error, _ratio(change, values if floor is None else np.maximum(np.abs(values), floor))
+            waiting = error > TOLERANCE
+            if not waiting.any() or (last is not None and not (error[waiting] < 0.25 * last[waiting]).any()):
+                break
+        return x, small, values, change
+
+    def _residual(self, *parts: Complexes) -> Complexes:
+        """-A (sum of parts), term by term."""
+        drops = _product(self.plan.scaled_taking, parts[0])
+        for part in parts[1:]:
+            drops += _product(self.plan.scaled_taking, part)
+        drops *= self.coefficients
+        return -_product(self.plan.scaled_giving, drops)
+
+    def _outputs(self, outputs: Sequence[Output], x: Complexes) -> Complexes:
+        result = np.zeros((len(outputs), x.shape[1]), dtype=complex)
+        for k, output in enumerate(outputs):
+            for unknown, weight in output.items():
+                result[k] += x[unknown] * (weight * self.plan.col_scale[unknown])
+        return result
+
+
+def _product(matrix: Any, x: Complexes) -> Complexes:
+    """Real sparse times complex dense, without making the sparse one complex."""
+    result: Complexes = (matrix @ x.view(float)).view(complex)
+    return result
+
+
+def _ratio(change: Complexes, values: Any) -> Floats:
+    """|change/values|, 0 where nothing changed, infinite where it is not a number."""
+    size = np.abs(change)
+    result: Floats = np.divide(size, np.abs(values), out=np.zeros(size.shape), where=size != 0)
+    result[np.isnan(result)] = np.inf
+    return result
