@@ -70,7 +70,8 @@ def test_all_crossings_of_a_sharp_resonance_are_listed():
         # (1 + a x)((1 - b x)² + b x/q²) - 2 = 0 with x = f²
         p = [b * b, b / mpmath.mpf(q) ** 2 - 2 * b, mpmath.mpf(1)]
         cubic = [a * p[0], a * p[1] + p[0], a * p[2] + p[1], p[2] - 2]
-        roots = sorted(mpmath.sqrt(r.real) for r in mpmath.polyroots(cubic[::-1], asc=True, maxsteps=500, extraprec=500))
+        squares = mpmath.polyroots(cubic[::-1], asc=True, maxsteps=500, extraprec=500)
+        roots = sorted(mpmath.sqrt(r.real) for r in squares)
     assert [c.direction for c in found.crossings] == ["down", "up", "down"]
     assert [c.frequency for c in found.crossings] == pytest.approx([float(r) for r in roots], rel=1e-12)
 

@@ -1,7 +1,9 @@
-"""The one table of diagnostics: code, severity, message, help, a longer explanation, and inputs that raise it.
+"""The one table of diagnostics: code, severity, message, help, a longer explanation, and inputs that
+raise it.
 
-It is used in production (`make`, `nodal explain`) and is itself the test: every example must raise its code. Its rows
-stand in three files: `text` (characters to statements), `meaning` (names, quantities), `topology` (connections).
+It is used in production (`make`, `nodal explain`) and is itself the test: every example must raise its
+code. Its rows stand in four files: `text` (characters to statements), `meaning` (names, quantities),
+`topology` (connections) and `call` (the command line).
 """
 
 from __future__ import annotations
@@ -9,6 +11,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
+from nodal.language.codes.call import CALL
 from nodal.language.codes.meaning import MEANING
 from nodal.language.codes.row import Code
 from nodal.language.codes.text import TEXT
@@ -18,7 +21,7 @@ from nodal.language.syntax import Span
 
 __all__ = ["BY_CODE", "TABLE", "Code", "make"]
 
-TABLE: tuple[Code, ...] = (*TEXT, *MEANING, *TOPOLOGY)
+TABLE: tuple[Code, ...] = (*TEXT, *MEANING, *TOPOLOGY, *CALL)
 
 BY_CODE: dict[str, Code] = {row.code: row for row in TABLE}
 
