@@ -11,22 +11,12 @@ from dataclasses import dataclass, field
 from typing import Literal, Protocol, TypeVar
 
 from nodal.parts.base import Part
+from nodal.place import Place as Place
 from nodal.values import Value
 
 GROUND = 0
 
 Side = Literal["test", "chain"]
-
-
-@dataclass(frozen=True, slots=True)
-class Place:
-    """Where in a file something was written (1-based line and column, end exclusive), for messages about it."""
-
-    path: str
-    line: int
-    column: int
-    end_line: int
-    end_column: int
 
 
 @dataclass(frozen=True, slots=True)

@@ -40,8 +40,10 @@ class Arithmetic(Protocol):
 class Function(Protocol):
     """Values of s that are no polynomial in s. Analytic for Re s > 0 and on the imaginary axis but at 0; real for real s."""
 
-    count: int
-    """How many outputs `evaluate` returns."""
+    @property
+    def count(self) -> int:
+        """How many outputs `evaluate` returns."""
+        ...
 
     def evaluate(self, s: Any, arithmetic: Arithmetic) -> Sequence[Any]: ...
 
