@@ -7,6 +7,7 @@ with long arrays.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Literal
@@ -14,7 +15,9 @@ from typing import Literal
 import numpy as np
 from numpy.typing import NDArray
 
-from nodal.network import Network
+from nodal.network import Network, SweepGrid
+from nodal.parts.amplifier import Amplifier
+from nodal.parts.cable import Cable
 from nodal.response import Response, Unavailable
 
 Floats = NDArray[np.float64]
@@ -44,18 +47,26 @@ def default_span(network: Network) -> Span:
     return network.grid.low, network.grid.high
 
 
+def sweep_points(grid: SweepGrid) -> Floats:
+    """The frequencies (Hz) of a sweep: `per_decade` a decade up from `low`, whole decades exact, `high` last.
+
+    ValueError where there would be more than `MOST_POINTS` or the span is empty.
+    """
+    if not 0.0 < grid.low <= grid.high or grid.per_decade <= 0.0:
+        raise ValueError("an empty sweep")
+    steps = math.log10(grid.high / grid.low) * grid.per_decade
+    if steps > MOST_POINTS:
+        raise ValueError("too many points")
+    whole = np.arange(int(steps * (1.0 - 1e-12)) + 1) / grid.per_decade
+    points: Floats = grid.low * 10.0**whole
+    return np.append(points[points < grid.high * (1.0 - 1e-12)], grid.high)
+
+
 def travel_time(network: Network) -> float:
     """Seconds along the longest cable or amplifier delay, 0 where there is none: it sets the finest
     ripple.
     """
-    longest = 0.0
-    for part in network.parts:
-        if part.kind == "cable":
-            per_metre = float(part.inductance) * float(part.capacitance)  # type: ignore[attr-defined]
-            longest = max(longest, float(part.length) * float(per_metre) ** 0.5)  # type: ignore[attr-defined]
-        elif part.kind == "amplifier":
-            longest = max(longest, float(part.delay))  # type: ignore[attr-defined]
-    return longest
+    return max((part.delay for part in network.parts if isinstance(part, Cable | Amplifier)), default=0.0)
 
 
 def grid(response: Response, span: Span) -> Floats:
