@@ -208,6 +208,8 @@ class Field(Node):
 
     name: Word
     values: tuple[tuple[Expression, ...], ...]
+    joins: tuple[str, ...] = ()
+    """The word between the two values of each tuple, "at" or "q"; "" where there is one value."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -393,3 +395,6 @@ class File(Node):
     path: str
     text: str = field(compare=False, repr=False)
     statements: tuple[Statement, ...] = ()
+    lost: frozenset[str] = field(default=frozenset(), compare=False)
+    """Every word of the statements that could not be read: names that may be declared there. Nothing should be
+    said against an unknown name among them."""
