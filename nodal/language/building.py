@@ -1,13 +1,14 @@
 """The rules of the grammar -> the tree: one method a rule, called by the parser as it reduces.
 
-Every child is a lexeme or something built before, and all lexemes are kept, so a node's span runs from its first
-child to its last. Nothing is judged here.
+Every child is a lexeme or something built before, and all lexemes are kept, so a node's span runs from its
+first child to its last. Nothing is judged here.
 """
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import replace
+from itertools import pairwise
 from typing import Any, Literal, cast
 
 from lark import Transformer
@@ -34,25 +35,26 @@ def _word(lexeme: Lexeme) -> s.Word:
     return s.Word(lexeme.text, span=lexeme.span)
 
 
-def _statements(children: Children) -> tuple[s.Statement, ...]:
+def _body(children: Children) -> tuple[Any, ...]:
+    """The statements or fields among the children of a block."""
     return tuple(child for child in children if not isinstance(child, Lexeme) and child is not None)
 
 
 def _lists(children: Children) -> dict[str, Group]:
     """The lists in the parentheses of an assembly or a use, by what stands before each."""
     lists: dict[str, Group] = {}
-    for before, child in zip(children, children[1:], strict=False):
+    for before, child in pairwise(children):
         if isinstance(child, Group):
             lists[before.text] = child
     return lists
 
 
 class Builder(Transformer[Any, Any]):
-    """Builds `nodal.language.syntax` nodes. A block whose header was made up by the parser's recovery is dropped:
-    its name is empty."""
+    """Builds `nodal.language.syntax` nodes. A block whose header was made up by the parser's recovery is
+    dropped: its name is empty."""
 
     def file(self, c: Children) -> tuple[s.Statement, ...]:
-        return _statements(c)
+        return _body(c)
 
     # Statements
 
@@ -69,7 +71,7 @@ class Builder(Transformer[Any, Any]):
         return s.Let(_word(c[1]), c[3], span=_span(c))
 
     def under_test(self, c: Children) -> s.UnderTest:
-        return s.UnderTest(_statements(c), span=_span(c))
+        return s.UnderTest(_body(c), span=_span(c))
 
     def source(self, c: Children) -> s.Source:
         relation: Literal["behind", "shunted by"] | None = None
@@ -85,7 +87,7 @@ class Builder(Transformer[Any, Any]):
         return s.Coupling(_word(c[1]), _word(c[3]), _word(c[5]), c[7], span=_span(c))
 
     def stock(self, c: Children) -> s.Stock | None:
-        return s.Stock(_word(c[1]), _statements(c), span=_span(c)) if c[1].text else None
+        return s.Stock(_word(c[1]), _body(c), span=_span(c)) if c[1].text else None
 
     def cable(self, c: Children) -> s.Cable:
         near, far = (_word(c[3]), _word(c[5])), (_word(c[7]), _word(c[9]))
@@ -95,7 +97,7 @@ class Builder(Transformer[Any, Any]):
         if not c[3].text:
             return None
         ins, outs = (_word(c[3]), _word(c[5])), (_word(c[7]), _word(c[9]))
-        return s.Amplifier(_word(c[1]), ins, outs, _statements(c[10:]), span=_span(c))
+        return s.Amplifier(_word(c[1]), ins, outs, _body(c[10:]), span=_span(c))
 
     def contact(self, c: Children) -> s.Contact:
         return s.Contact(_word(c[1]), (_word(c[3]), _word(c[5])), span=_span(c))
@@ -115,14 +117,15 @@ class Builder(Transformer[Any, Any]):
         left = lists["("]
         if not left[0].text:
             return None
-        ends = lists.get("to", Group()), lists.get("with", Group()), lists.get(";", Group())
+        right, shared, parameters = (tuple(lists.get(word, ())) for word in ("to", "with", ";"))
         body = next(i for i, child in enumerate(c) if isinstance(child, Lexeme) and child.text == "{")
-        return s.Assembly(_word(c[1]), tuple(left), *(tuple(end) for end in ends), _statements(c[body:]), span=_span(c))
+        statements = _body(c[body:])
+        return s.Assembly(_word(c[1]), tuple(left), right, shared, parameters, statements, span=_span(c))
 
     def use(self, c: Children) -> s.Use:
         lists = _lists(c)
-        ends = lists.get("to", Group()), lists.get("with", Group()), lists.get(";", Group())
-        return s.Use(_word(c[0]), tuple(lists["("]), *(tuple(end) for end in ends), span=_span(c))
+        right, shared, arguments = (tuple(lists.get(word, ())) for word in ("to", "with", ";"))
+        return s.Use(_word(c[0]), tuple(lists["("]), right, shared, arguments, span=_span(c))
 
     def nodes(self, c: Children) -> Group:
         return Group(_word(node) for node in c[::2])
@@ -147,7 +150,7 @@ class Builder(Transformer[Any, Any]):
         return s.Omit(_word(c[1]), span=_span(c))
 
     def case(self, c: Children) -> s.Case | None:
-        return s.Case(_word(c[1]), _statements(c), span=_span(c)) if c[1].text else None
+        return s.Case(_word(c[1]), _body(c), span=_span(c)) if c[1].text else None
 
     def sweep(self, c: Children) -> s.Sweep:
         return s.Sweep(c[1], c[3], c[5], span=_span(c))
@@ -189,8 +192,8 @@ class Builder(Transformer[Any, Any]):
     # Fields
 
     def stock_field(self, c: Children) -> s.Field:
-        return s.Field(_word(c[0]), tuple(item.values for item in c[1::2]), tuple(item.join for item in c[1::2]),
-                       span=_span(c))  # fmt: skip
+        values, joins = tuple(item.values for item in c[1::2]), tuple(item.join for item in c[1::2])
+        return s.Field(_word(c[0]), values, joins, span=_span(c))
 
     amplifier_field = stock_field
 

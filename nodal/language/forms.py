@@ -29,7 +29,8 @@ FORMS: dict[str, str] = {
     "require": "require NAME: FIGURE [with DRIVE] [at FREQUENCY | from FREQUENCY to FREQUENCY] <= VALUE",
     "allow": "allow CODE: NAME",
 }
-"""First word of each statement -> its form; capitals stand for what the user fills in, brackets for what may go."""
+"""First word of each statement -> its form; capitals stand for what the user fills in, brackets for what
+may go."""
 
 FIELD_FORMS: dict[str, str] = {
     "stock": "a field and its value, as in: capacitance 100 pF/m",

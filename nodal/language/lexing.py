@@ -1,8 +1,9 @@
 """Text -> lexemes: words, numbers with their units, texts and symbols, newlines where they end a statement.
 
-Everything that is wrong with characters, numbers, units and brackets is found here and reported at once. Where the
-meaning of a wrong spelling is plain, the lexeme that was meant goes on to the parser, so that one mistake is told once;
-where it is not, a lexeme of type BAD makes the parser give up the statement without a word.
+Everything that is wrong with characters, numbers, units and brackets is found here and reported at once.
+Where the meaning of a wrong spelling is plain, the lexeme that was meant goes on to the parser, so that one
+mistake is told once; where it is not, a lexeme of type BAD makes the parser give up the statement without a
+word.
 """
 
 from __future__ import annotations
@@ -21,25 +22,28 @@ MAX_DEPTH = 100
 
 WORD, DOTTED, NUMBER, TEXT, END, BAD = "WORD", "DOTTED", "NUMBER", "TEXT", "END", "BAD"
 SYMBOLS = {
-    "∥": "PARALLEL", "||": "PARALLEL", "--": "SERIES", "±": "PLUS_MINUS", "+-": "PLUS_MINUS", "<=": "AT_MOST",
-    ">=": "AT_LEAST", "=": "EQUAL", "+": "PLUS", "-": "MINUS", "*": "STAR", "/": "SLASH", "(": "LPAR", ")": "RPAR",
-    "{": "LBRACE", "}": "RBRACE", ",": "COMMA", ":": "COLON", ";": "SEMICOLON",
+    "∥": "PARALLEL", "||": "PARALLEL", "--": "SERIES", "±": "PLUS_MINUS", "+-": "PLUS_MINUS",
+    "<=": "AT_MOST", ">=": "AT_LEAST", "=": "EQUAL", "+": "PLUS", "-": "MINUS", "*": "STAR", "/": "SLASH",
+    "(": "LPAR", ")": "RPAR", "{": "LBRACE", "}": "RBRACE", ",": "COMMA", ":": "COLON", ";": "SEMICOLON",
 }  # fmt: skip
 """Spelling of a symbol -> its terminal in the grammar."""
 
 # After these a newline is no end of a statement.
 _GOES_ON = frozenset(SYMBOLS.values()) - {"RPAR", "LBRACE", "RBRACE", "SEMICOLON"}
 
-KEYWORDS = frozenset(
-    "nodal title include let under test source behind shunted by branch coupling with stock cable of amplifier contact "
-    "to reading times drive assembly place chain omit case sweep per decade edge step over top at temperature require "
-    "from allow trim rated and rms drift loss as k q".split()
-)
+KEYWORDS = frozenset((
+    "nodal", "title", "include", "let", "under", "test", "source", "behind", "shunted", "by",
+    "branch", "coupling", "with", "stock", "cable", "of", "amplifier", "contact", "to", "reading",
+    "times", "drive", "assembly", "place", "chain", "omit", "case", "sweep", "per", "decade",
+    "edge", "step", "over", "top", "at", "temperature", "require", "from", "allow", "trim", "rated",
+    "and", "rms", "drift", "loss", "as", "k", "q",
+))  # fmt: skip
 """Every word that is a keyword somewhere; a test compares it with the grammar."""
 
 
 class Lexeme:
-    """One token: `type` is a terminal of the grammar, WORD (a keyword or a NAME, as the parser can take) or BAD."""
+    """One token: `type` is a terminal of the grammar, WORD (a keyword or a NAME, as the parser can take)
+    or BAD."""
 
     __slots__ = ("span", "text", "type", "unit")
 
@@ -62,7 +66,8 @@ _MASTER = re.compile(
   | (?P<newline>\r\n|\n|\r)
   | (?P<word>[A-Za-z_][A-Za-z0-9_]*(?:\.[A-Za-z0-9_]+)*)
   | (?P<number>(?:[0-9]+(?:[.,'_][0-9]+)*\.?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?)
-    (?:(?P<gap>[ \t\u00a0\u202f]*)(?P<unit>[{_UNIT_LETTERS}]+(?:/[{_UNIT_LETTERS}]+)?)(?P<tail>[A-Za-z0-9_.]*))?
+    (?: (?P<gap>[ \t\u00a0\u202f]*) (?P<unit>[{_UNIT_LETTERS}]+(?:/[{_UNIT_LETTERS}]+)?)
+        (?P<tail>[A-Za-z0-9_.]*) )?
   | (?P<double>==|=<|=>|//)
   | (?P<symbol>\|\||--|\+-|<=|>=|[∥±=+\-*/(){{}},:;])
   | (?P<text>"[^"\r\n]*")
@@ -78,9 +83,10 @@ _LOOK_ALIKES = {
     "‖": "∥", "∣∣": "∥", "¦¦": "∥", "|": "∥", "∣": "∥", "ǁ": "∥", "∦": "∥", "//": "∥",
     "–": "--", "—": "--", "―": "--", "−": "-", "‐": "-", "‑": "-", "﹣": "-", "－": "-",
     "×": "*", "·": "*", "⋅": "*", "∙": "*", "•": "*", "∗": "*", "✕": "*", "÷": "/", "∕": "/", "⁄": "/",
-    "≤": "<=", "≦": "<=", "⩽": "<=", "≥": ">=", "≧": ">=", "⩾": ">=", "<": "<=", ">": ">=", "=<": "<=", "=>": ">=",
-    "==": "=", "∓": "±", "＝": "=", "＋": "+", "，": ",", "、": ",", "：": ":", "；": ";", "（": "(", "）": ")",
-    "［": "(", "］": ")", "[": "(", "]": ")", "｛": "{", "｝": "}", "＊": "*", "／": "/", "\u037e": ";",
+    "≤": "<=", "≦": "<=", "⩽": "<=", "≥": ">=", "≧": ">=", "⩾": ">=", "<": "<=", ">": ">=",
+    "=<": "<=", "=>": ">=", "==": "=", "∓": "±", "＝": "=", "＋": "+", "，": ",", "、": ",", "：": ":",
+    "；": ";", "（": "(", "）": ")", "［": "(", "］": ")", "[": "(", "]": ")", "｛": "{", "｝": "}",
+    "＊": "*", "／": "/", "\u037e": ";",
 }  # fmt: skip
 _QUOTES = "“”„‟«»‘’‚'`"
 _QUOTED = re.compile(rf"[{_QUOTES}]([^\r\n{_QUOTES}]*)[{_QUOTES}]")
@@ -100,10 +106,14 @@ _STATEMENT_LINE = re.compile(
     )""",
     re.VERBOSE,
 )
-FIRST_VERSION = re.compile(r"\ufeff?(?:\s|\#[^\r\n]*)*nodal[ \t]+([0-9]+)(?![\w.])")
+# One that can only stand outside all braces.
 _TOP_LINE = re.compile(
-    r'[ \t]*(?:case[ \t]+\w+[ \t]*\{|under[ \t]+test[ \t]*\{|assembly[ \t]+\w+[ \t]*\(|(?:title|include)[ \t]*")'
+    r"""[ \t]*(?:case[ \t]+\w+[ \t]*\{ | under[ \t]+test[ \t]*\{ | assembly[ \t]+\w+[ \t]*\(
+      | (?:title|include)[ \t]*")""",
+    re.VERBOSE,
 )
+FIRST_VERSION = re.compile(r"\ufeff?(?:\s|#[^\r\n]*)*nodal[ \t]+([0-9]+)(?![\w.])")
+"""The version at the head of a text."""
 
 
 def character_name(char: str) -> str:
@@ -143,11 +153,15 @@ class Lexer:
             kind = found.lastgroup
             start, position = position, found.end()
             if kind == "space":
-                if not text.isascii() and "\u200b" < max(found.group()):
+                if not text.isascii():
                     self._check_hidden(start, position)
             elif kind == "word":
                 word = found.group()
-                if position < end and not text[position].isascii() and _WORD_WITH_OTHERS.match(text, position):
+                if (
+                    position < end
+                    and not text[position].isascii()
+                    and _WORD_WITH_OTHERS.match(text, position)
+                ):
                     position = self._strange_name(start)
                 else:
                     emit(Lexeme(DOTTED if "." in word else WORD, word, Span(path, start, position)))
@@ -179,7 +193,9 @@ class Lexer:
         self.collector.add(code, Span(self.path, start, end), related=related, **arguments)
 
     def _emit(self, type: str, start: int, end: int, text: str | None = None) -> None:
-        self.lexemes.append(Lexeme(type, self.text[start:end] if text is None else text, Span(self.path, start, end)))
+        self.lexemes.append(
+            Lexeme(type, self.text[start:end] if text is None else text, Span(self.path, start, end))
+        )
 
     # Brackets and newlines
 
@@ -237,7 +253,8 @@ class Lexer:
                 self._emit(END, start, end)
 
     def _close_braces(self, start: int, end: int) -> None:
-        """Give up a brace where the next line cannot stand inside it and the file has too few closing ones."""
+        """Give up a brace where the next line cannot stand inside it and the file has too few closing
+        ones."""
         if self._braces_match or not self._open:
             return
         at_top = _TOP_LINE.match(self.text, end)
@@ -288,8 +305,9 @@ class Lexer:
                 self._report("look-alike", at, at + 1, found=char, what=character_name(char), fix=f'"{fix}"')
             elif verdict == "letters" and (fixed := _letter_for_point(digits, unit, tail)):
                 end = found.end()
-                self._report("number-form", start, end, found=text[start:end], why="has a letter for a point",
-                             fix=f"write {fixed[0]} {fixed[1]}{self._or_name()}")  # fmt: skip
+                fix = f"write {fixed[0]} {fixed[1]}{self._or_name()}"
+                why = "has a letter for a point"
+                self._report("number-form", start, end, found=text[start:end], why=why, fix=fix)
                 self.lexemes.append(Lexeme(NUMBER, fixed[0], Span(self.path, start, end), fixed[1]))
                 return end
             elif verdict in ("prefix", "unknown", "letters"):
@@ -311,7 +329,8 @@ class Lexer:
         return ""
 
     def _bad_digits(self, start: int, end: int, digits: str, unit: str) -> str | None:
-        """Report a number that is not written as numbers are; returns how it should be, if that can be told."""
+        """Report a number that is not written as numbers are; returns how it should be, if that can be
+        told."""
         text = self.text
         written = text[start:end]
         mantissa = re.split("[eE]", digits, maxsplit=1)[0]
@@ -344,8 +363,9 @@ class Lexer:
         """A number that runs into a word: 2_x, 3ж."""
         word = re.compile(r"[\w.]+").match(self.text, start)
         end = max(end, word.end() if word else end)
-        self._report("number-form", start, end, found=self.text[start:end], why="is neither a number nor a name",
-                     fix="a number is digits, at most one point, then a unit; a name begins with a letter")  # fmt: skip
+        why = "is neither a number nor a name"
+        fix = "a number is digits, at most one point, then a unit; a name begins with a letter"
+        self._report("number-form", start, end, found=self.text[start:end], why=why, fix=fix)
         self._emit(BAD, start, end)
         return end
 
@@ -391,8 +411,10 @@ class Lexer:
             self._report_hidden(hidden.start(), hidden.end())
             return hidden.end()
         if space := _OTHER_SPACE.match(text, start):
-            self._report("look-alike", start, space.end(), found=f"U+{ord(char):04X}", what=character_name(char),
-                         fix="a space")  # fmt: skip
+            code = f"U+{ord(char):04X}"
+            self._report(
+                "look-alike", start, space.end(), found=code, what=character_name(char), fix="a space"
+            )
             return space.end()
         double = _DOUBLE.match(text, start)
         spelling = double.group() if double else char
@@ -406,7 +428,9 @@ class Lexer:
             return self._strange_name(start)
         fix = unicodedata.normalize("NFKC", char)
         if fix != char and fix.isascii() and fix.isprintable() and fix.strip():
-            self._report("look-alike", start, start + 1, found=char, what=character_name(char), fix=f'"{fix}"')
+            self._report(
+                "look-alike", start, start + 1, found=char, what=character_name(char), fix=f'"{fix}"'
+            )
         else:
             shown = char if char.isprintable() else f"U+{ord(char):04X}"
             self._report("unknown-character", start, start + 1, found=shown, what=character_name(char))
@@ -423,7 +447,9 @@ class Lexer:
         assert word is not None  # called where a letter stands
         name = word.group().rstrip(".")
         end = start + len(name)
-        plain = unicodedata.normalize("NFKD", name.replace("ß", "ss")).translate({0x3BC: "u", 0xB5: "u", 0x3A9: "Ohm"})
+        plain = unicodedata.normalize("NFKD", name.replace("ß", "ss")).translate(
+            {0x3BC: "u", 0xB5: "u", 0x3A9: "Ohm"}
+        )
         plain = "".join(char for char in plain if char.isascii())
         wrong = next(char for char in name if not char.isascii())
         fix = f"write {plain}" if plain and plain[0].isalpha() and len(plain) >= len(name) else (
@@ -450,8 +476,8 @@ def _called(spelling: str) -> str:
 def _read_unit(unit: str, spaced: bool, tail: str) -> tuple[str, str, int]:
     """What the letters after a number are: (verdict, canonical unit, how many of them belong to the unit).
 
-    Verdicts: "unit", "none" (a word of the grammar follows), "look-alike" (a unit but for one character), "prefix"
-    (a prefix alone), "letters" (digits go on behind them, as in 4k7), "unknown".
+    Verdicts: "unit", "none" (a word of the grammar follows), "look-alike" (a unit but for one character),
+    "prefix" (a prefix alone), "letters" (digits go on behind them, as in 4k7), "unknown".
     """
     base = unit.partition("/")[0]
     if spaced and base in _FOLLOWING and not tail:

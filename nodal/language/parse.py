@@ -1,7 +1,8 @@
 """Text -> tree: the grammar's LALR(1) tables, fed lexeme by lexeme, with one error a statement.
 
-A word becomes a keyword only where the parser can take that keyword next. On an error the statement is reported and
-given up: the parser goes back to where it began and resumes behind it, at the same depth of braces.
+A word becomes a keyword only where the parser can take that keyword next. On an error the statement is
+reported and given up: the parser goes back to where it began and resumes behind it, at the same depth of
+braces.
 """
 
 from __future__ import annotations
@@ -13,11 +14,10 @@ import sys
 from collections.abc import Iterable, Iterator
 from dataclasses import replace
 from functools import lru_cache
-from typing import Any, cast
+from typing import Any, Protocol, cast
 
 from lark import Lark, Token, UnexpectedToken
 from lark.lexer import Lexer as LarkLexer
-from lark.parsers.lalr_interactive_parser import InteractiveParser
 
 from nodal.language import lexing
 from nodal.language import syntax as s
@@ -32,10 +32,12 @@ VERSION = "1"
 
 
 def parse(text: str, path: str, collector: Collector) -> s.File:
-    """The tree of `text`; what is wrong with it goes to `collector`, and the statements concerned are left out.
+    """The tree of `text`; what is wrong with it goes to `collector`, and the statements concerned are left
+    out.
 
-    Offsets in spans count characters (code points) of `text` as given. The tree holds whatever could be read, so that
-    the meaning of the rest can be checked too; `File.lost` says which names may be missing for that reason.
+    Offsets in spans count characters (code points) of `text` as given. The tree holds whatever could be read,
+    so that the meaning of the rest can be checked too; `File.lost` says which names may be missing for that
+    reason.
     """
     collector.sources[path] = text
     whole = Span(path, 0, len(text))
@@ -63,7 +65,8 @@ def parse(text: str, path: str, collector: Collector) -> s.File:
 
 
 def read(path: str, collector: Collector) -> str | None:
-    """The text of a file, `-` for standard input; None where it cannot be had, with the reason in `collector`."""
+    """The text of a file, `-` for standard input; None where it cannot be had, with the reason in
+    `collector`."""
     try:
         if path == "-":
             data = sys.stdin.buffer.read(MAX_BYTES + 1)
@@ -107,6 +110,23 @@ def _version_ahead(text: str) -> tuple[str, tuple[int, int]] | None:
 
 
 # The parser's tables
+
+
+class _State(Protocol):
+    state_stack: list[Any]
+    value_stack: list[Any]
+
+
+class _Parser(Protocol):
+    """What is used of the library's parser that is fed token by token."""
+
+    parser_state: _State
+
+    def feed_token(self, token: Lexeme) -> Any: ...
+
+    def choices(self) -> dict[str, Any]: ...
+
+    def accepts(self) -> set[str]: ...
 
 
 class _NoLexer(LarkLexer):
@@ -162,7 +182,7 @@ class _Run:
         self.lexer = lexer
         self.lexemes = lexer.lexemes
         self.collector = collector
-        self.parser: InteractiveParser = grammar().parse_interactive("")
+        self.parser = cast(_Parser, grammar().parse_interactive(""))
         self.keywords = keyword_types()
         self.lost: set[str] = set()
         self.blocks: list[str] = []
@@ -187,7 +207,7 @@ class _Run:
                 at += 1
                 continue
             try:
-                feed(cast(Token, lexeme))
+                feed(lexeme)
             except UnexpectedToken:
                 at, fresh = self._recover(at, fresh)
                 continue
@@ -210,24 +230,26 @@ class _Run:
     def _end(self, fresh: bool) -> tuple[s.Statement, ...]:
         end = Lexeme("$END", "", Span(self.lexer.path, len(self.lexer.text), len(self.lexer.text)))
         try:
-            statements = self.parser.feed_token(cast(Token, end))
+            statements = self.parser.feed_token(end)
         except UnexpectedToken:
             self.lexemes.append(end)
             self._recover(len(self.lexemes) - 1, fresh)
-            statements = self.parser.feed_token(cast(Token, end))
+            statements = self.parser.feed_token(end)
         return cast("tuple[s.Statement, ...]", statements)
 
     # Errors
 
     def _recover(self, at: int, fresh: bool) -> tuple[int, bool]:
-        """Report the statement that cannot go on at lexeme `at`; returns where to resume, and whether afresh."""
+        """Report the statement that cannot go on at lexeme `at`; returns where to resume, and whether
+        afresh."""
         lexemes = self.lexemes
         begin = at if fresh else self._begin
         stop = at
         while stop < len(lexemes) and lexemes[stop].type not in ("END", "LBRACE", "RBRACE", "$END"):
             stop += 1
         expected = self.parser.accepts()
-        # At the last line of a block, and before "}", what was fed may have been reduced already: ask the exact set.
+        # At the last line of a block, and before "}", what was fed may have been reduced already: ask the
+        # exact set.
         complete = not fresh and "END" in expected
         self._report(at, begin, stop, fresh, expected)
         if not complete:
@@ -247,7 +269,8 @@ class _Run:
         self.lost.update(lexeme.text for lexeme in self.lexemes[begin:stop] if lexeme.text[:1].isalpha())
 
     def _open_block(self, begin: int, stop: int) -> bool:
-        """Go on inside a block whose header is broken, as if the header were right; False where it is no block."""
+        """Go on inside a block whose header is broken, as if the header were right; False where it is no
+        block."""
         lexemes = self.lexemes
         word = lexemes[begin].text
         word = word if word in _BLOCKS else _nearest(word, FORMS) or ""
@@ -256,9 +279,9 @@ class _Run:
         name = next((x.text for x in lexemes[begin + 1 : begin + 2] if x.text.isidentifier()), "")
         span = lexemes[begin].span
         for kind in _BLOCKS[word][:-1]:
-            self.parser.feed_token(cast(Token, Lexeme(kind, name if kind == "NAME" else "", span)))
+            self.parser.feed_token(Lexeme(kind, name if kind == "NAME" else "", span))
             name = "" if kind == "NAME" else name
-        self.parser.feed_token(cast(Token, lexemes[stop]))
+        self.parser.feed_token(lexemes[stop])
         self.blocks.append(word)
         return True
 
@@ -284,7 +307,13 @@ class _Run:
         block = self.blocks[-1] if self.blocks else ""
         found = self._found(lexeme)
         if fresh and block in FIELD_FORMS:
-            add("syntax", span, expected=f"a field of the {block}", found=found, help=f"write {FIELD_FORMS[block]}")
+            add(
+                "syntax",
+                span,
+                expected=f"a field of the {block}",
+                found=found,
+                help=f"write {FIELD_FORMS[block]}",
+            )
         elif fresh and lexeme.type in ("NAME", "DOTTED"):
             nearest = _nearest(lexeme.text, FORMS)
             fix = f"did you mean {nearest}? It reads: {FORMS[nearest]}" if nearest else (
@@ -294,7 +323,7 @@ class _Run:
         elif fresh:
             help = "a statement begins with a word such as branch or let"
             if lexeme.type in _OPERATORS or lexeme.type in ("COMMA", "EQUAL"):
-                help = f'a line goes on where it ends in an operator: put "{lexeme.text}" at the end of the line before'
+                help = f'to go on from the line before, put "{lexeme.text}" at its end'
             add("syntax", span, expected="a statement", found=found, help=help)
         elif (count := self._node_count(begin, at, expected)) is not None:
             word = lexemes[begin].text
@@ -319,9 +348,15 @@ class _Run:
         lexemes = self.lexemes
         word = lexemes[begin].text
         between = expected <= {"TO", "COMMA", "EQUAL", "TIMES", "LBRACE", "END", "RBRACE", "$END"}
-        if word not in NODE_COUNTS or not between or any(x.type in ("EQUAL", "TIMES") for x in lexemes[begin:at]):
+        if (
+            word not in NODE_COUNTS
+            or not between
+            or any(x.type in ("EQUAL", "TIMES") for x in lexemes[begin:at])
+        ):
             return None
-        kind = "TO" if lexemes[at].text == "to" else "TIMES" if lexemes[at].text == "times" else lexemes[at].type
+        kind = (
+            "TO" if lexemes[at].text == "to" else "TIMES" if lexemes[at].text == "times" else lexemes[at].type
+        )
         if at < begin + 4 or kind not in ("TO", "TIMES", "COMMA", "EQUAL", "LBRACE", "END", "RBRACE", "$END"):
             return None
         count = 1 + sum(x.type in ("TO", "COMMA") for x in lexemes[begin:at])
@@ -364,7 +399,7 @@ class _Run:
         if at == begin + 1:
             return f"a name for the {word}" if word not in ("omit", "allow") else "a name"
         before = {x.type for x in self.lexemes[begin:at]}
-        if word in NODE_COUNTS and "EQUAL" not in before or word in ("place", "chain", "assembly"):
+        if (word in NODE_COUNTS and "EQUAL" not in before) or word in ("place", "chain", "assembly"):
             return "a node" if before & {"COLON", "LPAR"} and "SEMICOLON" not in before else "a name"
         return "a name"
 
@@ -400,8 +435,8 @@ _INSIDE: dict[type, tuple[tuple[type, ...], str]] = {
     s.UnderTest: (_NETWORK, "the circuit under test"),
     s.Assembly: ((*_NETWORK, s.Contact, s.Reading, s.Allow), "an assembly"),
     s.Case: (
-        (*_NETWORK, s.UnderTest, s.Contact, s.Reading, s.Drive, s.Assembly, s.Omit, s.Sweep, s.Edge, s.Temperature,
-         s.Require, s.Allow, s.Title),
+        (*_NETWORK, s.UnderTest, s.Contact, s.Reading, s.Drive, s.Assembly, s.Omit, s.Sweep, s.Edge,
+         s.Temperature, s.Require, s.Allow, s.Title),
         "a case",
     ),
 }  # fmt: skip
