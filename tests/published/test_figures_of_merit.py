@@ -60,7 +60,8 @@ def test_butterworth_pair_does_not_peak() -> None:
 
 
 def test_chebyshev_ripple() -> None:
-    """n = 5, 0.1 dB (Matthaei, Young and Jones 1964): flatness up to 1 rad/s is the ripple, 1 - 10^(-0.1/20)."""
+    """n = 5, 0.1 dB (Matthaei, Young and Jones 1964): flatness up to 1 rad/s is the ripple, 1 -
+    10^(-0.1/20)."""
     body = """
     source s: a to ground = 1 V behind 1 Ω
     branch l1: a to b = 1.14681306727 H
@@ -79,7 +80,8 @@ def test_chebyshev_ripple() -> None:
 
 
 def test_group_delay_of_a_bessel_ladder() -> None:
-    """n = 3, unit delay (Zverev 1967): with x = ω², delay (225 + 45x + 6x²)/(225 + 45x + 6x² + x³), Storch 1954."""
+    """n = 3, unit delay (Zverev 1967): with x = ω², delay (225 + 45x + 6x²)/(225 + 45x + 6x² + x³), Storch
+    1954."""
     body = """
     source s: a to ground = 1 V behind 1 Ω
     branch l1: a to b = 1.25502427190 H
@@ -132,7 +134,8 @@ sweep 1 Hz to 1 GHz, 20 per decade
 
 
 def test_parallel_equivalents_of_a_probe() -> None:
-    """Y = 1/(R + 1/(G + sC)): G_p = Re Y, C_p = Im Y/ω (textbook series-parallel conversion); C_p → C at low frequency."""
+    """Y = 1/(R + 1/(G + sC)): G_p = Re Y, C_p = Im Y/ω (textbook series-parallel conversion); C_p → C at
+    low frequency."""
     omega = TAU * 50e6
     y = 1 / (200 + 1 / (1e-7 + 1j * omega * 8e-12))
     assert_allclose(figure(PROBE, "impedance", "touch", at=50e6).value, abs(1 / y), rtol=1e-11)
@@ -153,8 +156,8 @@ def test_disturbance_by_a_probe() -> None:
 
 
 def test_rejection_of_an_unequal_pair() -> None:
-    """Two 1:1 dividers into a difference: legs R/(R + R) and R/(R + R(1 + δ)); differential gain over common gain
-    (derived: a = 1/2, b = 1/(2 + δ): ((a + b)/2)/(a - b))."""
+    """Two 1:1 dividers into a difference: legs R/(R + R) and R/(R + R(1 + δ)); differential gain over
+    common gain (derived: a = 1/2, b = 1/(2 + δ): ((a + b)/2)/(a - b))."""
     delta = 0.001
     body = f"""
     source high: plus to ground = 1 V

@@ -12,7 +12,8 @@ from support.run import curve, load
 
 
 def column(n: int, part: str, stray: str, low: str) -> str:
-    """n equal parts in series from `n0` to `low`, `stray` from each of the n - 1 joints to ground, a low arm."""
+    """n equal parts in series from `n0` to `low`, `stray` from each of the n - 1 joints to ground, a low
+    arm."""
     body = "source s: n0 to ground = 1 V\n"
     for i in range(n):
         end = "low" if i == n - 1 else f"n{i + 1}"
@@ -23,8 +24,8 @@ def column(n: int, part: str, stray: str, low: str) -> str:
 
 
 def test_resistor_with_uniform_earth_capacitance() -> None:
-    """Current at the earthed end over the direct current: √(sτ)/sinh √(sτ), τ = RCₑ (Kuffel, Zaengl and Kuffel, chapter 3);
-    a low arm r beside it makes it r/(r cosh θ + (R/θ) sinh θ), θ = √(sτ)."""
+    """Current at the earthed end over the direct current: √(sτ)/sinh √(sτ), τ = RCₑ (Kuffel, Zaengl and
+    Kuffel, chapter 3); a low arm r beside it makes it r/(r cosh θ + (R/θ) sinh θ), θ = √(sτ)."""
     r, earth, arm = 1e8, 40e-12, 1e2
     body = f"""
     stock column {{ resistance {r!r} Ω/m; capacitance {earth!r} F/m }}
@@ -48,15 +49,16 @@ def test_resistor_with_uniform_earth_capacitance() -> None:
 
 
 def first_moment(body: str) -> float:
-    """-H′(0)/H(0), the area under 1 - g(t): the response time. Taken at a frequency whose square no longer shows."""
+    """-H′(0)/H(0), the area under 1 - g(t): the response time. Taken at a frequency whose square no longer
+    shows."""
     value, slope = load(body).network().response.derivative([1e-6], "out")
     return float((-slope.values[0] / value.values[0]).real)
 
 
 @pytest.mark.parametrize("n", [1, 2, 5, 20, 60])
 def test_response_time_of_a_lumped_resistor_column(n: int) -> None:
-    """N equal lumps with Cₑ/N at the N - 1 joints: τ(N² - 1)/(6N²) (derived: Σ of the joints' Elmore times), here with a
-    low arm a trillionth of the column."""
+    """N equal lumps with Cₑ/N at the N - 1 joints: τ(N² - 1)/(6N²) (derived: Σ of the joints' Elmore
+    times), here with a low arm a trillionth of the column."""
     r, earth = 1e8, 40e-12
     body = column(n, f"{r / n!r} Ω", f"{earth / n!r} F", "100 µΩ")
     tau = r * earth
@@ -87,7 +89,8 @@ def lumped_column_ratio(n: int, part: Fraction, stray: Fraction, low: Fraction) 
 
 @pytest.mark.parametrize("n", [2, 20, 200])
 def test_capacitor_column_at_zero_frequency(n: int) -> None:
-    """Charge balance on every joint: against rational arithmetic, at the limit of zero frequency and above it."""
+    """Charge balance on every joint: against rational arithmetic, at the limit of zero frequency and above
+    it."""
     part, stray, low = Fraction(2 * n), Fraction(3, 4 * n), Fraction(100_000)
     body = column(n, f"{2 * n} pF", f"{0.75 / n!r} pF", "100 nF")
     h = curve(body, [0.0, 50.0, 1e6])
@@ -95,8 +98,8 @@ def test_capacitor_column_at_zero_frequency(n: int) -> None:
 
 
 def test_earth_capacitance_lowers_the_ratio_of_a_capacitor_column() -> None:
-    """x/sinh x, x = √(Cₑ/C) (Kuffel, Zaengl and Kuffel, chapter 3): 0.983525748301 for Cₑ/C = 0.1. A column of N parts
-    approaches it as 1/N²: two columns, extrapolated."""
+    """x/sinh x, x = √(Cₑ/C) (Kuffel, Zaengl and Kuffel, chapter 3): 0.983525748301 for Cₑ/C = 0.1. A column
+    of N parts approaches it as 1/N²: two columns, extrapolated."""
     c, earth, low = 100e-12, 10e-12, 1.0
     factors = []
     for n in (100, 200):
@@ -106,15 +109,16 @@ def test_earth_capacitance_lowers_the_ratio_of_a_capacitor_column() -> None:
 
 
 def test_small_earth_capacitance_takes_a_sixth_of_itself() -> None:
-    """1 - Cₑ/(6C) to first order in Cₑ (common practice, no source; the N - 1 joints make it (1 - 1/N²) of that)."""
+    """1 - Cₑ/(6C) to first order in Cₑ (common practice, no source; the N - 1 joints make it (1 - 1/N²) of
+    that)."""
     c, earth, low, n = 100e-12, 0.01e-12, 1.0, 100
     factor = curve(column(n, f"{c * n!r} F", f"{earth / n!r} F", f"{low!r} F"), [50.0])[0].real * low / c
     assert_allclose(1 - factor, earth / (6 * c) * (1 - 1 / n**2), rtol=1e-4)
 
 
 def test_damped_capacitor_divider_is_flat() -> None:
-    """Series R and C in every element, RC the same in both arms: the ratio of the capacitors at every frequency (Zaengl 1964,
-    the damped capacitive divider without strays)."""
+    """Series R and C in every element, RC the same in both arms: the ratio of the capacitors at every
+    frequency (Zaengl 1964, the damped capacitive divider without strays)."""
     body = """
     source s: top to ground = 1 V
     branch upper: top to low = 200 Ω -- 500 pF
@@ -125,8 +129,8 @@ def test_damped_capacitor_divider_is_flat() -> None:
 
 
 def test_ten_million_to_one_disturbance() -> None:
-    """A 10 GΩ probe on a 1 mΩ source changes the voltage by -Zs/(Zs + Zc), 1e-13 (voltage division): right to 1e-9 of
-    itself, though it is below the rounding of the voltages."""
+    """A 10 GΩ probe on a 1 mΩ source changes the voltage by -Zs/(Zs + Zc), 1e-13 (voltage division): right
+    to 1e-9 of itself, though it is below the rounding of the voltages."""
     body = """
     under test { source s: node to ground = 1 V behind 1 mΩ }
     contact touch: node to ground

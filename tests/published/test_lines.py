@@ -1,4 +1,5 @@
-"""Transmission lines: textbook points of the telegraph equations. Reference formulas in 40-digit arithmetic."""
+"""Transmission lines: textbook points of the telegraph equations. Reference formulas in 40-digit
+arithmetic."""
 
 from __future__ import annotations
 
@@ -92,16 +93,20 @@ def test_standing_wave_ratio() -> None:
 
 
 def test_capacitance_of_fifty_ohms_at_two_thirds() -> None:
-    """C′ = 1/(Z₀v): 101.080029 pF/m for 50 Ω at 0.66 c; within 5 % of the catalogue's 101.7 pF/m for the common
-    flexible 50 Ω coax (value read in a catalogue)."""
-    body = f"{LOSSLESS}source s: in to ground = 1 V\ncable flex: in, ground to out, ground = 1 m of line\nbranch r: out to ground = 0 S\n"
+    """C′ = 1/(Z₀v): 101.080029 pF/m for 50 Ω at 0.66 c; within 5 % of the catalogue's 101.7 pF/m for the
+    common flexible 50 Ω coax (value read in a catalogue)."""
+    body = loaded_line("0 S")
     frequency = 10.0
     c = (1 / impedance(body, [frequency], "s")[0]).imag / (TAU * frequency)
     assert_allclose(c, 101.080029e-12, rtol=1e-8)
     assert_allclose(c, 101.7e-12, rtol=0.05)
 
 
-OPEN_RC = f"{RC_LINE}source s: in to ground = 1 V\ncable rc: in, ground to out, ground = 1 m of line\nreading out: out to ground\n"
+OPEN_RC = f"""{RC_LINE}
+source s: in to ground = 1 V
+cable rc: in, ground to out, ground = 1 m of line
+reading out: out to ground
+"""
 
 
 def test_open_rc_line() -> None:
@@ -155,33 +160,41 @@ def test_two_pieces_equal_one() -> None:
     stock = (
         "stock line { resistance 0.4 Ω/m; inductance 250 nH/m; conductance 1 µS/m; capacitance 100 pF/m }\n"
     )
-    frame = (
-        stock
-        + "source s: in to ground = 1 V behind 12 Ω\nbranch load: out to ground = 300 Ω ∥ 8 pF\nreading out: out to ground\n"
-    )
+    frame = f"""{stock}
+    source s: in to ground = 1 V behind 12 Ω
+    branch load: out to ground = 300 Ω ∥ 8 pF
+    reading out: out to ground
+    """
     whole = "cable a: in, ground to out, ground = 1.7 m of line\n"
-    cut = "cable a: in, ground to mid, ground = 0.6 m of line\ncable b: mid, ground to out, ground = 1.1 m of line\n"
+    cut = """
+    cable a: in, ground to mid, ground = 0.6 m of line
+    cable b: mid, ground to out, ground = 1.1 m of line
+    """
     frequencies = [0.0, 1e3, 1e6, 3.3e7, 1e9]
     assert_allclose(curve(frame + whole, frequencies), curve(frame + cut, frequencies), rtol=1e-10)
 
 
 def test_constant_k_ladder_is_a_line_below_its_cutoff() -> None:
-    """A section of series 2 × L/2 and C across: cosh γ = 1 - ω²LC/2 (Campbell 1903), matched on its image impedance."""
-    l, c, n = 1e-6, 400e-12, 12
-    omega = 0.6 * 2 / math.sqrt(l * c)
-    image = math.sqrt(l / c * (1 - omega**2 * l * c / 4))
+    """A section of series 2 × L/2 and C across: cosh γ = 1 - ω²LC/2 (Campbell 1903), matched on its image
+    impedance."""
+    coil, c, n = 1e-6, 400e-12, 12
+    omega = 0.6 * 2 / math.sqrt(coil * c)
+    image = math.sqrt(coil / c * (1 - omega**2 * coil * c / 4))
     body = "source s: n0 to ground = 1 V\n"
     for i in range(n):
         end = "out" if i == n - 1 else f"n{i + 1}"
-        body += f"branch a{i}: n{i} to m{i} = {l / 2!r} H\nbranch c{i}: m{i} to ground = {c!r} F\nbranch b{i}: m{i} to {end} = {l / 2!r} H\n"
+        body += f"branch a{i}: n{i} to m{i} = {coil / 2!r} H\n"
+        body += f"branch c{i}: m{i} to ground = {c!r} F\n"
+        body += f"branch b{i}: m{i} to {end} = {coil / 2!r} H\n"
     body += f"branch load: out to ground = {image!r} Ω\nreading out: out to ground\n"
-    theta = math.acos(1 - omega**2 * l * c / 2)
+    theta = math.acos(1 - omega**2 * coil * c / 2)
     assert_allclose(curve(body, [omega / TAU]), np.exp(-1j * n * theta), rtol=1e-11)
     assert_allclose(impedance(body, [omega / TAU], "s"), image, rtol=1e-11)
 
 
 def between_taps(fields: str, metres: float, onwards: float, frequencies: list[float]) -> np.ndarray:
-    """Voltage ratio over `metres` of an endless line: a source, a long piece, the piece, `onwards` metres more."""
+    """Voltage ratio over `metres` of an endless line: a source, a long piece, the piece, `onwards` metres
+    more."""
     body = f"""
     stock line {{ {fields} }}
     source s: in to ground = 1 V
@@ -194,21 +207,22 @@ def between_taps(fields: str, metres: float, onwards: float, frequencies: list[f
 
 
 def test_attenuation_as_the_catalogue_gives_it() -> None:
-    """0.12 dB/m at 100 MHz: 3 m of an endless line take 0.36 dB there (the meaning of the catalogue's number)."""
+    """0.12 dB/m at 100 MHz: 3 m of an endless line take 0.36 dB there (the meaning of the catalogue's
+    number)."""
     h = between_taps("impedance 50 Ω; velocity 0.66; attenuation 0.12 dB/m at 100 MHz", 3.0, 20000.0, [1e8])
     assert_allclose(-20 * np.log10(np.abs(h)), 0.36, rtol=1e-10)
 
 
 def test_skin_effect_attenuation_grows_with_the_root_of_frequency() -> None:
-    """α ≈ R/(2Z₀), R ∝ √f (textbook, low loss; the next order is of (R/ωL)²): 1.1 Ω/m at 100 MHz on 50 Ω gives 0.011 Np/m there and
-    ten times that at 10 GHz."""
+    """α ≈ R/(2Z₀), R ∝ √f (textbook, low loss; the next order is of (R/ωL)²): 1.1 Ω/m at 100 MHz on 50 Ω
+    gives 0.011 Np/m there and ten times that at 10 GHz."""
     h = between_taps("impedance 50 Ω; velocity 0.66; skin 1.1 Ω/m at 100 MHz", 1.0, 20000.0, [1e8, 1e10])
     assert_allclose(-np.log(np.abs(h)), [0.011, 0.11], rtol=5e-3)
 
 
 def test_skin_effect_impedance() -> None:
-    """Z′ = √(R² + 2R_k² s/ω_k): seen at a line shorted at its end, no inductance: R at rest, R_k(1 + j)·√(f/f_k) far
-    above (a good conductor's surface impedance has equal parts, textbook)."""
+    """Z′ = √(R² + 2R_k² s/ω_k): seen at a line shorted at its end, no inductance: R at rest, R_k(1 +
+    j)·√(f/f_k) far above (a good conductor's surface impedance has equal parts, textbook)."""
     body = """
     stock line { resistance 20 mΩ/m; skin 1.1 Ω/m at 100 MHz }
     source s: in to ground = 1 V
@@ -226,11 +240,21 @@ def test_dielectric_loss_attenuation() -> None:
     assert_allclose(-np.log(np.abs(h)), TAU * 1e8 / SPEED * 0.001 / 2, rtol=2e-2)
 
 
+SHIELDED = """
+stock coax {
+  inductance 250 nH/m
+  shield_resistance 12 mΩ/m
+  shield_inductance 1.2 µH/m
+  shield_coupling 1
+}
+"""
+
+
 def test_transfer_impedance_of_a_fully_coupled_shield() -> None:
-    """Current in the shield alone, coupling 1: the loop sees the shield's resistance and no inductance, because the mutual
-    inductance of core and shield is the shield's own (e.g. Ott, Noise Reduction Techniques, 1976)."""
-    body = """
-    stock coax { inductance 250 nH/m; shield_resistance 12 mΩ/m; shield_inductance 1.2 µH/m; shield_coupling 1 }
+    """Current in the shield alone, coupling 1: the loop sees the shield's resistance and no inductance,
+    because the mutual inductance of core and shield is the shield's own (e.g. Ott, Noise Reduction
+    Techniques, 1976)."""
+    body = f"""{SHIELDED}
     source s: near to ground = 1 A
     cable flex: core, near to ground, ground = 2 m of coax
     branch meter: core to near = 0 S
@@ -241,10 +265,9 @@ def test_transfer_impedance_of_a_fully_coupled_shield() -> None:
 
 
 def test_return_current_moves_into_the_shield() -> None:
-    """Core current Ic returns in the shield as -Is/Ic = s/(s + Rs/Ls), the rest through ground (e.g. Ott 1976); here with
-    the 1 mΩ in which the ground part is measured."""
-    body = """
-    stock coax { inductance 250 nH/m; shield_resistance 12 mΩ/m; shield_inductance 1.2 µH/m; shield_coupling 1 }
+    """Core current Ic returns in the shield as -Is/Ic = s/(s + Rs/Ls), the rest through ground (e.g. Ott
+    1976); here with the 1 mΩ in which the ground part is measured."""
+    body = f"""{SHIELDED}
     source s: core to ground = 1 A
     cable flex: core, ground to end, far = 1 m of coax
     branch load: end to far = 50 Ω

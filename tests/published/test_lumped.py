@@ -19,7 +19,8 @@ GRID = np.logspace(-6, 12, 91)
 def test_phase_shift_network() -> None:
     """Three series-C shunt-R sections, unbuffered: -1/29 at ω = 1/(RC√6) (Ginzton and Hollingsworth 1941)."""
     r, c = 4700.0, 22e-9
-    body = f"source s: in to ground = 1 V\n{ladder([f'{c!r} F'] * 3, [f'{r!r} Ω'] * 3)}reading out: out to ground"
+    sections = ladder([f"{c!r} F"] * 3, [f"{r!r} Ω"] * 3)
+    body = f"source s: in to ground = 1 V\n{sections}reading out: out to ground"
     h = curve(body, [1 / (TAU * r * c * math.sqrt(6))])
     assert_allclose(h, -1 / 29, rtol=1e-12)
 
@@ -87,8 +88,8 @@ def test_tip_for_a_five_picofarad_input() -> None:
 
 
 def test_undercompensated_divider() -> None:
-    """9 MΩ ∥ 10 pF over 1 MΩ ∥ 100 pF: 1/10 at rest, 1/11 at high frequency, one pole at (1/9 + 1) µS / 110 pF: 99 µs
-    (common practice)."""
+    """9 MΩ ∥ 10 pF over 1 MΩ ∥ 100 pF: 1/10 at rest, 1/11 at high frequency, one pole at (1/9 + 1) µS / 110
+    pF: 99 µs (common practice)."""
     body = """
     source s: tip to ground = 1 V
     branch upper: tip to plug = 9 MΩ ∥ 10 pF
@@ -116,7 +117,8 @@ def test_blocking_capacitor_at_zero_frequency() -> None:
 
 
 def test_column_of_capacitors_at_zero_frequency() -> None:
-    """A series string of capacitors divides in inverse proportion to capacitance (charge is conserved on each node)."""
+    """A series string of capacitors divides in inverse proportion to capacitance (charge is conserved on
+    each node)."""
     values = [1, 2, 3, 5, 8, 13, 21, 34]
     body = "source s: n0 to ground = 1 V\n"
     for i, value in enumerate(values):
@@ -155,7 +157,8 @@ RADIANS = np.array([0.0, 0.01, 0.5, 0.9, 1.0, 1.2, 3.0, 30.0])
 
 
 def test_butterworth_ladder() -> None:
-    """n = 5, g = 2 sin((2k - 1)π/10), |H|² = (1/4)/(1 + ω¹⁰) (Matthaei, Young and Jones 1964, section 4.05)."""
+    """n = 5, g = 2 sin((2k - 1)π/10), |H|² = (1/4)/(1 + ω¹⁰) (Matthaei, Young and Jones 1964, section
+    4.05)."""
     values = [2 * math.sin((2 * k - 1) * math.pi / 10) for k in range(1, 6)]
     assert_allclose(values[:3], [0.618033988750, 1.61803398875, 2.0], rtol=1e-11)
     h = curve(doubly_terminated(values), RADIANS / TAU)
@@ -172,7 +175,8 @@ def test_chebyshev_ladder() -> None:
 
 
 def test_bessel_ladder() -> None:
-    """n = 3, unit delay, equal terminations (element values as in Zverev 1967): against `scipy.signal.bessel`."""
+    """n = 3, unit delay, equal terminations (element values as in Zverev 1967): against
+    `scipy.signal.bessel`."""
     values = [1.25502427190, 0.552786404500, 0.192189323599]
     h = curve(doubly_terminated(values), RADIANS / TAU)
     numerator, denominator = scipy.signal.bessel(3, 1.0, analog=True, norm="delay")
@@ -193,7 +197,8 @@ def test_voltage_magnification_at_series_resonance() -> None:
 
 
 def test_all_pass_lattice() -> None:
-    """Lattice of L and C arms, L/C = R²: input R, output (1 - sL/R)/(1 + sL/R) across R, floating (Bode 1945)."""
+    """Lattice of L and C arms, L/C = R²: input R, output (1 - sL/R)/(1 + sL/R) across R, floating (Bode
+    1945)."""
     body = """
     source s: plus to ground = 1 V
     branch a1: plus to p = 1 µH
@@ -226,7 +231,11 @@ def test_inductance_bridge_balances_at_every_frequency() -> None:
 @pytest.mark.parametrize("k", [0.1, 0.9, 1.0])
 def test_coupled_coils(k: float) -> None:
     """Secondary open: k√(L₂/L₁); secondary shorted: L₁(1 - k²), 0 at k = 1 (textbook)."""
-    coils = f"branch one: in to ground = 4 µH\nbranch two: out to ground = 9 µH\ncoupling m: one.L with two.L = {k!r}\n"
+    coils = f"""
+    branch one: in to ground = 4 µH
+    branch two: out to ground = 9 µH
+    coupling m: one.L with two.L = {k!r}
+    """
     ideal = "source s: in to ground = 1 V\n"
     frequencies = np.array([1e3, 1e6, 1e9])
     opened = curve(
@@ -254,7 +263,8 @@ def test_coils_in_series(second: str, sign: int) -> None:
 
 @pytest.mark.parametrize("sign", [1, -1])
 def test_two_coupled_resonators(sign: int) -> None:
-    """Two equal circuits in resonance, coupled by k, short-circuit their source at ω₀/√(1 ± k) (Terman 1943)."""
+    """Two equal circuits in resonance, coupled by k, short-circuit their source at ω₀/√(1 ± k) (Terman
+    1943)."""
     body = """
     source s: in to ground = 1 V
     branch first: in to ground = 10 µH -- 1 nF
@@ -326,8 +336,8 @@ def test_amplifier_poles_zeros_and_delay() -> None:
 
 
 def test_dissipation_factor_is_flat() -> None:
-    """`loss D`: Re Y/Im Y = D within 0.07 % from 1 mHz to 1 THz, Im Y/ω = C at 1 MHz; causality then makes C fall by
-    about (2/π)D per neper of frequency (Kramers and Kronig; e.g. IEEE practice for laminates)."""
+    """`loss D`: Re Y/Im Y = D within 0.07 % from 1 mHz to 1 THz, Im Y/ω = C at 1 MHz; causality then makes
+    C fall by about (2/π)D per neper of frequency (Kramers and Kronig; e.g. IEEE practice for laminates)."""
     body = """
     source s: in to ground = 1 V
     branch part: in to ground = 10 nF loss 0.02

@@ -40,8 +40,8 @@ def rc(ohms: str) -> str:
 
 @pytest.mark.parametrize(("ohms", "corner"), [("1 kΩ", 1 / (TAU * 1e-9)), ("10 MΩ", 1 / (TAU * 1e-5))])
 def test_capacitor_noise_does_not_depend_on_the_resistor(ohms: str, corner: float) -> None:
-    """√(kT/C) = 64.3579599 µV rms for 1 pF at 300 K over all frequencies (textbook); from low to high the part
-    (2/π)(atan(high/corner) - atan(low/corner)) of the square."""
+    """√(kT/C) = 64.3579599 µV rms for 1 pF at 300 K over all frequencies (textbook); from low to high the
+    part (2/π)(atan(high/corner) - atan(low/corner)) of the square."""
     low, high = corner * 1e-7, corner * 1e7
     share = 2 / math.pi * (math.atan(high / corner) - math.atan(low / corner))
     found = figure(rc(ohms), "noise", "out", span=(low, high)).value
@@ -101,8 +101,8 @@ def test_noise_of_a_lossy_capacitor() -> None:
 
 
 def test_noise_of_a_matched_attenuating_line() -> None:
-    """Whatever its loss, a line of real impedance closed by it at one temperature gives 4kT Z₀ at the other end (Nyquist
-    1928): a distortionless line of 3 nepers."""
+    """Whatever its loss, a line of real impedance closed by it at one temperature gives 4kT Z₀ at the other
+    end (Nyquist 1928): a distortionless line of 3 nepers."""
     body = """
     stock line { resistance 5 Ω/m; inductance 250 nH/m; conductance 2 mS/m; capacitance 100 pF/m }
     source s: in to ground = 1 V behind 50 Ω
@@ -122,7 +122,8 @@ temperature 23 °C
 
 
 def test_amplifier_noise() -> None:
-    """G √(e² + (iR)² + 4kTR): the two uncorrelated generators at the input (textbook, after Rothe and Dahlke 1956)."""
+    """G √(e² + (iR)² + 4kTR): the two uncorrelated generators at the input (textbook, after Rothe and
+    Dahlke 1956)."""
     total = (5e-9) ** 2 + (2e-12 * 2e3) ** 2 + 4 * boltzmann * 296.15 * 2e3
     assert_allclose(density(AMPLIFIER, [10.0, 1e6]), 20 * math.sqrt(total), rtol=1e-9)
 
@@ -136,7 +137,8 @@ def test_amplifier_noise() -> None:
     ],
 )
 def test_noise_bandwidth(poles: str, factor: float) -> None:
-    """Over the pole frequency: π/2 for one pole, π/4 for two equal ones, π/√8 for a Butterworth pair (textbook)."""
+    """Over the pole frequency: π/2 for one pole, π/4 for two equal ones, π/√8 for a Butterworth pair
+    (textbook)."""
     body = f"""
     source s: in to ground = 1 V
     amplifier stage: in, ground to out, ground {{ gain 1; poles {poles}; noise 10 nV/√Hz }}

@@ -58,7 +58,8 @@ def test_ten_stage_ladder_gives_ratios_of_fibonacci_numbers() -> None:
 
 
 def test_long_ladder_approaches_the_golden_ratio() -> None:
-    """Input resistance of the endless 1 Ω ladder, (1 + √5)/2 (textbook); forty stages are endless in double precision."""
+    """Input resistance of the endless 1 Ω ladder, (1 + √5)/2 (textbook); forty stages are endless in double
+    precision."""
     body = ladder(["1 Ω"] * 40, ["1 Ω"] * 40)
     ohms = curve(f"source drive: in to ground = 1 A\n{body}reading out: in to ground", FREQUENCIES)
     assert_allclose(ohms, (1 + math.sqrt(5)) / 2, rtol=1e-13)
@@ -95,8 +96,8 @@ def test_foster_sum_rule() -> None:
 
 @pytest.mark.parametrize("seed", range(4))
 def test_against_resistance_distance(seed: int) -> None:
-    """A random graph with resistances over six decades against `networkx.resistance_distance` (pseudo-inverse of the
-    Laplacian, which is why the comparison stops at 1e-8)."""
+    """A random graph with resistances over six decades against `networkx.resistance_distance`
+    (pseudo-inverse of the Laplacian, which is why the comparison stops at 1e-8)."""
     rng = random.Random(seed)
     graph = nx.connected_watts_strogatz_graph(14, 4, 0.4, seed=seed)
     for edge in graph.edges:
@@ -120,7 +121,8 @@ def test_balanced_bridge_carries_nothing() -> None:
 
 
 def test_star_and_its_triangle_look_alike() -> None:
-    """A star of 10, 20, 30 Ω and its equivalent triangle R_ab = (ab + bc + ca)/c (Kennelly 1899), at all three ports."""
+    """A star of 10, 20, 30 Ω and its equivalent triangle R_ab = (ab + bc + ca)/c (Kennelly 1899), at all
+    three ports."""
     arms = {"a": 10.0, "b": 20.0, "c": 30.0}
     products = sum(x * y for x, y in itertools.combinations(arms.values(), 2))
     star = "".join(f"branch s{k}: {k} to hub = {v!r} Ω\n" for k, v in arms.items())
@@ -129,7 +131,11 @@ def test_star_and_its_triangle_look_alike() -> None:
         for i, j, k in (("a", "b", "c"), ("b", "c", "a"), ("c", "a", "b"))
     )
     for one, other, _ in (("a", "b", "c"), ("b", "c", "a"), ("c", "a", "b")):
-        frame = f"source drive: {one} to {other} = 1 A\nbranch tie: {other} to ground = 1 Ω\nreading out: {one} to {other}\n"
+        frame = f"""
+        source drive: {one} to {other} = 1 A
+        branch tie: {other} to ground = 1 Ω
+        reading out: {one} to {other}
+        """
         expected = arms[one] + arms[other]
         assert_allclose(curve(frame + star, FREQUENCIES), expected, rtol=1e-13)
         assert_allclose(curve(frame + triangle, FREQUENCIES), expected, rtol=1e-13)
@@ -149,8 +155,8 @@ def test_binary_ladder_weights(bit: int) -> None:
 
 @pytest.mark.parametrize("decibels", [3.0, 10.0, 20.0])
 def test_matched_pad(decibels: float) -> None:
-    """T pad between 50 Ω and 50 Ω: arms 50 (K - 1)/(K + 1), stem 100 K/(K² - 1), K = 10^(dB/20) (textbook): input 50 Ω and
-    the loss asked for."""
+    """T pad between 50 Ω and 50 Ω: arms 50 (K - 1)/(K + 1), stem 100 K/(K² - 1), K = 10^(dB/20) (textbook):
+    input 50 Ω and the loss asked for."""
     ratio = 10 ** (decibels / 20)
     arm, stem = 50 * (ratio - 1) / (ratio + 1), 100 * ratio / (ratio**2 - 1)
     body = (

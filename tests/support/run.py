@@ -35,7 +35,8 @@ def figure(
     at: float | None = None,
     span: tuple[float, float] | None = None,
 ) -> Any:
-    """A figure of merit: the `Result` that `nodal.figures.evaluate` gives, which is required to have a value."""
+    """A figure of merit: the `Result` that `nodal.figures.evaluate` gives, which is required to have a
+    value."""
     from nodal import figures
 
     call = FigureCall(name, arguments, f"{name}({', '.join(map(str, arguments))})")
@@ -43,7 +44,8 @@ def figure(
 
 
 def resistors(edges: Iterable[tuple[Any, Any, float]], ground: Any) -> str:
-    """Branches of resistance `ohms` on the edges (a, b, ohms) of a graph; the vertex `ground` is the reference node."""
+    """Branches of resistance `ohms` on the edges (a, b, ohms) of a graph; the vertex `ground` is the
+    reference node."""
 
     def node(vertex: Any) -> str:
         return "ground" if vertex == ground else f"n{vertex}"
@@ -54,7 +56,8 @@ def resistors(edges: Iterable[tuple[Any, Any, float]], ground: Any) -> str:
 
 
 def ladder(series: Sequence[str], shunt: Sequence[str], last: str = "out") -> str:
-    """A ladder from node `in` on: series[i], then shunt[i] to ground (an empty string for none); ends at node `last`."""
+    """A ladder from node `in` on: series[i], then shunt[i] to ground (an empty string for none); ends at
+    node `last`."""
     lines = []
     here = "in"
     for i, (along, across) in enumerate(zip(series, shunt, strict=True)):
