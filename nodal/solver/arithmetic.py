@@ -95,10 +95,10 @@ class Jet:
     __radd__ = __add__
 
     def __sub__(self, other: Any) -> Jet:
-        return self + (-other)
+        return self.__add__(-other)
 
     def __rsub__(self, other: Any) -> Jet:
-        return (-self) + other
+        return self.__neg__().__add__(other)
 
     def __mul__(self, other: Any) -> Jet:
         if isinstance(other, Jet):

@@ -22,82 +22,88 @@ Weights = tuple[tuple[int, float], ...]
 class Pattern:
     """Index arrays of one System, made once.
 
-    `rows`, `cols`: position of every matrix entry (entries that cancel in the sum are kept). `entries` (n_entries x
-    n_terms) sums term coefficients into entries, `taking` (n_terms x size) forms cols·x of every term, `giving`
-    (size x n_terms) adds a term's result to its rows. Weights are kept apart from coefficients, so that a branch's
-    current comes from the difference of its node voltages.
+    `rows`, `cols`: position of every matrix entry (entries that cancel in the sum are kept). `taking`
+    (n_terms x size) forms cols·x of every term: a branch's current comes from the difference of its node voltages.
     """
 
     def __init__(self, system: System) -> None:
         self.system = system
         self.size = system.size
-        self.term_rows: list[Weights] = []
-        self.term_cols: list[Weights] = []
+        self.term_rows: list[Weights] = [_merged(term.rows, system.size) for term in system.terms]
+        self.term_cols: list[Weights] = [_merged(term.cols, system.size) for term in system.terms]
         index: dict[tuple[int, int], int] = {}
-        entry_at: list[int] = []
-        entry_term: list[int] = []
-        entry_weight: list[float] = []
-        for number, term in enumerate(system.terms):
-            rows, cols = _merged(term.rows, system.size), _merged(term.cols, system.size)
-            self.term_rows.append(rows)
-            self.term_cols.append(cols)
+        self.shares: list[tuple[int, int, float]] = []
+        """(entry, term, weight): entry = sum of weight * coefficient of term."""
+        for number, (rows, cols) in enumerate(zip(self.term_rows, self.term_cols, strict=True)):
             for i, row_weight in rows:
                 for j, col_weight in cols:
-                    entry_at.append(index.setdefault((i, j), len(index)))
-                    entry_term.append(number)
-                    entry_weight.append(row_weight * col_weight)
+                    entry = index.setdefault((i, j), len(index))
+                    self.shares.append((entry, number, row_weight * col_weight))
         positions = np.array(list(index), dtype=np.intp).reshape(-1, 2)
         self.rows: Ints = positions[:, 0].copy()
         self.cols: Ints = positions[:, 1].copy()
-        count = len(system.terms)
         self.g: Floats = np.array([t.g for t in system.terms], dtype=float)
         self.c: Floats = np.array([t.c for t in system.terms], dtype=float)
         if not (np.isfinite(self.g).all() and np.isfinite(self.c).all()):
             raise ValueError("a coefficient of a term is not finite")
-        self.with_function: Ints = np.array([k for k, t in enumerate(system.terms) if t.f is not None], dtype=np.intp)
-        self.function_output = [t.f for t in system.terms if t.f is not None]
-        self.entries = _matrix(entry_weight, entry_at, entry_term, (len(index), count))
-        self.taking = _incidence(self.term_cols, system.size)
-        self.giving = _incidence(self.term_rows, system.size).T.tocsr()
+        self.functions = {k: t.f for k, t in enumerate(system.terms) if t.f is not None}
+        """Output of the system's functions by the term that has one."""
+        shares = np.array(self.shares, dtype=float).reshape(-1, 3)
+        entry_of, term_of = shares[:, 0].astype(np.intp), shares[:, 1].astype(np.intp)
+        self.entry_g = np.bincount(entry_of, shares[:, 2] * self.g[term_of], minlength=len(index))
+        self.entry_c = np.bincount(entry_of, shares[:, 2] * self.c[term_of], minlength=len(index))
+        self.function_shares = [share for share in self.shares if share[1] in self.functions]
+        self.taking = compressed(
+            [(t, k, w) for t, weights in enumerate(self.term_cols) for k, w in weights], (len(self.g), self.size))
 
-    def coefficients(self, s: Complexes) -> Complexes:
-        """g + s c + F_f(s) of every term at every point, (n_terms, n_points)."""
-        result: Complexes = np.multiply.outer(self.c, s)
-        result += self.g[:, None]
-        if self.function_output:
-            outputs = _evaluate(self.system, s, NumpyArithmetic())
-            for term, f in zip(self.with_function, self.function_output, strict=True):
-                result[term] += outputs[f]
-        return result
+    def giving(self, place: Ints) -> Giving:
+        """How what terms carry is added to equations, equation i kept at place[i]."""
+        at = place.tolist()
+        shares = [(at[k], t, w) for t, weights in enumerate(self.term_rows) for k, w in weights]
+        return Giving(self, shares)
 
-    def slopes(self, s: Complexes) -> Complexes:
-        """d/ds of `coefficients`, (n_terms, n_points)."""
-        result: Complexes = np.empty((len(self.c), len(s)), dtype=complex)
-        result[:] = self.c[:, None]
-        if self.function_output:
-            outputs = _evaluate(self.system, Jet(s, np.ones_like(s)), JetArithmetic(NumpyArithmetic()))
-            for term, f in zip(self.with_function, self.function_output, strict=True):
-                output = outputs[f]
-                if isinstance(output, Jet):
-                    result[term] += output.slope
-        return result
+    def function_values(self, s: Complexes) -> dict[int, Any]:
+        """F_f(s) of every term that has one."""
+        if not self.functions:
+            return {}
+        outputs = _evaluate(self.system, s, NumpyArithmetic())
+        return {term: outputs[f] for term, f in self.functions.items()}
+
+    def matrix(self, s: Complexes, values: dict[int, Any]) -> Complexes:
+        """Matrix entries, (n_entries, n_points), from s and the `function_values` there."""
+        entries: Complexes = np.empty((len(self.rows), len(s)), dtype=complex)
+        entries.real = self.entry_g[:, None]
+        if s.real.any():
+            entries.real += np.multiply.outer(self.entry_c, s.real)
+        np.multiply.outer(self.entry_c, s.imag, out=entries.imag)
+        for entry, term, weight in self.function_shares:
+            entries[entry] += values[term] * weight
+        return entries
+
+    def function_slopes(self, s: Complexes) -> dict[int, Any]:
+        """d/ds of `function_values`."""
+        if not self.functions:
+            return {}
+        outputs = _evaluate(self.system, Jet(s, np.ones_like(s)), JetArithmetic(NumpyArithmetic()))
+        slopes = [output.slope if isinstance(output, Jet) else 0.0 for output in outputs]
+        return {term: slopes[f] for term, f in self.functions.items()}
 
     def exact_coefficients(self, s: Any, arithmetic: MpArithmetic) -> list[Any]:
         """`coefficients` at one point, as numbers of many digits."""
         number = arithmetic.number
         result = [number(t.g) + s * number(t.c) if t.c else number(t.g) for t in self.system.terms]
-        if self.function_output:
+        if self.functions:
             outputs = _evaluate(self.system, s, arithmetic)
-            for term, f in zip(self.with_function, self.function_output, strict=True):
+            for term, f in self.functions.items():
                 result[term] = result[term] + outputs[f]
         return result
 
     def exact_slopes(self, s: Any, arithmetic: MpArithmetic) -> list[Any]:
         """`slopes` at one point, as numbers of many digits."""
         result = [arithmetic.number(t.c) for t in self.system.terms]
-        if self.function_output:
+        if self.functions:
             outputs = _evaluate(self.system, Jet(s, arithmetic.number(1)), JetArithmetic(arithmetic))
-            for term, f in zip(self.with_function, self.function_output, strict=True):
+            for term, f in self.functions.items():
                 output = outputs[f]
                 if isinstance(output, Jet):
                     result[term] = result[term] + output.slope
@@ -106,11 +112,47 @@ class Pattern:
     def exact_entries(self, coefficients: Sequence[Any], arithmetic: MpArithmetic) -> list[Any]:
         """Matrix entries, in the order of `rows` and `cols`, from `exact_coefficients`."""
         result = [arithmetic.number(0)] * len(self.rows)
-        matrix = self.entries
-        for entry in range(len(result)):
-            for k in range(matrix.indptr[entry], matrix.indptr[entry + 1]):
-                result[entry] += coefficients[matrix.indices[k]] * float(matrix.data[k])
+        for entry, term, weight in self.shares:
+            result[entry] = result[entry] + coefficients[term] * weight
         return result
+
+
+class Giving:
+    """Adds up what terms carry: sum of rows * (g + s c + F_f(s)) * drop, given every term's drop = cols·x.
+
+    Constants and multiples of s are summed apart, so that one product by s serves an equation.
+    """
+
+    def __init__(self, pattern: Pattern, shares: list[tuple[int, int, float]]) -> None:
+        shape = pattern.size, len(pattern.g)
+        g, c = pattern.g.tolist(), pattern.c.tolist()
+        self._constant = compressed([(k, t, w * g[t]) for k, t, w in shares if g[t]], shape)
+        self._linear = compressed([(k, t, w * c[t]) for k, t, w in shares if c[t]], shape)
+        self._function = [share for share in shares if share[1] in pattern.functions]
+
+    def current(self, drops: Complexes, s: Complexes, values: dict[int, Any]) -> Complexes:
+        """A x, (size, n_points)."""
+        result = product(self._linear, drops)
+        result *= s
+        result += product(self._constant, drops)
+        self._add_functions(result, drops, values)
+        return result
+
+    def slope(self, drops: Complexes, slopes: dict[int, Any]) -> Complexes:
+        """(dA/ds) x, (size, n_points)."""
+        result = product(self._linear, drops)
+        self._add_functions(result, drops, slopes)
+        return result
+
+    def _add_functions(self, result: Complexes, drops: Complexes, values: dict[int, Any]) -> None:
+        for row, term, weight in self._function:
+            result[row] += drops[term] * values[term] * weight
+
+
+def product(matrix: Any, x: Complexes) -> Complexes:
+    """Real sparse times complex dense, without making the sparse one complex."""
+    result: Complexes = (matrix @ x.view(float)).view(complex)
+    return result
 
 
 def _evaluate(system: System, s: Any, arithmetic: Arithmetic) -> list[Any]:
@@ -132,12 +174,11 @@ def _merged(weights: Iterable[tuple[int, float]], size: int) -> Weights:
     return tuple((index, weight) for index, weight in total.items() if weight != 0.0)
 
 
-def _matrix(data: list[float], rows: list[int], cols: list[int], shape: tuple[int, int]) -> Any:
-    return sparse.csr_matrix((np.array(data, dtype=float), (rows, cols)), shape=shape)
-
-
-def _incidence(weights: list[Weights], size: int) -> Any:
-    data = [w for term in weights for _, w in term]
-    cols = [k for term in weights for k, _ in term]
-    rows = [number for number, term in enumerate(weights) for _ in term]
-    return _matrix(data, rows, cols, (len(weights), size))
+def compressed(shares: list[tuple[int, int, float]], shape: tuple[int, int]) -> Any:
+    """A sparse real matrix from (row, column, value), no position twice."""
+    triples = np.array(shares, dtype=float).reshape(-1, 3)
+    rows = triples[:, 0].astype(np.int32)
+    by_row = np.argsort(rows, kind="stable")
+    starts = np.zeros(shape[0] + 1, dtype=np.int32)
+    np.cumsum(np.bincount(rows, minlength=shape[0]), out=starts[1:])
+    return sparse.csr_matrix((triples[by_row, 2], triples[by_row, 1].astype(np.int32), starts), shape=shape)

@@ -14,7 +14,7 @@ from nodal.solver.arithmetic import MpArithmetic
 from nodal.solver.kernel import Kernel
 from nodal.solver.matrix import System
 from nodal.solver.order import NoPivot, Order, eliminate
-from nodal.solver.pattern import Complexes, Floats, Pattern
+from nodal.solver.pattern import Floats, Giving, Pattern
 
 
 class Singular(Exception):
@@ -27,13 +27,10 @@ class Singular(Exception):
 
 @dataclass(frozen=True)
 class Plan:
-    """An order for one System with its scaling. Reusable at other frequencies and for other values of the parts."""
+    """An elimination order for one System. Reusable at other frequencies and for other values of the parts."""
 
     pattern: Pattern
     order: Order
-    row_scale: Floats
-    """Powers of two: the scaled matrix is row_scale[i] A_ij col_scale[j]."""
-    col_scale: Floats
 
     @property
     def system(self) -> System:
@@ -58,29 +55,9 @@ class Plan:
         return Kernel(self.order)
 
     @cached_property
-    def scaled_entries(self) -> Any:
-        """`Pattern.entries` with the scaling in its weights (exact)."""
-        factors = self.row_scale[self.pattern.rows] * self.col_scale[self.pattern.cols]
-        return _rows_times(self.pattern.entries, factors)
-
-    @cached_property
-    def scaled_taking(self) -> Any:
-        scaled = self.pattern.taking.copy()
-        scaled.data = scaled.data * self.col_scale[scaled.indices]
-        return scaled
-
-    @cached_property
-    def scaled_giving(self) -> Any:
-        """`Pattern.giving` scaled, its rows where right-hand sides keep them (`Order.place`)."""
-        source = np.empty(self.order.size, dtype=np.intp)
-        source[self.order.place] = np.arange(self.order.size)
-        return _rows_times(self.pattern.giving, self.row_scale)[source]
-
-
-def _rows_times(matrix: Any, factors: Floats) -> Any:
-    scaled = matrix.copy()
-    scaled.data = scaled.data * np.repeat(factors, np.diff(scaled.indptr))
-    return scaled
+    def giving(self) -> Giving:
+        """`Pattern.giving`, equations where the kernel keeps right-hand sides."""
+        return self.pattern.giving(self.order.place)
 
 
 def make_plan(system: System, s_samples: ArrayLike, pattern: Pattern | None = None) -> Plan:
@@ -91,16 +68,15 @@ def make_plan(system: System, s_samples: ArrayLike, pattern: Pattern | None = No
     if pattern is None:
         pattern = Pattern(system)
     s = np.atleast_1d(np.asarray(s_samples, dtype=complex))
-    entries: Complexes = pattern.entries @ pattern.coefficients(s)
-    row_exponent, col_exponent = _equilibrate(pattern, np.abs(entries))
-    row_scale, col_scale = np.ldexp(1.0, row_exponent), np.ldexp(1.0, col_exponent)
-    entries *= (row_scale[pattern.rows] * col_scale[pattern.cols])[:, None]
+    entries = pattern.matrix(s, pattern.function_values(s))
+    # Pivots are judged on the scaled matrix. The run needs no scaling: powers of two would change no rounding.
+    entries *= _equilibration(pattern, np.abs(entries))[:, None]
     try:
         order = eliminate(pattern.size, pattern.rows.tolist(), pattern.cols.tolist(), entries.tolist())
     except NoPivot:
         # Cancellation in double precision proves nothing: many digits decide, and give the order if there is one.
         order = exact_order(pattern, generic(s[0]))
-    return Plan(pattern, order, row_scale, col_scale)
+    return Plan(pattern, order)
 
 
 def generic(s: Any) -> complex:
@@ -145,18 +121,21 @@ def _null_support(stopped: NoPivot, pattern: Pattern, entries: Sequence[Any]) ->
     return [k for k, v in enumerate(x) if abs(v) > 1e-25 * largest]
 
 
-def _equilibrate(pattern: Pattern, magnitudes: Floats) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
-    """Exponents of two that bring the entries near 1 in the mean of their logarithms (after Curtis and Reid 1972)."""
-    known = magnitudes > 0
-    logs = np.log2(magnitudes, out=np.zeros_like(magnitudes), where=known & np.isfinite(magnitudes))
-    level = logs.sum(axis=1) / np.maximum(known.sum(axis=1), 1)
+def _equilibration(pattern: Pattern, magnitudes: Floats) -> Floats:
+    """Powers of two, one per entry, row factor times column factor, that bring the entries near 1.
+
+    In the mean of their logarithms over the samples, after Curtis and Reid 1972.
+    """
+    known = np.isfinite(magnitudes) & (magnitudes > 0)
+    logs = np.log2(magnitudes, out=np.zeros_like(magnitudes), where=known)
     used = known.any(axis=1)
-    rows, cols, level = pattern.rows[used], pattern.cols[used], level[used]
-    row_count = np.maximum(np.bincount(rows, minlength=pattern.size), 1)
-    col_count = np.maximum(np.bincount(cols, minlength=pattern.size), 1)
-    r, c = np.zeros(pattern.size), np.zeros(pattern.size)
-    for _ in range(8):
-        r = -np.bincount(rows, level + c[cols], minlength=pattern.size) / row_count
-        c = -np.bincount(cols, level + r[rows], minlength=pattern.size) / col_count
-    limit = 400
-    return np.rint(np.clip(r, -limit, limit)).astype(np.int64), np.rint(np.clip(c, -limit, limit)).astype(np.int64)
+    level = (logs.sum(axis=1) / np.maximum(known.sum(axis=1), 1))[used]
+    rows, cols, size = pattern.rows[used], pattern.cols[used], pattern.size
+    row_count = np.maximum(np.bincount(rows, minlength=size), 1)
+    col_count = np.maximum(np.bincount(cols, minlength=size), 1)
+    c = np.zeros(size)
+    for _ in range(6):
+        r = -np.bincount(rows, level + c[cols], minlength=size) / row_count
+        c = -np.bincount(cols, level + r[rows], minlength=size) / col_count
+    exponents = np.clip(np.rint(r)[pattern.rows] + np.rint(c)[pattern.cols], -900, 900)
+    return np.ldexp(np.ones(len(exponents)), exponents.astype(np.int64))

@@ -17,7 +17,7 @@ from numpy.typing import ArrayLike, NDArray
 from nodal.solver.arithmetic import MpArithmetic
 from nodal.solver.exact import Exact
 from nodal.solver.matrix import System
-from nodal.solver.pattern import Complexes, Floats
+from nodal.solver.pattern import Complexes, Floats, product
 from nodal.solver.plan import Plan, Singular, exact_order, generic, make_plan
 
 Source = Mapping[int, Any]
@@ -30,7 +30,7 @@ TOLERANCE = 1e-11
 
 _STEPS = 8
 _BLOCK_BYTES = 1 << 22
-_BLOCK_POINTS = (192, 1024)
+_BLOCK_POINTS = (192, 512)
 _DIGITS = (50, 100, 200)
 
 
@@ -138,7 +138,7 @@ class _Run:
 
     def _pass(self, plan: Plan, points: NDArray[np.intp], careful: bool) -> None:
         order, pattern = plan.order, plan.pattern
-        rows = order.slots + 3 * len(pattern.g) + 4 * order.size
+        rows = order.slots + len(pattern.g) + 4 * order.size
         per_block = int(np.clip(_BLOCK_BYTES // (16 * rows), *_BLOCK_POINTS))
         blocks = -(-len(points) // per_block)
         # Divisions by zero and overflow end as infinite estimates, which send the point further down the ladder.
@@ -218,8 +218,8 @@ class _Block:
 
     def __init__(self, plan: Plan, s: Complexes) -> None:
         self.plan, self.s = plan, s
-        self.coefficients = plan.pattern.coefficients(s)
-        entries = _product(plan.scaled_entries, self.coefficients)
+        self.functions = plan.pattern.function_values(s)
+        entries = plan.pattern.matrix(s, self.functions)
         fill = np.zeros((plan.order.slots - len(entries), len(s)), dtype=complex)
         self.w = [*entries, *fill]
         self.spare: Complexes = np.empty(len(s), dtype=complex)
@@ -228,12 +228,13 @@ class _Block:
     def quick(self, source: Source, outputs: Sequence[Output]) -> tuple[Complexes, Floats]:
         """One solution and one correction, the latter for the outputs only."""
         kernel, order = self.plan.kernel, self.plan.order
-        places = {int(order.place[k]): v * self.plan.row_scale[k] for k, v in source.items()}
+        places = {int(order.place[k]): v for k, v in source.items()}
         x = np.zeros((order.size, len(self.s)), dtype=complex)
         for place, value in places.items():
             x[place] = value
         kernel.solve(self.w, list(x), self.spare, kernel.forward_from(places))
-        correction = self._residual(x)
+        correction = self._current(x)
+        np.negative(correction, correction)
         for place, value in places.items():
             correction[place] += value
         kernel.solve(
@@ -244,11 +245,11 @@ class _Block:
         return values, _ratio(change, values)
 
     def right_side(self, source: Source) -> Complexes:
-        """Scaled, and ordered as the kernel wants it."""
+        """Ordered as the kernel wants it."""
         order = self.plan.order
         b = np.zeros((order.size, len(self.s)), dtype=complex)
         for k, value in source.items():
-            b[order.place[k]] = value * self.plan.row_scale[k]
+            b[order.place[k]] = value
         return b
 
     def careful(
@@ -258,10 +259,11 @@ class _Block:
         x, small, values, change = self._refine(b, outputs, None)
         results = [(values, _ratio(change, values))]
         if slopes:
-            drops = _product(self.plan.scaled_taking, x) + _product(self.plan.scaled_taking, small)
-            drops *= self.plan.pattern.slopes(self.s)
+            pattern = self.plan.pattern
+            drops = product(pattern.taking, x) + product(pattern.taking, small)
+            change_of_matrix = self.plan.giving.slope(drops, pattern.function_slopes(self.s))
             floor = np.abs(values / self.s)
-            _, _, slope, change = self._refine(-_product(self.plan.scaled_giving, drops), outputs, floor)
+            _, _, slope, change = self._refine(-change_of_matrix, outputs, floor)
             results.append((slope, _ratio(change, np.maximum(np.abs(slope), floor))))
         return results
 
@@ -275,7 +277,7 @@ class _Block:
         small = np.zeros_like(x)
         error: Floats | None = None
         for _ in range(_STEPS):
-            correction = b + self._residual(x, small)
+            correction = b - self._current(x, small)
             kernel.solve(self.w, list(correction), self.spare)
             small += correction
             total = x + small
@@ -289,26 +291,19 @@ class _Block:
                 break
         return x, small, values, change
 
-    def _residual(self, *parts: Complexes) -> Complexes:
-        """-A (sum of parts), term by term."""
-        drops = _product(self.plan.scaled_taking, parts[0])
+    def _current(self, *parts: Complexes) -> Complexes:
+        """A times the sum of the parts, term by term."""
+        drops = product(self.plan.pattern.taking, parts[0])
         for part in parts[1:]:
-            drops += _product(self.plan.scaled_taking, part)
-        drops *= self.coefficients
-        return -_product(self.plan.scaled_giving, drops)
+            drops += product(self.plan.pattern.taking, part)
+        return self.plan.giving.current(drops, self.s, self.functions)
 
     def _outputs(self, outputs: Sequence[Output], x: Complexes) -> Complexes:
         result = np.zeros((len(outputs), x.shape[1]), dtype=complex)
         for k, output in enumerate(outputs):
             for unknown, weight in output.items():
-                result[k] += x[unknown] * (weight * self.plan.col_scale[unknown])
+                result[k] += x[unknown] * weight
         return result
-
-
-def _product(matrix: Any, x: Complexes) -> Complexes:
-    """Real sparse times complex dense, without making the sparse one complex."""
-    result: Complexes = (matrix @ x.view(float)).view(complex)
-    return result
 
 
 def _ratio(change: Complexes, values: Any) -> Floats:
