@@ -231,7 +231,7 @@ class Builder(Transformer[Any, Any]):
     def parallel(self, c: Children) -> s.Parallel:
         return s.Parallel(tuple(c[::2]), span=_span(c))
 
-    def series(self, c: Children) -> s.Series:
+    def value(self, c: Children) -> s.Series:
         return s.Series(tuple(c[::2]), span=_span(c))
 
     # Qualifiers

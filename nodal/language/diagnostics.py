@@ -121,8 +121,8 @@ def render(diagnostics: Iterable[Diagnostic], sources: Mapping[str, str], *, col
 def as_json(diagnostics: Iterable[Diagnostic], sources: Mapping[str, str]) -> list[dict[str, Any]]:
     """[{"code", "severity", "path", "start", "end", "message", "help"}], sorted as `render` sorts them.
 
-    "start" and "end" are [line, column], 1-based, end exclusive; "path", "start" and "end" are None for what has
-    no place in a text.
+    "start" and "end" are [line, column], 1-based, end exclusive; these and "path" are None for what has no
+    place in a text.
     """
     texts = _Texts(sources)
     result = []
@@ -237,8 +237,7 @@ def _cells(char: str, at: int) -> tuple[str, int]:
 
 
 def visible(text: str) -> str:
-    """`text` with control, format and lone surrogate characters, which a terminal may act on, replaced by
-    �."""
+    """`text` with what a terminal may act on (control, format, lone surrogate characters) replaced by �."""
     if text.isascii() and text.isprintable():
         return text
     return "".join(

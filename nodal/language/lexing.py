@@ -145,6 +145,7 @@ class Lexer:
         if text.startswith("\ufeff"):
             position = 1
         match = _MASTER.match
+        hidden = _INVISIBLE.search(text, position) is not None
         while position < end and not self.too_deep:
             found = match(text, position)
             if found is None:
@@ -153,7 +154,7 @@ class Lexer:
             kind = found.lastgroup
             start, position = position, found.end()
             if kind == "space":
-                if not text.isascii():
+                if hidden:
                     self._check_hidden(start, position)
             elif kind == "word":
                 word = found.group()
@@ -310,7 +311,9 @@ class Lexer:
                 self._report("number-form", start, end, found=text[start:end], why=why, fix=fix)
                 self.lexemes.append(Lexeme(NUMBER, fixed[0], Span(self.path, start, end), fixed[1]))
                 return end
-            elif verdict in ("prefix", "unknown", "letters"):
+            elif verdict == "letters":
+                return self._bad_number_word(start, digits_end)
+            elif verdict in ("prefix", "unknown"):
                 return self._bad_unit(found, verdict)
         if _PLAIN_NUMBER.fullmatch(digits) is None:
             plain = self._bad_digits(start, end, digits, canonical)
@@ -503,6 +506,6 @@ def _letter_for_point(digits: str, unit: str, tail: str) -> tuple[str, str] | No
     rest = re.fullmatch(r"([0-9]+)([A-Za-zΩµ]*)", tail)
     if rest is None or not digits.isdigit():
         return None
-    letters = {"R": "Ω", "r": "Ω", "K": "kΩ"}.get(unit, unit) + rest.group(2)
+    letters = {"R": "Ω", "r": "Ω", "K": "kΩ", "v": "V"}.get(unit, unit) + rest.group(2)
     known = scan_unit(letters) or (nearest_unit(letters) if letters in _PREFIX_ALONE else None)
     return (f"{digits}.{rest.group(1)}", known) if known else None
