@@ -106,12 +106,9 @@ _STATEMENT_LINE = re.compile(
     )""",
     re.VERBOSE,
 )
-# One that can only stand outside all braces.
-_TOP_LINE = re.compile(
-    r"""[ \t]*(?:case[ \t]+\w+[ \t]*\{ | under[ \t]+test[ \t]*\{ | assembly[ \t]+\w+[ \t]*\(
-      | (?:title|include)[ \t]*")""",
-    re.VERBOSE,
-)
+_FIRST_WORD = re.compile(r"[ \t]*(\w+)")
+_PIECES = frozenset(("let", "branch", "coupling", "cable", "amplifier", "place", "chain"))
+_OUTSIDE_CASE = frozenset(("nodal", "title", "include", "case"))
 FIRST_VERSION = re.compile(r"\ufeff?(?:\s|#[^\r\n]*)*nodal[ \t]+([0-9]+)(?![\w.])")
 """The version at the head of a text."""
 
@@ -135,8 +132,6 @@ class Lexer:
         self._parentheses = 0
         self._braces_match = text.count("{") == text.count("}")
         self.too_deep = False
-        self.unclosed: list[Lexeme] = []
-        """Braces that nothing closes."""
 
     def run(self) -> list[Lexeme]:
         """All lexemes. Stops short where brackets nest too deeply (`too_deep`)."""
@@ -254,14 +249,13 @@ class Lexer:
                 self._emit(END, start, end)
 
     def _close_braces(self, start: int, end: int) -> None:
-        """Give up a brace where the next line cannot stand inside it and the file has too few closing
-        ones."""
-        if self._braces_match or not self._open:
+        """Give up a brace where the next line cannot stand inside it, in a file with too few closing ones."""
+        if self._braces_match:
             return
-        at_top = _TOP_LINE.match(self.text, end)
-        while self._open and (at_top or self._statement_word(self._open[-1]) in ("stock", "amplifier")):
+        next_word = _FIRST_WORD.match(self.text, end)
+        assert next_word is not None  # called where a statement begins on the next line
+        while self._open and not _stands_inside(next_word.group(1), self._statement_word(self._open[-1])):
             opener = self._open.pop()
-            self.unclosed.append(opener)
             self._report("unclosed", opener.span.start, opener.span.end, bracket="{", closer="}")
             self._emit("RBRACE", start, start, "}")
 
@@ -279,7 +273,6 @@ class Lexer:
         end = len(self.text)
         while self._open:
             opener = self._open.pop()
-            self.unclosed.append(opener)
             self._report("unclosed", opener.span.start, opener.span.end, bracket="{", closer="}")
             self._emit("RBRACE", end, end, "}")
 
@@ -469,6 +462,15 @@ class Lexer:
     def _report_hidden(self, start: int, end: int) -> None:
         char = self.text[start]
         self._report("hidden-character", start, end, found=f"U+{ord(char):04X}", what=character_name(char))
+
+
+def _stands_inside(word: str, block: str) -> bool:
+    """Whether a statement that begins with `word` may stand in the braces of one that begins with `block`."""
+    if block == "case":
+        return word not in _OUTSIDE_CASE
+    if block == "under":
+        return word in _PIECES or word in ("source", "stock", "assembly")
+    return block == "assembly" and word in _PIECES
 
 
 def _called(spelling: str) -> str:

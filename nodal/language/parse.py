@@ -60,7 +60,7 @@ def parse(text: str, path: str, collector: Collector) -> s.File:
     run = _Run(lexer, collector)
     statements = run.statements()
     file = replace(nothing, statements=statements, lost=frozenset(run.lost))
-    _check_places(file, lexer, collector)
+    _check_version(file, lexemes[0], collector)
     return file
 
 
@@ -426,61 +426,16 @@ def _nearest(word: str, among: Iterable[str]) -> str | None:
     return close[0] if close else None
 
 
-# What may stand where
-
-_NETWORK: tuple[type, ...] = (
-    s.Let, s.Source, s.Branch, s.Coupling, s.Stock, s.Cable, s.Amplifier, s.Place, s.Chain,
-)  # fmt: skip
-_INSIDE: dict[type, tuple[tuple[type, ...], str]] = {
-    s.UnderTest: (_NETWORK, "the circuit under test"),
-    s.Assembly: ((*_NETWORK, s.Contact, s.Reading, s.Allow), "an assembly"),
-    s.Case: (
-        (*_NETWORK, s.UnderTest, s.Contact, s.Reading, s.Drive, s.Assembly, s.Omit, s.Sweep, s.Edge,
-         s.Temperature, s.Require, s.Allow, s.Title),
-        "a case",
-    ),
-}  # fmt: skip
-
-
-def _check_places(file: s.File, lexer: lexing.Lexer, collector: Collector) -> None:
-    """The version comes first and once, and every statement stands where such a statement can."""
-    first = lexer.lexemes[0]
-    missing = first.text != "nodal"
-    if missing:
+def _check_version(file: s.File, first: Lexeme, collector: Collector) -> None:
+    """The version is the first statement, once."""
+    if first.text != "nodal":
         collector.add("missing-version", first.span, version=VERSION)
+        return
     for statement in file.statements:
-        if isinstance(statement, s.Version):
-            if statement.span.start != first.span.start and not missing:
-                collector.add("misplaced", _first_word(statement), what="the version", where="here",
-                              fix="it is the first statement of a file, once")  # fmt: skip
-            elif statement.number != VERSION and not missing:
-                span = Span(file.path, statement.span.start + len("nodal"), statement.span.end)
-                collector.add("bad-version", span, found=statement.number, version=VERSION)
-        elif isinstance(statement, s.Omit):
-            collector.add("misplaced", _first_word(statement), what="an omit", where="outside a case",
-                          fix="it leaves something out of one case: case NAME { omit NAME }")  # fmt: skip
-        elif type(statement) in _INSIDE and not lexer.unclosed:
-            _check_inside(statement, collector)
-
-
-def _check_inside(block: s.Statement, collector: Collector) -> None:
-    assert isinstance(block, s.UnderTest | s.Assembly | s.Case)
-    allowed, where = _INSIDE[type(block)]
-    for statement in block.body:
-        if not isinstance(statement, allowed):
-            word = _first_word(statement)
-            what = _article(collector.sources[word.path][word.start : word.end])
-            fix = "move it out of the braces" if not isinstance(statement, s.Omit) else "it belongs in a case"
-            collector.add("misplaced", word, what=what, where=f"inside {where}", fix=fix)
-        elif isinstance(statement, s.UnderTest | s.Assembly):
-            _check_inside(statement, collector)
-
-
-def _first_word(statement: s.Statement) -> Span:
-    word = _STATEMENT_WORDS.get(type(statement), type(statement).__name__.lower())
-    if isinstance(statement, s.Edge) and statement.ramp is None:
-        word = "step"
-    return Span(statement.span.path, statement.span.start, statement.span.start + len(word))
-
-
-_STATEMENT_WORDS: dict[type, str] = {s.Version: "nodal", s.UnderTest: "under"}
+        if not isinstance(statement, s.Version):
+            continue
+        if statement.span.start != first.span.start:
+            collector.add("version-again", statement.span)
+        elif statement.number != VERSION:
+            span = Span(file.path, statement.span.start + len("nodal "), statement.span.end)
+            collector.add("bad-version", span, found=statement.number, version=VERSION)

@@ -78,6 +78,14 @@ TEXT: tuple[Code, ...] = (
         "Versions are the whole numbers from 1 on, without a unit.",
         ("nodal 0\n", "nodal 1.0\n", "nodal 1 m\n"),
     ),
+    Code(
+        "version-again",
+        "error",
+        "the version stands here again",
+        "delete it: it is the first statement of a file, once",
+        "A file has one version, before everything else. An included file has its own.",
+        ("nodal 1\nlet a = 1\nnodal 1\n",),
+    ),
     # Characters
     Code(
         "look-alike",
@@ -266,18 +274,5 @@ TEXT: tuple[Code, ...] = (
         "A dot leads from a branch or a place to what is inside it: tip.C, p.upper. Such a name can be read "
         "and used, but not declared; it comes into being by itself.",
         ("nodal 1\nbranch a.b: c to ground = 1 Ω\n", "nodal 1\ncase a.b { let x = 1 }\n"),
-    ),
-    Code(
-        "misplaced",
-        "error",
-        "{what} cannot stand {where}",
-        "{fix}",
-        "Some statements hold for the whole file and stand outside all braces; omit stands in a case alone.",
-        (
-            "nodal 1\nomit a\n",
-            "nodal 1\nlet a = 1\nnodal 1\n",
-            "nodal 1\ncase a {\n  case b { let x = 1 }\n}\n",
-            "nodal 1\nunder test { sweep 1 Hz to 1 kHz, 3 per decade }\n",
-        ),
     ),
 )
