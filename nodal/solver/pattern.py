@@ -17,6 +17,10 @@ Complexes = NDArray[np.complex128]
 Ints = NDArray[np.intp]
 
 Weights = tuple[tuple[int, float], ...]
+Shares = list[tuple[int, int, float]]
+"""(row or entry, term, weight)"""
+
+_EPSILON = float(np.finfo(float).eps)
 
 
 class Pattern:
@@ -32,7 +36,7 @@ class Pattern:
         self.term_rows: list[Weights] = [_merged(term.rows, system.size) for term in system.terms]
         self.term_cols: list[Weights] = [_merged(term.cols, system.size) for term in system.terms]
         index: dict[tuple[int, int], int] = {}
-        self.shares: list[tuple[int, int, float]] = []
+        self.shares: Shares = []
         """(entry, term, weight): entry = sum of weight * coefficient of term."""
         for number, (rows, cols) in enumerate(zip(self.term_rows, self.term_cols, strict=True)):
             for i, row_weight in rows:
@@ -56,11 +60,18 @@ class Pattern:
         self.taking = compressed(
             [(t, k, w) for t, weights in enumerate(self.term_cols) for k, w in weights], (len(self.g), self.size))
 
-    def giving(self, place: Ints) -> Giving:
-        """How what terms carry is added to equations, equation i kept at place[i]."""
+    def shares_by(self, place: Ints) -> Shares:
+        """(place[equation], term, weight) for everything that terms give to equations."""
         at = place.tolist()
-        shares = [(at[k], t, w) for t, weights in enumerate(self.term_rows) for k, w in weights]
-        return Giving(self, shares)
+        return [(at[k], t, w) for t, weights in enumerate(self.term_rows) for k, w in weights]
+
+    def coefficients(self, s: Complexes, values: dict[int, Any]) -> Complexes:
+        """g + s c + F_f(s), (n_terms, n_points)."""
+        result: Complexes = np.multiply.outer(self.c, s)
+        result += self.g[:, None]
+        for term, value in values.items():
+            result[term] += value
+        return result
 
     def function_values(self, s: Complexes) -> dict[int, Any]:
         """F_f(s) of every term that has one."""
@@ -118,35 +129,67 @@ class Pattern:
 
 
 class Giving:
-    """Adds up what terms carry: sum of rows * (g + s c + F_f(s)) * drop, given every term's drop = cols·x.
+    """A x from every term's drop (cols·x), one product by s an equation, each summand off by up to eight roundings.
 
-    Constants and multiples of s are summed apart, so that one product by s serves an equation.
+    They are off on purpose, each by its own number. Currents that cancel in an equation leave a remainder that is
+    rounded, and sums like to come out as zero just where the remainder decides about the solution: a correction
+    computed from them would say that all is well. With these the correction shows what roundings can do.
     """
 
-    def __init__(self, pattern: Pattern, shares: list[tuple[int, int, float]]) -> None:
+    def __init__(self, pattern: Pattern, shares: Shares) -> None:
         shape = pattern.size, len(pattern.g)
         g, c = pattern.g.tolist(), pattern.c.tolist()
-        self._constant = compressed([(k, t, w * g[t]) for k, t, w in shares if g[t]], shape)
-        self._linear = compressed([(k, t, w * c[t]) for k, t, w in shares if c[t]], shape)
-        self._function = [share for share in shares if share[1] in pattern.functions]
+        start = np.random.default_rng(1).integers(0, 17, len(g)).tolist()
+        met = [0] * len(g)
+        spoilt: Shares = []
+        for k, t, w in shares:
+            spoilt.append((k, t, w * (1 + ((start[t] + 5 * met[t]) % 17 - 8) * _EPSILON)))
+            met[t] += 1
+        self._constant = compressed([(k, t, w * g[t]) for k, t, w in spoilt if g[t]], shape)
+        self._linear = compressed([(k, t, w * c[t]) for k, t, w in spoilt if c[t]], shape)
+        self._function = [share for share in spoilt if share[1] in pattern.functions]
 
     def current(self, drops: Complexes, s: Complexes, values: dict[int, Any]) -> Complexes:
         """A x, (size, n_points)."""
         result = product(self._linear, drops)
         result *= s
         result += product(self._constant, drops)
-        self._add_functions(result, drops, values)
-        return result
-
-    def slope(self, drops: Complexes, slopes: dict[int, Any]) -> Complexes:
-        """(dA/ds) x, (size, n_points)."""
-        result = product(self._linear, drops)
-        self._add_functions(result, drops, slopes)
-        return result
-
-    def _add_functions(self, result: Complexes, drops: Complexes, values: dict[int, Any]) -> None:
         for row, term, weight in self._function:
             result[row] += drops[term] * values[term] * weight
+        return result
+
+
+class Balance:
+    """Sums of what terms carry, to twice the working precision (two-sum, Knuth 1969)."""
+
+    def __init__(self, shares: Shares) -> None:
+        met: dict[int, int] = {}
+        levels: list[Shares] = []
+        for share in shares:
+            level = met.get(share[0], 0)
+            met[share[0]] = level + 1
+            if level == len(levels):
+                levels.append([])
+            levels[level].append(share)
+        self._levels = [
+            (np.array([k for k, _, _ in level]), np.array([t for _, t, _ in level]),
+             np.array([[w] for _, _, w in level], dtype=float))
+            for level in levels
+        ]
+
+    def remainder(self, b: Complexes, carried: Complexes) -> Complexes:
+        """b - sum of rows * carried, (size, n_points)."""
+        total, lost = b.copy().view(float), np.zeros_like(b).view(float)
+        flat = carried.view(float)
+        for rows, terms, weights in self._levels:
+            old, summand = total[rows], flat[terms] * -weights
+            new = old + summand
+            part = new - old
+            lost[rows] += (old - (new - part)) + (summand - part)
+            total[rows] = new
+        total += lost
+        result: Complexes = total.view(complex)
+        return result
 
 
 def product(matrix: Any, x: Complexes) -> Complexes:
@@ -174,7 +217,7 @@ def _merged(weights: Iterable[tuple[int, float]], size: int) -> Weights:
     return tuple((index, weight) for index, weight in total.items() if weight != 0.0)
 
 
-def compressed(shares: list[tuple[int, int, float]], shape: tuple[int, int]) -> Any:
+def compressed(shares: Shares, shape: tuple[int, int]) -> Any:
     """A sparse real matrix from (row, column, value), no position twice."""
     triples = np.array(shares, dtype=float).reshape(-1, 3)
     rows = triples[:, 0].astype(np.int32)

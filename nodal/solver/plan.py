@@ -14,7 +14,7 @@ from nodal.solver.arithmetic import MpArithmetic
 from nodal.solver.kernel import Kernel
 from nodal.solver.matrix import System
 from nodal.solver.order import NoPivot, Order, eliminate
-from nodal.solver.pattern import Floats, Giving, Pattern
+from nodal.solver.pattern import Balance, Floats, Giving, Pattern
 
 
 class Singular(Exception):
@@ -56,8 +56,13 @@ class Plan:
 
     @cached_property
     def giving(self) -> Giving:
-        """`Pattern.giving`, equations where the kernel keeps right-hand sides."""
-        return self.pattern.giving(self.order.place)
+        """Sums for the quick check, equations where the kernel keeps right-hand sides."""
+        return Giving(self.pattern, self.pattern.shares_by(self.order.place))
+
+    @cached_property
+    def balance(self) -> Balance:
+        """Sums of twice the precision, equations where the kernel keeps right-hand sides."""
+        return Balance(self.pattern.shares_by(self.order.place))
 
 
 def make_plan(system: System, s_samples: ArrayLike, pattern: Pattern | None = None) -> Plan:
@@ -138,4 +143,5 @@ def _equilibration(pattern: Pattern, magnitudes: Floats) -> Floats:
         r = -np.bincount(rows, level + c[cols], minlength=size) / row_count
         c = -np.bincount(cols, level + r[rows], minlength=size) / col_count
     exponents = np.clip(np.rint(r)[pattern.rows] + np.rint(c)[pattern.cols], -900, 900)
-    return np.ldexp(np.ones(len(exponents)), exponents.astype(np.int64))
+    factors: Floats = np.ldexp(np.ones(len(exponents)), exponents.astype(np.int64))
+    return factors

@@ -233,7 +233,8 @@ class _Block:
         for place, value in places.items():
             x[place] = value
         kernel.solve(self.w, list(x), self.spare, kernel.forward_from(places))
-        correction = self._current(x)
+        drops = product(self.plan.pattern.taking, x)
+        correction = self.plan.giving.current(drops, self.s, self.functions)
         np.negative(correction, correction)
         for place, value in places.items():
             correction[place] += value
@@ -260,10 +261,12 @@ class _Block:
         results = [(values, _ratio(change, values))]
         if slopes:
             pattern = self.plan.pattern
-            drops = product(pattern.taking, x) + product(pattern.taking, small)
-            change_of_matrix = self.plan.giving.slope(drops, pattern.function_slopes(self.s))
+            slopes_of_terms = np.repeat(pattern.c[:, None], len(self.s), axis=1).astype(complex)
+            for term, value in pattern.function_slopes(self.s).items():
+                slopes_of_terms[term] += value
+            b = self.plan.balance.remainder(np.zeros_like(b), slopes_of_terms * self._drops(x, small))
             floor = np.abs(values / self.s)
-            _, _, slope, change = self._refine(-change_of_matrix, outputs, floor)
+            _, _, slope, change = self._refine(b, outputs, floor)
             results.append((slope, _ratio(change, np.maximum(np.abs(slope), floor))))
         return results
 
@@ -272,12 +275,13 @@ class _Block:
     ) -> tuple[Complexes, Complexes, Complexes, Complexes]:
         """(x, small, outputs, their last change); x + small, unevaluated, holds differences of nearly equal unknowns."""
         kernel = self.plan.kernel
+        coefficients = self.plan.pattern.coefficients(self.s, self.functions)
         x = b.copy()
         kernel.solve(self.w, list(x), self.spare)
         small = np.zeros_like(x)
         error: Floats | None = None
         for _ in range(_STEPS):
-            correction = b - self._current(x, small)
+            correction = self.plan.balance.remainder(b, coefficients * self._drops(x, small))
             kernel.solve(self.w, list(correction), self.spare)
             small += correction
             total = x + small
@@ -291,12 +295,8 @@ class _Block:
                 break
         return x, small, values, change
 
-    def _current(self, *parts: Complexes) -> Complexes:
-        """A times the sum of the parts, term by term."""
-        drops = product(self.plan.pattern.taking, parts[0])
-        for part in parts[1:]:
-            drops += product(self.plan.pattern.taking, part)
-        return self.plan.giving.current(drops, self.s, self.functions)
+    def _drops(self, x: Complexes, small: Complexes) -> Complexes:
+        return product(self.plan.pattern.taking, x) + product(self.plan.pattern.taking, small)
 
     def _outputs(self, outputs: Sequence[Output], x: Complexes) -> Complexes:
         result = np.zeros((len(outputs), x.shape[1]), dtype=complex)
