@@ -1,6 +1,7 @@
 """External inductance of straight wires and loops, from their shape; numbers and numpy arrays alike.
 
-External: the field inside the conductor is left out, as it is where skin effect confines the current to the surface.
+External: the field inside the conductor is left out, as it is where skin effect confines the current to the
+surface.
 All formulas are for thin round wire (radius r small against every other length) in free space.
 """
 
@@ -25,7 +26,8 @@ def wire(length: Any, diameter: Any) -> Any:
 
 
 def rectangle(length: Any, width: Any, diameter: Any) -> Any:
-    """H: a rectangular loop of round wire, sides `length` and `width` between wire centres in m (Grover 1946, ch. 8).
+    """H: a rectangular loop of round wire, sides `length` and `width` between wire centres in m (Grover
+    1946, ch. 8).
 
     (µ0/π) [a ln(2a/r) + b ln(2b/r) + 2 √(a² + b²) - a asinh(a/b) - b asinh(b/a) - 2 (a + b)].
     """
@@ -45,4 +47,5 @@ SHAPES: dict[str, tuple[Callable[..., Any], tuple[str, ...]]] = {
     "rectangle": (rectangle, ("length", "width", "diameter")),
     "circle": (circle, ("loop diameter", "wire diameter")),
 }
-"""Geometry functions of the language by name, with what their arguments are called; the last is the wire's diameter."""
+"""Geometry functions of the language by name, with what their arguments are called; the last is the wire's
+diameter."""

@@ -1,4 +1,5 @@
-"""A part's value: the number the solver uses, and what the text says about its spread, trim, limits and drift.
+"""A part's value: the number the solver uses, and what the text says about its spread, trim, limits and
+drift.
 
 Everything is in SI base units. Nothing here knows how values are written.
 """
@@ -54,7 +55,8 @@ class Drift:
 
 @dataclass(frozen=True, slots=True)
 class Random:
-    """One random quantity: a toleranced `let`, argument or literal. Values that name the same one move together."""
+    """One random quantity: a toleranced `let`, argument or literal. Values that name the same one move
+    together."""
 
     name: str
     nominal: float
@@ -76,7 +78,8 @@ class Formula:
     def evaluate(self, drawn: Mapping[str, Any]) -> Any:
         """The value with `drawn[name]` (number or array, SI) in place of each random quantity.
 
-        What is not drawn stands at its nominal value. Each part of a formula is worked out once however often it
+        What is not drawn stands at its nominal value. Each part of a formula is worked out once however
+        often it
         stands there, and nesting needs no deep recursion.
         """
         done: dict[int, Any] = {}

@@ -1,20 +1,21 @@
-"""Expressions to quantities: arithmetic with its dimensions, functions, qualifiers. Mistakes go to the collector."""
+"""Expressions to quantities: arithmetic with its dimensions, functions, qualifiers. Mistakes go to the
+collector."""
 
 from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Sequence
 from dataclasses import replace
-from typing import NoReturn
+from typing import Any, NoReturn
 
 from nodal import geometry
 from nodal.language import syntax, units
 from nodal.language.diagnostics import Collector
 from nodal.language.quantity import LARGEST_FORMULA, PI, Quantity, literal, operate
-from nodal.language.scope import Binding, Rejected, Scope, children, nearest
+from nodal.language.scope import Binding, Rejected, Scope, nearest
 from nodal.language.syntax import Span
 from nodal.language.units import Dimension
-from nodal.values import Drift, Rating, Tolerance, Trim, Value
+from nodal.values import Drift, Rating, Tolerance, Trim
 
 FUNCTIONS = ("sqrt", "min", "max", *geometry.SHAPES)
 
@@ -40,12 +41,27 @@ _APART = (units.DECIBEL, units.CELSIUS)
 class Evaluator:
     """Works out expressions in a scope; a wrong one is reported once and raises `Rejected`."""
 
-    def __init__(self, collector: Collector) -> None:
+    def __init__(self, collector: Collector, lost: frozenset[str] = frozenset()) -> None:
         self.collector = collector
+        self.lost = lost
+        """Words of statements that could not be read: what is unknown may have been declared there."""
+        self.uses: list[tuple[Span, str]] = []
+        """The places and chains being expanded, outermost first."""
 
-    def reject(self, code: str, span: Span, **arguments: object) -> NoReturn:
+    def report(self, code: str, span: Span, **arguments: Any) -> None:
+        """Add a finding, with the places of use that led to it."""
+        self.collector.add(code, span, related=tuple(reversed(self.uses)), **arguments)
+
+    def reject(self, code: str, span: Span, **arguments: Any) -> NoReturn:
         """Report a finding and give up on what is being worked out."""
-        self.collector.add(code, span, **arguments)
+        self.report(code, span, **arguments)
+        raise Rejected
+
+    def unknown(self, what: str, span: Span, name: str, known: Iterable[str]) -> NoReturn:
+        """Report a name that nothing bears, unless what bears it may be a statement that could not be
+        read."""
+        if name not in self.lost and name.partition(".")[0] not in self.lost:
+            self.report("unknown-name", span, what=what, unknown=name, hint=nearest(name, known))
         raise Rejected
 
     def value(
@@ -55,7 +71,8 @@ class Evaluator:
         dimensions: Dimension | Sequence[Dimension] | None = None,
         qualifiers: Iterable[Kind] = (),
     ) -> Quantity:
-        """A quantity with its qualifiers, of one of `dimensions` (None: any), bearing none but those allowed."""
+        """A quantity with its qualifiers, of one of `dimensions` (None: any), bearing none but those
+        allowed."""
         if isinstance(expression, syntax.Qualified):
             quantity = self._qualified(expression, scope, frozenset(qualifiers))
         else:
@@ -103,7 +120,7 @@ class Evaluator:
         """Report lets that refer to themselves."""
         names = [binding.word.text for binding in bindings]
         first = min(bindings, key=lambda binding: (binding.word.span.path, binding.word.span.start))
-        self.collector.add("let-cycle", first.word.span, names=" -> ".join([*names, names[0]]))
+        self.report("let-cycle", first.word.span, names=" -> ".join([*names, names[0]]))
 
     # Arithmetic
 
@@ -150,8 +167,7 @@ class Evaluator:
         except KeyError:
             if name.text == "pi":
                 return PI
-            self.reject("unknown-name", name.span, what="value", unknown=name.text,
-                        hint=nearest(name.text, [*scope.names(), "pi"]))  # fmt: skip
+            self.unknown("value", name.span, name.text, [*scope.names(), "pi"])
         if quantity is None:
             raise Rejected
         return quantity
@@ -228,8 +244,7 @@ class Evaluator:
     def _call(self, call: syntax.Call, arguments: list[Quantity]) -> Quantity:
         name = call.function.text
         if name not in FUNCTIONS:
-            self.reject("unknown-name", call.function.span, what="function", unknown=name,
-                        hint=nearest(name, FUNCTIONS))  # fmt: skip
+            self.unknown("function", call.function.span, name, FUNCTIONS)
         for argument, node in zip(arguments, call.arguments, strict=True):
             self._apart(argument, node.span)
         if name in geometry.SHAPES:
@@ -368,7 +383,7 @@ def _bears(quantity: Quantity, kind: Kind) -> bool:
         syntax.DriftRates: value.drift is not None,
         syntax.LossFactor: bool(quantity.loss),
     }
-    return present.get(kind, False)  # type: ignore[call-overload]
+    return present.get(kind, False)
 
 
 def _is_literal(expression: syntax.Expression) -> bool:
@@ -376,18 +391,3 @@ def _is_literal(expression: syntax.Expression) -> bool:
         expression = expression.operand
     return isinstance(expression, syntax.Number)
 
-
-def has_network(expression: syntax.Expression) -> bool:
-    """Whether ∥ or -- stands anywhere in an expression."""
-    waiting: list[object] = [expression]
-    while waiting:
-        node = waiting.pop()
-        if isinstance(node, syntax.Parallel | syntax.Series):
-            return True
-        waiting.extend(children(node))
-    return False
-
-
-def exact(value: Value) -> Value:
-    """The value without its spread."""
-    return Value(value.nominal)

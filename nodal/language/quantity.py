@@ -12,7 +12,8 @@ from nodal.language.units import Dimension
 from nodal.values import Formula, Random, Value, apply
 
 LARGEST_FORMULA = 100_000
-"""Operations in one formula of random quantities, written out; lets that double each other grow without bound."""
+"""Operations in one formula of random quantities, written out; lets that double each other grow without
+bound."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -78,7 +79,8 @@ def formula_of(quantity: Quantity) -> Formula:
 
 
 def randomised(quantity: Quantity, name: str) -> Quantity:
-    """The quantity with its own tolerance made a random quantity of that name, so that every use moves together."""
+    """The quantity with its own tolerance made a random quantity of that name, so that every use moves
+    together."""
     value = quantity.value
     if value.tolerance is None:
         return quantity

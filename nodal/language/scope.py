@@ -7,15 +7,16 @@ no deep recursion and a circle is found and named. What failed once is remembere
 from __future__ import annotations
 
 import difflib
-from collections.abc import Callable, Iterable, Iterator, Mapping
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
 from nodal.language import syntax
+from nodal.language.order import groups
 from nodal.language.syntax import Span
 
 if TYPE_CHECKING:
-    from nodal.language.evaluate import Quantity
+    from nodal.language.quantity import Quantity
 
 
 class Rejected(Exception):
@@ -28,7 +29,6 @@ class Binding:
 
     word: syntax.Word
     expression: syntax.Expression
-    settled: bool = False
     value: Quantity | None = None
 
 
@@ -66,62 +66,18 @@ class Scope:
             scope = scope.parent
 
     def settle(self, evaluate: Callable[[Binding, Scope], Quantity], circle: Callable[[list[Binding]], None]) -> None:
-        """Work out every let. `evaluate` raises Rejected for a wrong one; `circle` is told of each circle once."""
-        for members in _in_order(self.lets):
-            if len(members) > 1 or members[0].word.text in names_in(members[0].expression):
+        """Work out every let. `evaluate` raises Rejected for a wrong one; `circle` is told of each circle
+        once."""
+        uses = {name: names_in(binding.expression) for name, binding in self.lets.items()}
+        for group in groups(self.lets, lambda name: (used for used in uses[name] if used in self.lets)):
+            members = [self.lets[name] for name in group]
+            if len(group) > 1 or group[0] in uses[group[0]]:
                 circle(members)
-                for binding in members:
-                    binding.settled = True
                 continue
-            binding = members[0]
-            if not binding.settled:
-                binding.settled = True
-                try:
-                    binding.value = evaluate(binding, self)
-                except Rejected:
-                    binding.value = None
-
-
-def _in_order(lets: Mapping[str, Binding]) -> list[list[Binding]]:
-    """Lets grouped into circles (mostly of one), each after what it depends on: Tarjan 1972, without recursion."""
-    index: dict[str, int] = {}
-    low: dict[str, int] = {}
-    held: list[str] = []
-    on_hold: set[str] = set()
-    groups: list[list[Binding]] = []
-    for start in lets:
-        if start in index:
-            continue
-        walk: list[tuple[str, Iterator[str]]] = []
-        _enter(start, lets, index, low, held, on_hold, walk)
-        while walk:
-            name, successors = walk[-1]
-            following = next(successors, None)
-            if following is None:
-                walk.pop()
-                if walk:
-                    low[walk[-1][0]] = min(low[walk[-1][0]], low[name])
-                if low[name] == index[name]:
-                    position = held.index(name)
-                    group = held[position:]
-                    del held[position:]
-                    on_hold.difference_update(group)
-                    groups.append([lets[member] for member in group])
-            elif following not in index:
-                _enter(following, lets, index, low, held, on_hold, walk)
-            elif following in on_hold:
-                low[name] = min(low[name], index[following])
-    return groups
-
-
-def _enter(
-    name: str, lets: Mapping[str, Binding], index: dict[str, int], low: dict[str, int], held: list[str],
-    on_hold: set[str], walk: list[tuple[str, Iterator[str]]],
-) -> None:  # fmt: skip
-    index[name] = low[name] = len(index)
-    held.append(name)
-    on_hold.add(name)
-    walk.append((name, iter([used for used in names_in(lets[name].expression) if used in lets])))
+            try:
+                members[0].value = evaluate(members[0], self)
+            except Rejected:
+                members[0].value = None
 
 
 def names_in(expression: syntax.Expression) -> dict[str, Span]:
@@ -134,6 +90,21 @@ def names_in(expression: syntax.Expression) -> dict[str, Span]:
             found.setdefault(node.text, node.span)
         elif not isinstance(node, syntax.Number):
             waiting.extend(reversed(list(children(node))))
+    return found
+
+
+def names_in_statements(statements: Iterable[syntax.Statement]) -> set[str]:
+    """Every name that stands anywhere in statements: values, stocks, assemblies."""
+    found: set[str] = set()
+    waiting: list[object] = list(statements)
+    while waiting:
+        node = waiting.pop()
+        if isinstance(node, syntax.Name | syntax.Word):
+            found.add(node.text)
+        elif isinstance(node, tuple):
+            waiting.extend(node)
+        elif isinstance(node, syntax.Node):
+            waiting.extend(getattr(node, name) for name in node.__dataclass_fields__ if name != "span")
     return found
 
 

@@ -32,7 +32,8 @@ def test_rectangle() -> None:
 
 
 def test_rectangle_from_neumann_integrals() -> None:
-    # Four partial self inductances (Rosa 1908) less the mutual inductances of opposite sides, Neumann's double
+    # Four partial self inductances (Rosa 1908) less the mutual inductances of opposite sides, Neumann's
+    # double
     # integral in 30 digits; adjacent sides stand at right angles and do not couple.
     a, b, r = mpmath.mpf("0.15"), mpmath.mpf("0.03"), mpmath.mpf("0.0005")
     with mpmath.workdps(30):

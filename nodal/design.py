@@ -1,0 +1,253 @@
+"""A design as scripts use it: load a text, get the network of a case, sweep it.
+
+>>> import nodal
+>>> design = nodal.loads("nodal 1; source s: a to ground = 1 V; reading m: a to ground times 10")
+>>> float(abs(design.network().sweep([1e3]).reading("m")[0]))
+10.0
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass, field
+from functools import cached_property
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from nodal.language import syntax
+from nodal.language.diagnostics import Collector, DesignError, Diagnostic
+from nodal.language.expand import Expanded, Override, expand
+from nodal.language.parse import parse, read
+from nodal.language.program import NOMINAL, Program, Reader, gather
+from nodal.language.scope import names_in_statements, nearest
+from nodal.language.syntax import Span
+from nodal.network import Network
+from nodal.place import Place
+
+if TYPE_CHECKING:
+    from nodal.response import Response
+    from nodal.topology import Finding
+
+__all__ = ["Design", "DesignError", "Model", "Sweep", "load", "loads"]
+
+
+def load(path: str) -> Design:
+    """The design in a file, "-" for standard input. Raises DesignError with everything that is wrong with it."""
+    collector = Collector()
+    text = read(path, collector)
+    if text is None:
+        raise DesignError(collector.found, collector.sources)
+    return loads(text, "<standard input>" if path == "-" else path)
+
+
+def loads(text: str, path: str = "<text>", *, read_include: Reader | None = None) -> Design:
+    """The design in a text; `path` stands in messages, and includes are looked for beside it.
+
+    `read_include(path, collector)` gives the text of an included file where it is not on disk. Raises DesignError
+    with all errors: of the text, of the meaning and connections of every case.
+    """
+    collector = Collector(sources={path: text})
+    file = parse(text, path, collector)
+    program = gather(file, collector, parse, read_include or read)
+    design = Design(path, program, collector.sources)
+    design.check(collector)
+    return design
+
+
+@dataclass(slots=True)
+class Design:
+    """A design without errors. `diagnostics` holds its warnings and notes."""
+
+    path: str
+    program: Program = field(repr=False)
+    sources: dict[str, str] = field(repr=False)
+    """Text of every file read, by path."""
+    diagnostics: list[Diagnostic] = field(default_factory=list)
+    _networks: dict[str, Network] = field(default_factory=dict, repr=False)
+
+    @property
+    def title(self) -> str:
+        return self.program.title()
+
+    @property
+    def cases(self) -> tuple[str, ...]:
+        """Names of the cases, "nominal" (the file without any) first."""
+        return self.program.case_names
+
+    def network(self, case: str | None = None, **lets: float | str) -> Model:
+        """The network of a case (None: nominal), ready to be evaluated.
+
+        `lets` set values in place of what the file or the case says: a number in SI units, or text ("12 mm ± 1 mm").
+        Arguments of places have dotted names: `design.network(**{"n.skew": 0.01})`. Raises DesignError where that
+        gives no network, KeyError for a case that does not exist.
+        """
+        case = case or NOMINAL
+        if case not in self.cases:
+            raise KeyError(f"no case {case!r}; {nearest(case, self.cases)}")
+        if not lets:
+            return Model(self._networks[case], case)
+        collector = Collector(sources=dict(self.sources))
+        overrides = parse_overrides(lets, collector)
+        network = None if collector.failed else self._expand(case, collector, overrides).network
+        if network is not None:
+            topology(network, collector)
+        if network is None or collector.failed:
+            raise DesignError(distinct(collector.found), collector.sources)
+        return Model(network, case)
+
+    def check(self, collector: Collector) -> None:
+        """Expands and checks every case; raises DesignError with all errors, else keeps networks and warnings."""
+        used: set[str] = set()
+        readable = not collector.failed
+        for case in self.cases:
+            expanded = self._expand(case, collector, {})
+            used |= expanded.used
+            if expanded.network is not None:
+                self._networks[case] = expanded.network
+                if readable:
+                    topology(expanded.network, collector)
+        self._unused(used, collector)
+        found = distinct(collector.found)
+        if collector.failed:
+            raise DesignError(found, self.sources)
+        allowed = frozenset().union(*(network.allowed for network in self._networks.values()))
+        self.diagnostics = [finding for finding in found if (finding.code, finding.name) not in allowed]
+
+    def _expand(self, case: str, collector: Collector, overrides: Mapping[str, Override]) -> Expanded:
+        return expand(self.program, case, collector, overrides)
+
+    def _unused(self, used: set[str], collector: Collector) -> None:
+        """Warns of values and stocks of the main file that no case uses; included files may hold more than that."""
+        if collector.failed:
+            return
+        statements = [item.statement for item in self.program.items]
+        statements += [statement for case in self.program.cases.values() for statement in case.body]
+        idle = [s for s in statements if isinstance(s, syntax.Assembly) and s.name.text not in used]
+        used = used | names_in_statements(idle)
+        for statement in statements:
+            if not isinstance(statement, syntax.Let | syntax.Stock) or statement.span.path != self.path:
+                continue
+            name = statement.name.text
+            if name not in used and "." not in name:
+                code = "unused-let" if isinstance(statement, syntax.Let) else "unused-stock"
+                collector.add(code, statement.name.span, name=name, unused=name)
+
+
+def parse_overrides(lets: Mapping[str, float | str], collector: Collector) -> dict[str, Override]:
+    """Values given from outside: numbers as they are, text as the language reads it."""
+    overrides: dict[str, Override] = {}
+    for name, value in lets.items():
+        if not isinstance(value, str):
+            overrides[name] = float(value)
+            continue
+        path = f"--let {name}"
+        file = parse(f"nodal 1\nlet x = {value}", path, collector)
+        found = [statement for statement in file.statements if isinstance(statement, syntax.Let)]
+        if len(found) == 1 and len(file.statements) == 2:
+            overrides[name] = found[0].value
+        elif not collector.failed:
+            collector.add("override-form", Span(path, 0, 0), name_=name)
+    return overrides
+
+
+def topology(network: Network, collector: Collector) -> None:
+    """Adds what is wrong or odd about the connections."""
+    from nodal.topology import check
+
+    for finding in check(network):
+        _add_finding(finding, network, collector)
+
+
+def _add_finding(finding: Finding, network: Network, collector: Collector) -> None:
+    span = span_of(finding.place, collector.sources) if finding.place is not None else None
+    name = finding.names[0] if finding.names else ""
+    collector.add(finding.code, span, name=name, **finding.arguments)
+
+
+def span_of(place: Place, sources: Mapping[str, str]) -> Span | None:
+    """The characters of a place; None where its text is not at hand."""
+    from nodal.language.builder import line_starts
+
+    text = sources.get(place.path)
+    if text is None:
+        return None
+    starts = line_starts(text)
+    return Span(place.path, starts[place.line - 1] + place.column - 1, starts[place.end_line - 1] + place.end_column - 1)
+
+
+def distinct(found: Iterable[Diagnostic]) -> list[Diagnostic]:
+    """Each finding once: cases share most of their statements, and so most of their mistakes."""
+    seen: set[tuple[Any, ...]] = set()
+    kept = []
+    for finding in found:
+        span = finding.span
+        place = (span.path, span.start, span.end) if span is not None else None
+        key = (finding.code, place, finding.message)
+        if key not in seen:
+            seen.add(key)
+            kept.append(finding)
+    return kept
+
+
+@dataclass(frozen=True)
+class Model:
+    """The network of one case with its curves."""
+
+    network: Network
+    case: str = NOMINAL
+
+    @cached_property
+    def response(self) -> Response:
+        """Curves at any frequency, planned once."""
+        from nodal.response import Response
+
+        return Response(self.network)
+
+    def sweep(self, frequencies: ArrayLike, *, drive: str | None = None) -> Sweep:
+        """Readings, contacts and nodes at `frequencies` (Hz, any shape, 0 included), per unit of the drive.
+
+        Raises KeyError for a drive that does not exist, ValueError where a drive has to be chosen.
+        """
+        return Sweep(self, np.asarray(frequencies, dtype=np.float64), self.drive(drive))
+
+    def drive(self, name: str | None = None) -> str:
+        """The drive of that name, or the default one; ValueError where there is none."""
+        known = [drive.name for drive in self.network.drives]
+        chosen = name or self.network.default_drive
+        if chosen is None:
+            raise ValueError("several sources and no drive: choose one of " + ", ".join(known))
+        if chosen not in known:
+            raise KeyError(f"no drive {chosen!r}; {nearest(chosen, known)}")
+        return chosen
+
+
+@dataclass(frozen=True)
+class Sweep:
+    """Curves at the given frequencies; complex arrays of their shape, per unit of the drive. KeyError: no such name."""
+
+    model: Model
+    frequencies: NDArray[np.float64]
+    """Hz."""
+    drive: str
+
+    def reading(self, name: str) -> NDArray[np.complex128]:
+        """What a reading displays, `times` included."""
+        return self.model.response.reading(self.frequencies, name, self.drive).values
+
+    def voltage(self, node: str) -> NDArray[np.complex128]:
+        """V: a node against ground."""
+        return self.model.response.node(self.frequencies, node, self.drive).values
+
+    def impedance(self, contact: str) -> NDArray[np.complex128]:
+        """Ω: the chain alone seen at a contact."""
+        return self.model.response.impedance(self.frequencies, contact).values
+
+    def loaded(self, contact: str) -> NDArray[np.complex128]:
+        """V: at a contact with the chain connected."""
+        return self.model.response.loaded(self.frequencies, contact, self.drive).values
+
+    def undisturbed(self, contact: str) -> NDArray[np.complex128]:
+        """V: at a contact of the circuit alone. Raises `nodal.response.Unavailable` where there is none."""
+        return self.model.response.undisturbed(self.frequencies, contact, self.drive).values

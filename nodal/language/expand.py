@@ -1,0 +1,525 @@
+"""From statements to the flat network of one case. The order of lines does not matter."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Iterable, Mapping
+from dataclasses import dataclass, field, replace
+
+from nodal.language import syntax, units
+from nodal.language.amplifiers import expand_amplifier
+from nodal.language.assemblies import (
+    bind_nodes,
+    check_assemblies,
+    check_size,
+    evaluate_arguments,
+    inner_scope,
+    section_count,
+)
+from nodal.language.builder import MOST_PARTS, NetworkBuilder, TooLarge
+from nodal.language.cables import StockData, expand_cable, work_out_stock
+from nodal.language.diagnostics import Collector
+from nodal.language.evaluate import SPREAD, Evaluator
+from nodal.language.frame import Frame
+from nodal.language.networks import expand_network
+from nodal.language.program import Item, Program, case_items, name_of
+from nodal.language.quantity import Quantity, number, randomised
+from nodal.language.requirements import resolve_requirement
+from nodal.language.scope import Binding, Rejected, Scope, nearest
+from nodal.network import Contact, Drive, Network, Reading, SweepGrid, Stimulus
+from nodal.parts.coupling import Coupling
+from nodal.parts.inductor import Inductor
+from nodal.parts.source import CurrentSource, VoltageSource
+
+MOST_POINTS = 2_000_000
+FREEZING = 273.15
+"""0 °C in K."""
+ROOM = 296.15
+"""K: 23 °C, where nothing else is said."""
+
+Override = float | syntax.Expression
+"""A let's or an argument's value from outside: a number in SI units, or an expression."""
+
+
+@dataclass(slots=True)
+class Expanded:
+    """A case's network, None where it has errors, and which names it made use of."""
+
+    network: Network | None
+    used: set[str] = field(default_factory=set)
+
+
+def expand(
+    program: Program, case: str, collector: Collector, overrides: Mapping[str, Override] | None = None
+) -> Expanded:
+    """The network of one case; mistakes go to the collector. `overrides` win over every `let` and
+    argument."""
+    return _Expansion(program, case, collector, overrides or {}).run()
+
+
+class _Expansion:
+    def __init__(
+        self, program: Program, case: str, collector: Collector, overrides: Mapping[str, Override]
+    ) -> None:
+        self.program = program
+        self.case = case
+        self.collector = collector
+        self.before = len(collector.found)
+        self.evaluator = Evaluator(collector, program.lost)
+        self.builder = NetworkBuilder(collector)
+        self.overrides = overrides
+        self.items = case_items(program, case, collector)
+        self.splits = program.splits or any(item.under_test for item in self.items)
+        self.scope = Scope()
+        self.top = Frame(self.builder, self.evaluator, self.scope)
+        self.stocks: dict[str, syntax.Stock] = {}
+        self.stock_data: dict[str, StockData | None] = {}
+        self.assemblies: dict[str, syntax.Assembly] = {}
+        self.arguments: dict[str, tuple[syntax.Word | None, Quantity | None]] = {}
+        """Values for the arguments of places, by their dotted name, and where each was written."""
+        self.known_arguments: set[str] = set()
+        self.couplings: list[tuple[syntax.Coupling, Frame]] = []
+        self.pending = 1
+        """How many times what is being expanded will be repeated by the chains around it."""
+        self.contacts: dict[str, Contact] = {}
+        self.readings: dict[str, Reading] = {}
+        self.sources: dict[str, str] = {}
+        """Unit of each source by name."""
+        self.drives: dict[str, Drive] = {}
+        self.first_drive: str | None = None
+        self.used_names: set[str] = set()
+
+    def run(self) -> Expanded:
+        try:
+            self.definitions()
+            self.parts()
+            self.all_couplings()
+            self.check_arguments()
+            self.observers()
+            network = self.network()
+        except TooLarge:
+            network = None
+        failed = any(finding.severity == "error" for finding in self.collector.found[self.before :])
+        return Expanded(None if failed else network, self.used_names | self.scope.used)
+
+    def each(self, *kinds: type) -> Iterable[Item]:
+        return [item for item in self.items if isinstance(item.statement, kinds)]
+
+    @staticmethod
+    def guarded(action: Callable[..., object], *arguments: object) -> None:
+        """What is wrong with one statement does not keep the next from being looked at."""
+        try:
+            action(*arguments)
+        except Rejected:
+            return
+
+    # Values, stocks and assemblies
+
+    def definitions(self) -> None:
+        dotted: list[syntax.Let] = []
+        for item in self.each(syntax.Let, syntax.Stock, syntax.Assembly):
+            statement = item.statement
+            if isinstance(statement, syntax.Stock):
+                self.stocks[statement.name.text] = statement
+            elif isinstance(statement, syntax.Assembly):
+                self.assemblies[statement.name.text] = statement
+            elif isinstance(statement, syntax.Let):
+                if "." in statement.name.text:
+                    dotted.append(statement)
+                else:
+                    self.scope.lets[statement.name.text] = Binding(statement.name, statement.value)
+        self.scope.settle(self.let, self.evaluator.circle)
+        for statement in dotted:
+            try:
+                value = self.evaluator.value(statement.value, self.scope, None, SPREAD)
+            except Rejected:
+                self.arguments[statement.name.text] = (statement.name, None)
+            else:
+                self.arguments[statement.name.text] = (statement.name, value)
+        for name, override in self.overrides.items():
+            if "." in name:
+                self.arguments[name] = (None, self.overriding(override, None))
+        for name in check_assemblies(self.assemblies, self.collector):
+            del self.assemblies[name]
+        check_size(self.assemblies, (item.statement for item in self.items), self.collector)
+
+    def let(self, binding: Binding, scope: Scope) -> Quantity:
+        name = binding.word.text
+        quantity = self.evaluator.let(binding, scope)
+        if scope is self.scope and name in self.overrides:
+            quantity = self.overriding(self.overrides[name], quantity)
+        return randomised(quantity, scope.prefix + name)
+
+    def overriding(self, override: Override, written: Quantity | None) -> Quantity:
+        """A value from outside, in the dimension of what was written."""
+        dimension = written.dimension if written is not None else units.NONE
+        if isinstance(override, int | float):
+            return number(float(override), dimension)
+        allowed = None if written is None else dimension
+        return self.evaluator.value(override, self.scope, allowed, SPREAD)
+
+    # Parts
+
+    def parts(self) -> None:
+        for item in self.items:
+            statement = item.statement
+            self.top.side = "test" if item.under_test else "chain"
+            if isinstance(statement, syntax.Source):
+                self.guarded(self.source, statement, item)
+            else:
+                self.guarded(self.piece, statement, self.top)
+        self.top.side = "chain"
+
+    def piece(self, statement: syntax.Statement, frame: Frame) -> None:
+        """Statements that may stand in an assembly too."""
+        match statement:
+            case syntax.Branch(name=name, nodes=(first, second), network=network):
+                a, b = frame.node(first), frame.node(second)
+                expand_network(network, a, b, frame.prefix + name.text, frame)
+            case syntax.Cable():
+                expand_cable(statement, self.stock(statement.stock), frame)
+            case syntax.Amplifier():
+                expand_amplifier(statement, frame)
+            case syntax.Coupling():
+                self.couplings.append((statement, replace(frame)))
+            case syntax.Place():
+                self.place(statement, frame)
+            case syntax.Chain():
+                self.chain(statement, frame)
+
+    def stock(self, word: syntax.Word) -> StockData:
+        name = word.text
+        if name not in self.stocks:
+            self.evaluator.unknown("stock", word.span, name, self.stocks)
+        self.used_names.add(name)
+        if name not in self.stock_data:
+            self.stock_data[name] = None
+            self.stock_data[name] = work_out_stock(self.stocks[name], self.evaluator, self.scope)
+        data = self.stock_data[name]
+        if data is None:
+            raise Rejected
+        return data
+
+    def source(self, source: syntax.Source, item: Item) -> None:
+        name = source.name.text
+        evaluator, builder, frame = self.evaluator, self.builder, self.top
+        if self.splits and not item.under_test:
+            evaluator.report("source-outside", source.name.span, source=name)
+        frame.side = "test"
+        a, b = (frame.node(word) for word in source.nodes)
+        value = evaluator.value(source.value, self.scope, (units.VOLT, units.AMPERE), SPREAD)
+        unit = units.unit_name(value.dimension)
+        self.sources[name] = unit
+        right = "behind" if unit == "V" else "shunted by"
+        if source.relation is not None and source.relation != right:
+            assert source.network is not None
+            evaluator.reject("source-network", source.network.span, unit=unit, right=right, wrong=source.relation)
+        place = builder.place(source.span)
+        if unit == "A":
+            part = CurrentSource(name, a, b, value.value, (a, b), side="test", place=place)
+            builder.add(part, source.span)
+            if source.network is not None:
+                expand_network(source.network, a, b, name, frame)
+            return
+        inner = a
+        if source.network is not None:
+            inner = builder.node(f"{name}.emf", source.span)
+            expand_network(source.network, a, inner, name, frame)
+        builder.add(VoltageSource(name, inner, b, value.value, (a, b), side="test", place=place), source.span)
+
+    # Assemblies
+
+    def assembly(self, use: syntax.Use) -> syntax.Assembly:
+        name = use.assembly.text
+        if name not in self.assemblies:
+            if any(isinstance(i.statement, syntax.Assembly) and i.statement.name.text == name for i in self.items):
+                raise Rejected  # it uses itself, which has been reported
+            self.evaluator.unknown("assembly", use.assembly.span, name, self.assemblies)
+        self.used_names.add(name)
+        return self.assemblies[name]
+
+    def overridden(self, place: str, assembly: syntax.Assembly) -> dict[str, Quantity | None]:
+        """Arguments of a place that a case or the caller sets."""
+        found = {}
+        for parameter in assembly.parameters:
+            name = f"{place}.{parameter.name.text}"
+            self.known_arguments.add(name)
+            if name in self.arguments:
+                found[parameter.name.text] = self.arguments[name][1]
+        return found
+
+    def place(self, place: syntax.Place, frame: Frame) -> None:
+        name = frame.prefix + place.name.text
+        assembly = self.assembly(place.use)
+        arguments = evaluate_arguments(place.use, assembly, frame, self.overridden(name, assembly))
+        left, right, shared = bind_nodes(place.use, assembly, frame)
+        self.evaluator.uses.append((place.use.span, f"used here as {name}"))
+        try:
+            self.section(assembly, f"{name}.", frame, left, right, shared, arguments)
+        finally:
+            self.evaluator.uses.pop()
+
+    def chain(self, chain: syntax.Chain, frame: Frame) -> None:
+        name = frame.prefix + chain.name.text
+        assembly = self.assembly(chain.use)
+        count = section_count(chain, self.evaluator, frame.scope)
+        if len(assembly.left) != len(assembly.right):
+            self.evaluator.reject("chain-ends", chain.use.span, assembly=assembly.name.text,
+                                  left=len(assembly.left), right=len(assembly.right))  # fmt: skip
+        arguments = evaluate_arguments(chain.use, assembly, frame, self.overridden(name, assembly))
+        left, right, shared = bind_nodes(chain.use, assembly, frame)
+        errors = len(self.collector.found)
+        parts = len(self.builder.parts)
+        self.evaluator.uses.append((chain.use.span, f"used here as {name}"))
+        self.pending *= count
+        try:
+            for position in range(1, count + 1):
+                inner = f"{name}.{position}."
+                ends = right
+                if position < count:
+                    ends = [self.builder.node(inner + word.text, chain.use.span) for word in assembly.right]
+                own = {**arguments, **self.overridden(inner[:-1], assembly)} if self.arguments else arguments
+                self.section(assembly, inner, frame, left, ends, shared, own)
+                left = ends
+                if position == 1:
+                    self.pending //= count
+                    added = max(1, len(self.builder.parts) - parts)
+                    if parts + added * count * self.pending > MOST_PARTS:
+                        self.evaluator.report("too-many-parts", chain.count.span, limit=f"{MOST_PARTS:,}")
+                        raise TooLarge
+                if len(self.collector.found) > errors:
+                    break  # the other sections would say the same
+        finally:
+            self.evaluator.uses.pop()
+
+    def section(
+        self, assembly: syntax.Assembly, prefix: str, frame: Frame, left: list[int], right: list[int],
+        shared: list[int], arguments: Mapping[str, Quantity | None],
+    ) -> None:  # fmt: skip
+        words = (*assembly.left, *assembly.right, *assembly.shared)
+        nodes = {word.text: index for word, index in zip(words, (*left, *right, *shared), strict=True)}
+        scope = inner_scope(assembly, self.scope, prefix)
+        for name, value in arguments.items():
+            scope.lets.pop(name, None)
+            scope.values[name] = None if value is None else randomised(value, prefix + name)
+        if scope.lets:
+            scope.settle(self.let, self.evaluator.circle)
+        for name, index in nodes.items():
+            self.builder.aliases[prefix + name] = index
+        inner = Frame(self.builder, self.evaluator, scope, prefix, nodes, frame.side)
+        for statement in assembly.body:
+            self.guarded(self.piece, statement, inner)
+
+    def check_arguments(self) -> None:
+        """Reports values set for arguments that no place has."""
+        for name, (word, _) in self.arguments.items():
+            if name in self.known_arguments:
+                continue
+            if word is not None:
+                self.guarded(self.evaluator.unknown, "argument of a place", word.span, name, self.known_arguments)
+            else:
+                self.unknown_override(name)
+        for name in self.overrides:
+            if "." not in name and name not in self.scope.lets:
+                self.unknown_override(name)
+
+    def unknown_override(self, name: str) -> None:
+        known = [*self.scope.lets, *self.known_arguments]
+        self.collector.add("unknown-let", None, unknown=name, hint=nearest(name, known))
+
+    # Couplings
+
+    def all_couplings(self) -> None:
+        pairs: dict[frozenset[str], syntax.Coupling] = {}
+        for coupling, frame in self.couplings:
+            self.guarded(self.coupling, coupling, frame, pairs)
+
+    def coupling(self, coupling: syntax.Coupling, frame: Frame, pairs: dict[frozenset[str], syntax.Coupling]) -> None:
+        evaluator = self.evaluator
+        first, second = self.inductor(coupling.first, frame), self.inductor(coupling.second, frame)
+        if first.name == second.name:
+            evaluator.reject("coupling-itself", coupling.second.span, inductor=first.name)
+        pair = frozenset((first.name, second.name))
+        if pair in pairs:
+            evaluator.reject("coupling-twice", coupling.span, first=first.name, second=second.name)
+        pairs[pair] = coupling
+        value = evaluator.value(coupling.value, frame.scope, (units.HENRY, units.NONE), SPREAD)
+        coefficient = value.dimension == units.NONE
+        geometric = math.sqrt(first.value.nominal) * math.sqrt(second.value.nominal)
+        limit = 1.0 if coefficient else geometric
+        if abs(value.nominal) > limit * (1 + 1e-12):  # 1 written as a mutual inductance may round upward
+            shown = "1" if coefficient else units.show(limit, "H")
+            evaluator.reject("coupling-beyond-one", coupling.value.span, limit=shown,
+                             found=units.show(value.nominal, units.unit_name(value.dimension)))  # fmt: skip
+        part = Coupling(
+            frame.prefix + coupling.name.text, first.name, second.name, value.value, coefficient,
+            side=first.side, place=self.builder.place(coupling.span),
+        )  # fmt: skip
+        self.builder.add(part, coupling.span)
+
+    def inductor(self, word: syntax.Word, frame: Frame) -> Inductor:
+        """The inductor meant: a part, or a branch that has just one."""
+        name = frame.prefix + word.text
+        part = self.builder.by_name.get(name)
+        if isinstance(part, Inductor):
+            return part
+        if part is not None:
+            self.evaluator.reject("coupling-without-inductor", word.span, word=word.text)
+        inside = [p for p in self.builder.parts if p.name.startswith(name + ".")]
+        inductors = [p for p in inside if isinstance(p, Inductor)]
+        if len(inductors) == 1:
+            return inductors[0]
+        if inductors:
+            names = ", ".join(p.name[len(frame.prefix) :] for p in inductors[:8])
+            self.evaluator.reject("coupling-ambiguous", word.span, word=word.text, names=names)
+        branches = {word.text for word in map(name_of, (item.statement for item in self.items)) if word}
+        if inside or (not frame.prefix and word.text in branches):
+            self.evaluator.reject("coupling-without-inductor", word.span, word=word.text)
+        known = [p.name[len(frame.prefix) :] for p in self.builder.parts
+                 if isinstance(p, Inductor) and p.name.startswith(frame.prefix)]  # fmt: skip
+        self.evaluator.unknown("inductor", word.span, word.text, known)
+
+    # What is looked at
+
+    def observers(self) -> None:
+        for item in self.each(syntax.Contact):
+            self.guarded(self.contact, item.statement)
+        for item in self.each(syntax.Reading):
+            self.guarded(self.reading, item.statement)
+        if not self.contacts and len(self.sources) == 1 and not self.each(syntax.Contact):
+            (name,) = self.sources
+            part = self.builder.by_name.get(name)
+            if isinstance(part, VoltageSource | CurrentSource) and part.terminals is not None:
+                self.contacts[name] = Contact(name, *part.terminals, place=part.place)
+        for name, unit in self.sources.items():
+            part_place = self.builder.by_name[name].place if name in self.builder.by_name else None
+            self.drives[name] = Drive(name, ((name, 1.0),), unit, part_place)
+        for item in self.each(syntax.Drive):
+            self.guarded(self.drive, item.statement)
+
+    def contact(self, contact: syntax.Contact) -> None:
+        for word in contact.nodes:
+            if "." in word.text:
+                self.evaluator.reject("inner-node", word.span, node=word.text)
+        a, b = (self.top.read(word) for word in contact.nodes)
+        name = contact.name.text
+        self.contacts[name] = Contact(name, a, b, self.builder.place(contact.span))
+
+    def reading(self, reading: syntax.Reading) -> None:
+        a, b = (self.top.read(word) for word in reading.nodes)
+        times, unit = number(1.0), "V"
+        if reading.times is not None:
+            times = self.evaluator.value(reading.times, self.scope, None, SPREAD)
+            self.displayable(times, reading.times)
+            unit = units.unit_name(units.multiply(units.VOLT, times.dimension))
+        name = reading.name.text
+        self.readings[name] = Reading(name, a, b, times.value, unit, self.builder.place(reading.span))
+
+    def displayable(self, times: Quantity, expression: syntax.Expression) -> None:
+        if any(times.dimension[5:]):
+            self.evaluator.reject("wrong-dimension", expression.span, expected="a number or a quantity such as 200 A/V",
+                                  found=units.quantity_name(times.dimension))  # fmt: skip
+        if times.nominal == 0:
+            self.evaluator.reject("negative-value", expression.span, what="what a reading is multiplied by", value="0",
+                                  bound="other than zero")  # fmt: skip
+
+    def drive(self, drive: syntax.Drive) -> None:
+        name = drive.name.text
+        weights: dict[str, float] = {}
+        unit = ""
+        for word, expression in drive.weights:
+            if word.text not in self.sources:
+                self.evaluator.unknown("source", word.span, word.text, self.sources)
+            if word.text in weights:
+                self.evaluator.reject("source-twice", word.span, source=word.text)
+            own = self.sources[word.text]
+            if unit and own != unit:
+                self.evaluator.reject("mixed-drive", word.span, source=word.text, unit=own, other=unit)
+            unit = own
+            weights[word.text] = 1.0 if expression is None else self.top.plain(expression, units.NONE).nominal
+        self.drives[name] = Drive(name, tuple(weights.items()), unit, self.builder.place(drive.span))
+        if self.first_drive is None:
+            self.first_drive = name
+
+    # The whole
+
+    def network(self) -> Network:
+        grid: SweepGrid | None = None
+        stimulus: Stimulus | None = None
+        temperature = ROOM
+        for item in self.each(syntax.Sweep, syntax.Edge, syntax.Temperature):
+            try:
+                match item.statement:
+                    case syntax.Sweep():
+                        grid = self.sweep(item.statement)
+                    case syntax.Edge():
+                        stimulus = self.edge(item.statement)
+                    case syntax.Temperature():
+                        temperature = self.temperature(item.statement)
+            except Rejected:
+                continue
+        default = next(iter(self.sources)) if len(self.sources) == 1 else self.first_drive
+        network = Network(
+            tuple(self.builder.nodes), tuple(self.builder.parts), tuple(self.contacts.values()),
+            tuple(self.readings.values()), tuple(self.drives.values()), default, grid, stimulus, temperature,
+            allowed=self.allowed(), title=self.program.title(), node_places=self.builder.node_places,
+        )  # fmt: skip
+        return self.with_requirements(network)
+
+    def with_requirements(self, network: Network) -> Network:
+        found = []
+        for item in self.each(syntax.Require):
+            assert isinstance(item.statement, syntax.Require)
+            try:
+                found.append(resolve_requirement(item.statement, network, self.top))
+            except Rejected:
+                continue
+        return replace(network, requirements=tuple(found))
+
+    def sweep(self, sweep: syntax.Sweep) -> SweepGrid:
+        low = self.evaluator.positive(sweep.low, self.scope, units.HERTZ, "the low end of a sweep").nominal
+        high = self.evaluator.positive(sweep.high, self.scope, units.HERTZ, "the high end of a sweep").nominal
+        per_decade = self.evaluator.positive(sweep.per_decade, self.scope, units.NONE, "points per decade").nominal
+        if high <= low:
+            self.evaluator.reject("range-reversed", sweep.high.span, low=units.show(low, "Hz"),
+                                  high=units.show(high, "Hz"))  # fmt: skip
+        if per_decade * (math.log10(high) - math.log10(low)) + 2 > MOST_POINTS:
+            self.evaluator.reject("too-many-points", sweep.per_decade.span, limit=f"{MOST_POINTS:,}")
+        return SweepGrid(low, high, per_decade)
+
+    def edge(self, edge: syntax.Edge) -> Stimulus:
+        ramp = 0.0
+        if edge.ramp is not None:
+            ramp = self.evaluator.positive(edge.ramp, self.scope, units.SECOND, "an edge", zero=True).nominal
+        window = self.evaluator.positive(edge.window, self.scope, units.SECOND, "the time watched").nominal
+        top_at = None
+        if edge.top_at is not None:
+            top_at = self.evaluator.positive(edge.top_at, self.scope, units.SECOND, "the time of the top").nominal
+        for time, expression in ((ramp, edge.ramp), (top_at, edge.top_at)):
+            if time is not None and expression is not None and time > window:
+                self.evaluator.reject("outside-window", expression.span, time=units.show(time, "s"),
+                                      window=units.show(window, "s"))  # fmt: skip
+        return Stimulus(ramp, window, top_at)
+
+    def temperature(self, statement: syntax.Temperature) -> float:
+        value = self.evaluator.value(statement.value, self.scope, (units.CELSIUS, units.KELVIN))
+        kelvin = value.nominal + (FREEZING if value.dimension == units.CELSIUS else 0.0)
+        if kelvin < 0:
+            self.evaluator.reject("negative-value", statement.value.span, what="an absolute temperature",
+                                  value=units.show(kelvin, "K"), bound="zero or more")  # fmt: skip
+        return kelvin
+
+    def allowed(self) -> frozenset[tuple[str, str]]:
+        from nodal.language.codes import BY_CODE
+
+        allowed = set()
+        warnings = [row.code for row in BY_CODE.values() if row.severity == "warning"]
+        for item in self.each(syntax.Allow):
+            assert isinstance(item.statement, syntax.Allow)
+            code = item.statement.code
+            if code.text in warnings:
+                allowed.add((code.text, item.statement.name.text))
+            else:
+                self.guarded(self.evaluator.unknown, "warning", code.span, code.text, warnings)
+        return frozenset(allowed)
+
