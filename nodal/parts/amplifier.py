@@ -64,10 +64,12 @@ class Amplifier(Element):
         return (self.in_, self.ref, self.out, self.ref2)
 
     def holds(self) -> Sequence[tuple[int, int]]:
-        return ((self.out, self.ref2),) if self.transconductance is None else ()
+        return ((self.out, self.ref2),)
 
     conducts = holds
-    forces = holds
+
+    def forces(self) -> Sequence[tuple[int, int]]:
+        return ((self.out, self.ref2),) if self.transconductance is None else ()
 
     def contribute(self, build: Build) -> None:
         first = build.extra(self, "input")
