@@ -161,6 +161,12 @@ def keyword_types() -> dict[str, str]:
     return {str(t.pattern.value): t.name for t in terminals if t.pattern and str(t.pattern.value).isalpha()}
 
 
+@lru_cache(maxsize=1)
+def spellings() -> dict[str, str]:
+    """Terminal -> its spelling, "" for those that have many."""
+    return {t.name: str(t.pattern.value) if t.pattern else "" for t in grammar().terminals}
+
+
 # Terminals between values: named only where nothing else could stand.
 _OPERATORS = frozenset(("PARALLEL", "SERIES", "PLUS", "MINUS", "STAR", "SLASH", "PLUS_MINUS"))
 _QUALIFIERS = frozenset(("TRIM", "RATED", "DRIFT", "LOSS", "AS", "RMS", "AND"))
@@ -279,7 +285,7 @@ class _Run:
         name = next((x.text for x in lexemes[begin + 1 : begin + 2] if x.text.isidentifier()), "")
         span = lexemes[begin].span
         for kind in _BLOCKS[word][:-1]:
-            self.parser.feed_token(Lexeme(kind, name if kind == "NAME" else "", span))
+            self.parser.feed_token(Lexeme(kind, name if kind == "NAME" else spellings()[kind], span))
             name = "" if kind == "NAME" else name
         self.parser.feed_token(lexemes[stop])
         self.blocks.append(word)
@@ -382,9 +388,7 @@ class _Run:
             rest -= {"LPAR"}
         ends = bool(rest & {"END", "$END"})
         rest -= {"END", "$END"} | ({"RBRACE"} if ends else set())
-        spelling = {t.name: str(t.pattern.value) for t in grammar().terminals if t.pattern}
-        spelling |= {"NUMBER": "", "TEXT": ""}
-        things += sorted(f'"{spelling[kind]}"' for kind in rest if spelling[kind])
+        things += sorted(f'"{spellings()[kind]}"' for kind in rest if spellings().get(kind))
         things += ["a number"] * ("NUMBER" in rest) + ['a text in quotes, as in "name"'] * ("TEXT" in rest)
         if ends:
             things.append("the end of the statement")
