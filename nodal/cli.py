@@ -1,0 +1,523 @@
+"""The command `nodal`: reads designs, prints sweeps and figures.
+
+Exit status: 0 all well; 1 a requirement or a recorded figure failed; 2 the input or the call is wrong. Heavy modules
+are imported inside the commands, so that `nodal --help` starts at once.
+"""
+
+from __future__ import annotations
+
+import contextlib
+import dataclasses
+import os
+import stat
+import sys
+import tempfile
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from typing import IO, TYPE_CHECKING, Any, NoReturn, TypeVar
+
+import click
+
+from nodal import __version__
+
+if TYPE_CHECKING:
+    from nodal.design import Design, Model
+    from nodal.figures.search import Floats, Span
+    from nodal.language.diagnostics import Diagnostic, DesignError
+    from nodal.report.terminal import Page
+
+WRONG = 2
+INTERRUPTED = 130
+BROKEN_PIPE = 141
+"""128 + SIGPIPE, as shells report a program that its reader left."""
+
+
+class Tool(click.Group):
+    """The group of commands; whatever goes wrong ends here, as a diagnostic and an exit status."""
+
+    def main(
+        self, args: Sequence[str] | None = None, prog_name: str | None = None, complete_var: str | None = None,
+        standalone_mode: bool = True, windows_expand_args: bool = True, **extra: Any,
+    ) -> NoReturn:
+        arguments = list(sys.argv[1:] if args is None else args)
+        for stream in (sys.stdout, sys.stderr):
+            reconfigure = getattr(stream, "reconfigure", None)
+            if reconfigure is not None:
+                reconfigure(errors="replace")  # a terminal without Ω shows ? rather than nothing
+        prog_name = prog_name or "nodal"
+        self._main_shell_completion(extra, prog_name, complete_var)
+        sys.exit(self._run(arguments, prog_name, extra))
+
+    def _run(self, arguments: list[str], prog_name: str, extra: dict[str, Any]) -> int:
+        try:
+            try:
+                with self.make_context(prog_name, list(arguments), **extra) as context:
+                    self.invoke(context)
+                status = 0
+            except click.exceptions.Exit as done:
+                status = done.exit_code
+            except click.UsageError as mistake:
+                status = _report(_wrong_call(mistake), arguments)
+            except Exception as error:
+                known = _as_design_error(error)
+                if known is None:
+                    raise
+                status = _report(known, arguments)
+            sys.stdout.flush()
+            return status
+        except BrokenPipeError:
+            _silence(sys.stdout)
+            return BROKEN_PIPE
+        except (KeyboardInterrupt, click.Abort):
+            return INTERRUPTED
+
+
+def _silence(stream: IO[str]) -> None:
+    """Let what is still buffered go nowhere, so that closing the stream at exit does not complain."""
+    with contextlib.suppress(OSError, ValueError):
+        os.dup2(os.open(os.devnull, os.O_WRONLY), stream.fileno())
+
+
+# Options, each declared once
+
+_Command = TypeVar("_Command", bound=Callable[..., Any])
+
+
+@dataclass(frozen=True, slots=True)
+class Options:
+    """The shared options of a call."""
+
+    case: tuple[str, ...] = ()
+    all_cases: bool = False
+    let: tuple[str, ...] = ()
+    drive: str | None = None
+    format: str = "text"
+    as_json: bool = False
+    output: str | None = None
+    quiet: bool = False
+    color: str = "auto"
+
+    @property
+    def form(self) -> str:
+        return "json" if self.as_json else self.format
+
+
+_OUTPUT = [
+    click.option("--format", type=click.Choice(["text", "json", "csv"]), default="text", show_default=True,
+                 help="How to print the answer."),
+    click.option("--json", "as_json", is_flag=True, help="Short for --format json."),
+    click.option("-o", "--output", metavar="FILE", help="Write the answer to FILE, whole or not at all."),
+    click.option("-q", "--quiet", is_flag=True, help="Show no warnings and notes."),
+    click.option("--color", type=click.Choice(["auto", "always", "never"]), default="auto", show_default=True,
+                 help="Color text; auto heeds NO_COLOR."),
+]
+_DESIGN = [
+    click.option("--case", multiple=True, metavar="CASE", help="A case of the file; may be repeated."),
+    click.option("--all-cases", is_flag=True, help="Every case of the file."),
+    click.option("--let", multiple=True, metavar="NAME=VALUE", help="Give a `let` another value; may be repeated."),
+    click.option("--drive", metavar="DRIVE", help="Which sources move: a drive or a source of the file."),
+]
+_SPAN = [
+    click.option("--from", "low", metavar="F", help="Lowest frequency, in hertz or with a unit: 10kHz."),
+    click.option("--to", "high", metavar="F", help="Highest frequency."),
+]
+_GRID = [
+    click.option("--per-decade", type=click.FloatRange(min=0, min_open=True), metavar="N",
+                 help="Points per decade."),
+    click.option("--at", multiple=True, metavar="F", help="Only this frequency (0 for the limit); may be repeated."),
+    click.option("--node", multiple=True, metavar="NODE", help="Show this node too; may be repeated."),
+]
+
+
+def _options(*groups: list[Callable[[Any], Any]]) -> Callable[[_Command], _Command]:
+    """Declare options on a command; the shared ones arrive as one `Options`."""
+    names = {field.name for field in dataclasses.fields(Options)}
+
+    def declare(command: _Command) -> _Command:
+        def gather(**given: Any) -> Any:
+            shared = {name: given.pop(name) for name in list(given) if name in names}
+            return command(Options(**shared), **given)
+
+        gather.__name__, gather.__doc__ = command.__name__, command.__doc__
+        decorated: Any = gather
+        for option in reversed([option for group in groups for option in group]):
+            decorated = option(decorated)
+        return decorated  # type: ignore[no-any-return]
+
+    return declare
+
+
+@click.group(cls=Tool, context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})
+@click.version_option(__version__, prog_name="nodal", message="%(prog)s %(version)s")
+def main() -> None:
+    """What a voltage probe and everything behind it shows, against what was there.
+
+    FILE is a text description of the measuring chain (`-` for standard input).
+    """
+
+
+# Commands
+
+
+@main.command()
+@click.argument("file")
+@_options(_SPAN, _GRID, _DESIGN, _OUTPUT)
+def sweep(
+    options: Options, file: str, low: str | None, high: str | None, per_decade: float | None, at: tuple[str, ...],
+    node: tuple[str, ...],
+) -> None:
+    """Transfer functions and loading over frequency.
+
+    Every reading and contact of FILE, per unit of the drive. The frequencies are the file's `sweep` unless given.
+    """
+    from nodal.report import answers, data, terminal
+
+    if at and (low or high or per_decade):
+        raise click.UsageError("--at does not go with --from, --to or --per-decade")
+    design = _load(file)
+    models = _models(design, options, default_all=False)
+    found: dict[str, answers.SweepAnswer] = {}
+    pages: list[str] = []
+    for case, model in models.items():
+        response = model.response
+        drive = _drive(response.network, options.drive)
+        _check_nodes(response.network, node)
+        frequencies = _listed(at) if at else _grid(response.network, low, high, per_decade)
+        points: list[answers.Point | None] = [None] * frequencies.size
+        total = None
+        if options.form == "text" and not at:
+            total = frequencies.size
+            frequencies, points = _thinned(response, frequencies, drive)
+            total = None if points.count(None) == total and len(points) == total else total
+        found[case] = answers.sweep(response, frequencies, drive, node)
+        if options.form == "text":
+            page = _page(options)
+            terminal.sweep(page, case, design.title, found[case], points, total)
+            pages.append(page.text())
+    if options.form == "json":
+        cases = {case: data.sweep_case(answer) for case, answer in found.items()}
+        text = data.dumps(data.envelope(file, cases))
+    elif options.form == "csv":
+        text = data.sweep_csv(found)
+    else:
+        text = "\n".join(pages)
+    _finish(design, options, text)
+
+
+@main.command()
+@click.argument("file")
+@_options(_SPAN, _DESIGN, _OUTPUT)
+def figures(options: Options, file: str, low: str | None, high: str | None) -> None:
+    """Figures of merit of every reading and contact, all cases side by side.
+
+    Those that the file's requirements ask about are among them. --case chooses cases.
+    """
+    from nodal.report import answers, data, terminal
+
+    design = _load(file)
+    models = _models(design, options, default_all=True)
+    responses = {case: model.response for case, model in models.items()}
+    drives = {case: _drive(response.network, options.drive) for case, response in responses.items()}
+    span = _span(next(iter(responses.values())).network, low, high) if low or high else None
+    answer = answers.figures(responses, options.drive, span)
+    if options.form == "json":
+        cases = {case: data.figures_case(results) for case, results in answer.cases.items()}
+        text = data.dumps(data.envelope(file, cases))
+    elif options.form == "csv":
+        text = data.figures_csv(answer)
+    else:
+        page = _page(options)
+        chosen = next(iter(drives.values()))
+        shown = chosen if any(len(r.network.drives) > 1 for r in responses.values()) else None
+        terminal.figures(page, file, design.title, shown, answer)
+        caution = terminal.caution(response.network for response in responses.values())
+        if caution:
+            page.add("", caution)
+        text = page.text()
+    _finish(design, options, text)
+
+
+@main.command()
+@click.argument("code", required=False)
+@_options(_OUTPUT)
+def explain(options: Options, code: str | None) -> None:
+    """What an error, warning or note means; without CODE, a list of all."""
+    from nodal.language.codes import BY_CODE, TABLE
+    from nodal.report import data, listing
+
+    if code is not None and code not in BY_CODE:
+        _fail("unknown-code", name=code, hint=_nearest(code, BY_CODE))
+    rows = TABLE if code is None else (BY_CODE[code],)
+    if options.form == "json":
+        text = data.dumps({"format": data.FORMAT, "tool": f"nodal {__version__}", "codes": listing.as_data(rows)})
+    elif options.form == "csv":
+        raise click.UsageError("explain prints text or json")
+    elif code is None:
+        page = _page(options)
+        listing.overview(page, rows)
+        text = page.text()
+    else:
+        page = _page(options)
+        listing.explanation(page, rows[0])
+        text = page.text()
+    _write(text, options)
+
+
+# What the commands share
+
+
+def _load(file: str) -> Design:
+    from nodal.design import load
+
+    return load(file)
+
+
+def _models(design: Design, options: Options, *, default_all: bool) -> dict[str, Model]:
+    """The models of the cases asked for, by name."""
+    if options.case and options.all_cases:
+        raise click.UsageError("--case does not go with --all-cases")
+    lets: dict[str, Any] = {}
+    for text in options.let:
+        name, equals, value = text.partition("=")
+        if not equals or not name.strip() or not value.strip():
+            _fail("bad-let", text=text, hint="write --let NAME=VALUE, as in --let lead_length=50mm")
+        lets[name.strip()] = value.strip()
+    for case in options.case:
+        if case not in design.cases:
+            _fail("unknown-case", name=case, hint=_nearest(case, design.cases))
+    cases = options.case or (design.cases if options.all_cases or default_all else design.cases[:1])
+    return {case: design.network(case, **lets) for case in dict.fromkeys(cases)}
+
+
+def _drive(network: Any, asked: str | None) -> str:
+    """The name of the drive to use."""
+    names = [drive.name for drive in network.drives]
+    if asked is not None:
+        if asked not in names:
+            _fail("unknown-drive", name=asked, hint=_nearest(asked, names))
+        return asked
+    if network.default_drive is None:
+        _fail("drive-needed", names=", ".join(names))
+    return str(network.default_drive)
+
+
+def _check_nodes(network: Any, names: Sequence[str]) -> None:
+    for name in names:
+        try:
+            network.node(name)
+        except KeyError:
+            _fail("unknown-node", name=name, hint=_nearest(name, network.nodes))
+
+
+def _frequency(text: str) -> float:
+    """Hertz from "1e6", "10MHz", "10 kHz", "0"."""
+    import math
+    import re
+
+    from nodal.language import units
+
+    found = re.fullmatch(r"\s*([0-9]+(?:\.[0-9]+)?(?:[eE][-+]?[0-9]{1,3})?)\s*(\S*)\s*", text)
+    if found is None:
+        _fail("bad-frequency", text=text, hint="write hertz or a number with a unit: 1e6, 10MHz, 0")
+    digits, unit = found.groups()
+    scanned = units.scan_unit(unit) if unit else "Hz"
+    if scanned is None or units.dimension_of(scanned) != units.HERTZ:
+        near = units.nearest_unit(unit, units.HERTZ)
+        _fail("bad-frequency", text=text, hint=f"write {digits} {near}" if near else "the unit is Hz, kHz, MHz, GHz")
+    value = units.to_number(digits, scanned)
+    if not math.isfinite(value):
+        _fail("bad-frequency", text=text, hint="it is beyond any number")
+    return value
+
+
+def _span(network: Any, low: str | None, high: str | None) -> Span:
+    """The span of the call, an end that is left out taken from the file's sweep."""
+    own = network.grid
+    if own is None and (low is None or high is None):
+        _fail("no-sweep")
+    span = (own.low if low is None else _frequency(low), own.high if high is None else _frequency(high))
+    if not 0.0 < span[0] < span[1]:
+        from nodal.report.numbers import frequency
+
+        _fail("bad-span", low=frequency(span[0]), high=frequency(span[1]))
+    return span
+
+
+def _grid(network: Any, low: str | None, high: str | None, per_decade: float | None) -> Floats:
+    import math
+
+    from nodal.figures.search import MOST_POINTS, sweep_points
+    from nodal.network import SweepGrid
+
+    span = _span(network, low, high)
+    density = per_decade or (network.grid.per_decade if network.grid else 40.0)
+    count = math.log10(span[1] / span[0]) * density
+    if count > MOST_POINTS:
+        _fail("too-many-points", count=f"{count:,.0f}", most=f"{MOST_POINTS:,}")
+    return sweep_points(SweepGrid(span[0], span[1], density))
+
+
+def _listed(at: Sequence[str]) -> Floats:
+    import numpy as np
+
+    return np.array([_frequency(text) for text in at])
+
+
+_SHORT_SWEEP = 25
+"""Points of a sweep that are all shown as text."""
+
+
+def _thinned(response: Any, frequencies: Floats, drive: str) -> tuple[Floats, list[Any]]:
+    """Rows of the text table: whole decades and both ends of a long sweep, and points of interest."""
+    import numpy as np
+
+    from nodal.report.answers import points_of_interest, whole_decades
+
+    span = (float(frequencies[0]), float(frequencies[-1]))
+    if frequencies.size <= _SHORT_SWEEP:
+        kept = frequencies
+    else:
+        decades = np.array(whole_decades(span))
+        near = np.abs(np.log10(frequencies[:, None] / decades)) < 1e-9 if decades.size else np.zeros((1, 1), bool)
+        kept = frequencies[np.unique([0, frequencies.size - 1, *np.flatnonzero(near.any(axis=1))])]
+    interest = points_of_interest(response, span, drive) if span[0] < span[1] else []
+    rows: list[tuple[float, Any]] = [(float(f), None) for f in kept]
+    rows += [(point.frequency, point) for point in interest]
+    rows.sort(key=lambda row: row[0])
+    return np.array([f for f, _ in rows]), [point for _, point in rows]
+
+
+def _nearest(name: str, among: Any) -> str:
+    """A help line: the nearest of the names, else all of them where they are few."""
+    import difflib
+
+    names = [str(known) for known in among]
+    close = difflib.get_close_matches(name, names, 1, 0.5)
+    if close:
+        return f'did you mean "{close[0]}"?'
+    return f"there are: {', '.join(names)}" if 0 < len(names) <= 12 else ""
+
+
+def _fail(code: str, **arguments: Any) -> NoReturn:
+    """Stop with a finding of the table that has no place in a file."""
+    from nodal.language.codes import make
+    from nodal.language.diagnostics import DesignError
+
+    raise DesignError([make(code, None, arguments=arguments)], {})
+
+
+def _as_design_error(error: Exception) -> DesignError | None:
+    """Errors that are the user's to mend; None for a bug, which keeps its traceback."""
+    from nodal.language.diagnostics import DesignError
+
+    return error if isinstance(error, DesignError) else None
+
+
+def _wrong_call(mistake: click.UsageError) -> DesignError:
+    from nodal.language.codes import make
+    from nodal.language.diagnostics import DesignError
+
+    problem = mistake.format_message().rstrip(".")
+    problem = problem[:1].lower() + problem[1:]
+    path = mistake.ctx.command_path if mistake.ctx is not None else "nodal"
+    return DesignError([make("wrong-call", None, arguments={"problem": problem, "hint": f"see {path} --help"})], {})
+
+
+def _report(error: DesignError, arguments: Sequence[str]) -> int:
+    """Print what is wrong: as JSON on standard output where JSON was asked for, else as text on standard
+    error."""
+    from nodal.language.diagnostics import as_json
+
+    words = [*arguments, ""]
+    pairs = list(zip(words, words[1:], strict=False))
+    if "--json" in words or "--format=json" in words or ("--format", "json") in pairs:
+        from nodal.report.data import dumps
+
+        sys.stdout.write(dumps({"diagnostics": as_json(error.diagnostics, error.sources)}))
+    else:
+        color = dict(pairs).get("--color") or next((w[8:] for w in words if w.startswith("--color=")), "auto")
+        _show(error.diagnostics, error.sources, color)
+    return WRONG
+
+
+def _show(diagnostics: Sequence[Diagnostic], sources: Mapping[str, str], color: str) -> None:
+    from nodal.language.diagnostics import render
+
+    sys.stderr.write(render(diagnostics, sources, color=_colored(sys.stderr, color)))
+
+
+def _colored(stream: IO[str], color: str) -> bool:
+    if color != "auto":
+        return color == "always"
+    plain = bool(os.environ.get("NO_COLOR")) or os.environ.get("TERM") == "dumb"
+    return not plain and stream.isatty()
+
+
+def _page(options: Options) -> Page:
+    """A page as wide as the terminal, 100 columns where there is none; never colored in a file."""
+    import shutil
+
+    from nodal.report.terminal import Page
+
+    to_file = options.output is not None
+    width = 100 if to_file else shutil.get_terminal_size((100, 24)).columns
+    color = options.color == "always" if to_file else _colored(sys.stdout, options.color)
+    return Page(width, color=color)
+
+
+def _finish(design: Design, options: Options, text: str) -> None:
+    """Write an answer; warnings and notes go to standard error."""
+    if design.diagnostics and not options.quiet:
+        _show(design.diagnostics, design.sources, options.color)
+    _write(text, options)
+
+
+def _write(text: str, options: Options) -> None:
+    if options.output is None or options.output == "-":
+        sys.stdout.write(text)
+        return
+    try:
+        replace_file(options.output, text)
+    except OSError as error:
+        reason = error.strerror or str(error)
+        _fail("cannot-write", path=options.output, reason=reason[:1].lower() + reason[1:], hint="")
+
+
+def replace_file(path: str, text: str) -> None:
+    """Write `text` to a temporary file beside `path` and move it into place; OSError where that fails.
+
+    An existing file keeps its permissions, a link its target; what is no regular file (a pipe) is written to as is.
+    """
+    target = os.path.realpath(path)
+    try:
+        mode: int | None = os.stat(target).st_mode
+    except FileNotFoundError:
+        mode = None
+    if mode is not None and not stat.S_ISREG(mode):
+        with open(target, "w", encoding="utf-8") as out:
+            out.write(text)
+        return
+    with _temporary_beside(target) as (handle, name):
+        with os.fdopen(handle, "w", encoding="utf-8", newline="") as out:
+            out.write(text)
+            out.flush()
+            os.fsync(out.fileno())
+        os.chmod(name, stat.S_IMODE(mode) if mode is not None else 0o666 & ~_umask())
+        os.replace(name, target)
+
+
+@contextlib.contextmanager
+def _temporary_beside(target: str) -> Iterator[tuple[int, str]]:
+    """A new file in the folder of `target`, removed again unless it was moved."""
+    handle, name = tempfile.mkstemp(prefix=f".{os.path.basename(target)}.", dir=os.path.dirname(target))
+    try:
+        yield handle, name
+    finally:
+        with contextlib.suppress(FileNotFoundError):
+            os.unlink(name)
+
+
+def _umask() -> int:
+    mask = os.umask(0)
+    os.umask(mask)
+    return mask
