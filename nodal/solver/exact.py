@@ -48,6 +48,10 @@ class Exact:
         self._spare = _cell(zero)
         self._kernel.factor(self._w, self._spare)
 
+    def reciprocal_pivot(self, slot: int) -> Any:
+        """1/pivot of the elimination at one of `order.pivot`: their product is 1/det A but for the sign."""
+        return self._w[slot][0]
+
     def solve(self, source: Mapping[int, Any]) -> tuple[list[Any], list[Any]]:
         """(x, correction): the solution for a right-hand side {equation: number}, and what its last step changed."""
         zero = self.arithmetic.number(0)

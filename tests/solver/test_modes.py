@@ -1,0 +1,83 @@
+"""Natural frequencies against closed forms and scipy's zeros of polynomials."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+import pytest
+from support.systems import Sketch
+
+from nodal.solver.modes import NotLumped, lightly_damped, poles
+
+
+def test_series_resonance():
+    """s² L C + s R C + 1 = 0 (textbook)."""
+    net = Sketch(3)
+    net.source(1, 0)
+    net.resistor(1, 2, 3.0)
+    net.inductor(2, 3, 1e-9)
+    net.capacitor(3, 0, 2e-12)
+    found = poles(net.system())
+    expected = np.roots([2e-21, 6e-12, 1.0])
+    np.testing.assert_allclose(np.sort_complex(found), np.sort_complex(expected), rtol=1e-13)
+    np.testing.assert_allclose(lightly_damped(found), [1 / math.sqrt(2e-21)], rtol=1e-13)
+
+
+def test_butterworth_ladder():
+    """Poles of the order-five filter lie on the unit circle (Matthaei, Young, Jones 1964, 4.05)."""
+    net = Sketch(4)
+    net.source(1, 0)
+    g = [2 * math.sin((2 * k - 1) * math.pi / 10) for k in range(1, 6)]
+    net.resistor(1, 2, 1.0)
+    net.capacitor(2, 0, g[0])
+    net.inductor(2, 3, g[1])
+    net.capacitor(3, 0, g[2])
+    net.inductor(3, 4, g[3])
+    net.capacitor(4, 0, g[4])
+    net.resistor(4, 0, 1.0)
+    expected = np.exp(1j * math.pi * (0.5 + (2 * np.arange(1, 6) - 1) / 10))
+    np.testing.assert_allclose(np.sort_complex(poles(net.system())), np.sort_complex(expected), rtol=1e-12)
+
+
+def test_poles_ten_decades_apart():
+    net = Sketch(3)
+    net.source(1, 0)
+    net.resistor(1, 2, 1.0)
+    net.capacitor(2, 0, 1e-12)
+    net.resistor(2, 3, 1e6)
+    net.capacitor(3, 0, 1e-8)
+    a, b = 1e-12 * 1e-8 * 1.0 * 1e6, 1e-8 * 1e6 + (1e-12 + 1e-8) * 1.0
+    slow = -2 / (b + math.sqrt(b * b - 4 * a))  # the small root without cancellation
+    np.testing.assert_allclose(poles(net.system()).real, [slow, 1 / (a * slow)], rtol=1e-10)
+
+
+def test_capacitors_in_a_loop_with_a_source_and_an_inductive_cut_add_no_poles():
+    net = Sketch(3)
+    net.source(1, 0)
+    net.capacitor(1, 2, 1e-9)
+    net.capacitor(2, 0, 3e-9)
+    net.resistor(2, 0, 1e3)
+    net.inductor(2, 3, 1e-6)
+    net.inductor(3, 0, 2e-6)
+    expected = np.roots([4e-9 * 3e-6, 3e-6 / 1e3, 1.0])
+    np.testing.assert_allclose(np.sort_complex(poles(net.system())), np.sort_complex(expected), rtol=1e-12)
+
+
+def test_without_storage_there_are_none():
+    net = Sketch(1)
+    net.resistor(1, 0, 50.0)
+    assert poles(net.system()).shape == (0,)
+
+
+def test_functions_are_refused_or_left_out():
+    net = Sketch(2)
+    net.capacitor(1, 0, 1e-9)
+    net.resistor(1, 0, 1e3)
+    net.resistor(2, 0, 1e3)
+    net.line(1, 2, lambda s, arithmetic: 1 + s * 1e-7, lambda s, arithmetic: s * 1e-10)
+    with pytest.raises(NotLumped):
+        poles(net.system())
+    net.terms = [t for t in net.terms if t.f is None]
+    net.terms += Sketch(net.size).terms
+    assert poles(net.system(), ignoring_functions=True).shape in {(0,), (1,)}
