@@ -1,13 +1,14 @@
 """The command `nodal`: reads designs, prints sweeps and figures.
 
-Exit status: 0 all well; 1 a requirement or a recorded figure failed; 2 the input or the call is wrong. Heavy modules
-are imported inside the commands, so that `nodal --help` starts at once.
+Exit status: 0 all well; 1 a requirement or a recorded figure failed; 2 the input or the call is wrong.
+Heavy modules are imported inside the commands, so that `nodal --help` starts at once.
 """
 
 from __future__ import annotations
 
 import contextlib
 import dataclasses
+import itertools
 import os
 import stat
 import sys
@@ -19,11 +20,12 @@ from typing import IO, TYPE_CHECKING, Any, NoReturn, TypeVar
 import click
 
 from nodal import __version__
+from nodal.language.diagnostics import DesignError
 
 if TYPE_CHECKING:
     from nodal.design import Design, Model
     from nodal.figures.search import Floats, Span
-    from nodal.language.diagnostics import Diagnostic, DesignError
+    from nodal.language.diagnostics import Diagnostic
     from nodal.report.terminal import Page
 
 WRONG = 2
@@ -36,8 +38,9 @@ class Tool(click.Group):
     """The group of commands; whatever goes wrong ends here, as a diagnostic and an exit status."""
 
     def main(
-        self, args: Sequence[str] | None = None, prog_name: str | None = None, complete_var: str | None = None,
-        standalone_mode: bool = True, windows_expand_args: bool = True, **extra: Any,
+        self, args: Sequence[str] | None = None, prog_name: str | None = None,
+        complete_var: str | None = None, standalone_mode: bool = True, windows_expand_args: bool = True,
+        **extra: Any,
     ) -> NoReturn:
         arguments = list(sys.argv[1:] if args is None else args)
         for stream in (sys.stdout, sys.stderr):
@@ -58,11 +61,8 @@ class Tool(click.Group):
                 status = done.exit_code
             except click.UsageError as mistake:
                 status = _report(_wrong_call(mistake), arguments)
-            except Exception as error:
-                known = _as_design_error(error)
-                if known is None:
-                    raise
-                status = _report(known, arguments)
+            except DesignError as error:
+                status = _report(error, arguments)
             sys.stdout.flush()
             return status
         except BrokenPipeError:
@@ -114,7 +114,8 @@ _OUTPUT = [
 _DESIGN = [
     click.option("--case", multiple=True, metavar="CASE", help="A case of the file; may be repeated."),
     click.option("--all-cases", is_flag=True, help="Every case of the file."),
-    click.option("--let", multiple=True, metavar="NAME=VALUE", help="Give a `let` another value; may be repeated."),
+    click.option("--let", multiple=True, metavar="NAME=VALUE",
+                 help="Give a `let` another value; may be repeated."),
     click.option("--drive", metavar="DRIVE", help="Which sources move: a drive or a source of the file."),
 ]
 _SPAN = [
@@ -124,7 +125,8 @@ _SPAN = [
 _GRID = [
     click.option("--per-decade", type=click.FloatRange(min=0, min_open=True), metavar="N",
                  help="Points per decade."),
-    click.option("--at", multiple=True, metavar="F", help="Only this frequency (0 for the limit); may be repeated."),
+    click.option("--at", multiple=True, metavar="F",
+                 help="Only this frequency (0 for the limit); may be repeated."),
     click.option("--node", multiple=True, metavar="NODE", help="Show this node too; may be repeated."),
 ]
 
@@ -163,14 +165,15 @@ def main() -> None:
 @click.argument("file")
 @_options(_SPAN, _GRID, _DESIGN, _OUTPUT)
 def sweep(
-    options: Options, file: str, low: str | None, high: str | None, per_decade: float | None, at: tuple[str, ...],
-    node: tuple[str, ...],
+    options: Options, file: str, low: str | None, high: str | None, per_decade: float | None,
+    at: tuple[str, ...], node: tuple[str, ...],
 ) -> None:
     """Transfer functions and loading over frequency.
 
     Every reading and contact of FILE, per unit of the drive. The frequencies are the file's `sweep` unless given.
     """
     from nodal.report import answers, data, terminal
+    from nodal.response import Unavailable
 
     if at and (low or high or per_decade):
         raise click.UsageError("--at does not go with --from, --to or --per-decade")
@@ -189,7 +192,10 @@ def sweep(
             total = frequencies.size
             frequencies, points = _thinned(response, frequencies, drive)
             total = None if points.count(None) == total and len(points) == total else total
-        found[case] = answers.sweep(response, frequencies, drive, node)
+        try:
+            found[case] = answers.sweep(response, frequencies, drive, node)
+        except Unavailable as why:
+            _fail("no-solution", reason=str(why))
         if options.form == "text":
             page = _page(options)
             terminal.sweep(page, case, design.title, found[case], points, total)
@@ -227,8 +233,8 @@ def figures(options: Options, file: str, low: str | None, high: str | None) -> N
         text = data.figures_csv(answer)
     else:
         page = _page(options)
-        chosen = next(iter(drives.values()))
-        shown = chosen if any(len(r.network.drives) > 1 for r in responses.values()) else None
+        several = any(len(response.network.drives) > 1 for response in responses.values())
+        shown = next(iter(drives.values())) if several else None
         terminal.figures(page, file, design.title, shown, answer)
         caution = terminal.caution(response.network for response in responses.values())
         if caution:
@@ -249,7 +255,8 @@ def explain(options: Options, code: str | None) -> None:
         _fail("unknown-code", name=code, hint=_nearest(code, BY_CODE))
     rows = TABLE if code is None else (BY_CODE[code],)
     if options.form == "json":
-        text = data.dumps({"format": data.FORMAT, "tool": f"nodal {__version__}", "codes": listing.as_data(rows)})
+        head = {"format": data.FORMAT, "tool": f"nodal {__version__}"}
+        text = data.dumps({**head, "codes": listing.as_data(rows)})
     elif options.form == "csv":
         raise click.UsageError("explain prints text or json")
     elif code is None:
@@ -323,7 +330,8 @@ def _frequency(text: str) -> float:
     scanned = units.scan_unit(unit) if unit else "Hz"
     if scanned is None or units.dimension_of(scanned) != units.HERTZ:
         near = units.nearest_unit(unit, units.HERTZ)
-        _fail("bad-frequency", text=text, hint=f"write {digits} {near}" if near else "the unit is Hz, kHz, MHz, GHz")
+        hint = f"write {digits}{near}" if near else "the unit is Hz, kHz, MHz or GHz"
+        _fail("bad-frequency", text=text, hint=hint)
     value = units.to_number(digits, scanned)
     if not math.isfinite(value):
         _fail("bad-frequency", text=text, hint="it is beyond any number")
@@ -378,8 +386,8 @@ def _thinned(response: Any, frequencies: Floats, drive: str) -> tuple[Floats, li
         kept = frequencies
     else:
         decades = np.array(whole_decades(span))
-        near = np.abs(np.log10(frequencies[:, None] / decades)) < 1e-9 if decades.size else np.zeros((1, 1), bool)
-        kept = frequencies[np.unique([0, frequencies.size - 1, *np.flatnonzero(near.any(axis=1))])]
+        whole = np.searchsorted(frequencies, decades * (1.0 - 1e-9))
+        kept = frequencies[np.unique([0, *whole, frequencies.size - 1])]
     interest = points_of_interest(response, span, drive) if span[0] < span[1] else []
     rows: list[tuple[float, Any]] = [(float(f), None) for f in kept]
     rows += [(point.frequency, point) for point in interest]
@@ -401,26 +409,18 @@ def _nearest(name: str, among: Any) -> str:
 def _fail(code: str, **arguments: Any) -> NoReturn:
     """Stop with a finding of the table that has no place in a file."""
     from nodal.language.codes import make
-    from nodal.language.diagnostics import DesignError
 
     raise DesignError([make(code, None, arguments=arguments)], {})
 
 
-def _as_design_error(error: Exception) -> DesignError | None:
-    """Errors that are the user's to mend; None for a bug, which keeps its traceback."""
-    from nodal.language.diagnostics import DesignError
-
-    return error if isinstance(error, DesignError) else None
-
-
 def _wrong_call(mistake: click.UsageError) -> DesignError:
     from nodal.language.codes import make
-    from nodal.language.diagnostics import DesignError
 
     problem = mistake.format_message().rstrip(".")
     problem = problem[:1].lower() + problem[1:]
     path = mistake.ctx.command_path if mistake.ctx is not None else "nodal"
-    return DesignError([make("wrong-call", None, arguments={"problem": problem, "hint": f"see {path} --help"})], {})
+    hint = f"see {path} --help"
+    return DesignError([make("wrong-call", None, arguments={"problem": problem, "hint": hint})], {})
 
 
 def _report(error: DesignError, arguments: Sequence[str]) -> int:
@@ -429,7 +429,7 @@ def _report(error: DesignError, arguments: Sequence[str]) -> int:
     from nodal.language.diagnostics import as_json
 
     words = [*arguments, ""]
-    pairs = list(zip(words, words[1:], strict=False))
+    pairs = list(itertools.pairwise(words))
     if "--json" in words or "--format=json" in words or ("--format", "json") in pairs:
         from nodal.report.data import dumps
 

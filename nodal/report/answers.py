@@ -46,18 +46,23 @@ class SweepAnswer:
     quality: Quality
 
 
-def sweep(response: Response, frequencies: Floats, drive: str | None, nodes: Sequence[str]) -> SweepAnswer:
+def sweep(
+    response: Response, frequencies: Floats, drive: str | None, nodes: Sequence[str]
+) -> SweepAnswer:
     """All readings and contacts, and the nodes asked for. `drive` None is the default drive, which must
     exist.
+
+    Raises `Unavailable` where the whole network has no solution; what one contact does not have is None there.
     """
     network = response.network
     chosen = network.drive(drive or network.default_drive or "")
+    found = response.sweep(frequencies, drive=chosen.name, nodes=nodes, contacts=())
     return SweepAnswer(
         chosen.name, chosen.unit, frequencies,
-        {r.name: response.reading(frequencies, r.name, chosen.name).values for r in network.readings},
-        {r.name: ratio_unit(r.unit, chosen.unit) for r in network.readings},
-        {name: response.node(frequencies, name, chosen.name).values for name in nodes},
-        {c.name: _contact(response, frequencies, c.name, chosen.name) for c in network.contacts},
+        {name: curve.values for name, curve in found.readings.items()},
+        {reading.name: ratio_unit(reading.unit, chosen.unit) for reading in network.readings},
+        {name: curve.values for name, curve in found.nodes.items()},
+        {contact.name: _contact(response, frequencies, contact.name, chosen.name) for contact in network.contacts},
         response.quality,
     )
 

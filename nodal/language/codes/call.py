@@ -6,26 +6,39 @@ from nodal.language.codes.row import Code
 
 CALL: tuple[Code, ...] = (
     Code(
-        "wrong-call", "error", "{problem}", "{hint}",
+        "wrong-call",
+        "error",
+        "{problem}",
+        "{hint}",
         "The command line is not one the tool understands. `nodal --help` lists the commands, "
         "`nodal COMMAND --help` the options of one.",
     ),
     Code(
-        "unknown-case", "error", 'there is no case "{name}"', "{hint}",
+        "unknown-case",
+        "error",
+        'there is no case "{name}"',
+        "{hint}",
         "The option --case takes the name of a `case` in the file, or `nominal` for the file without any.",
     ),
     Code(
-        "unknown-drive", "error", 'there is no drive "{name}"', "{hint}",
+        "unknown-drive",
+        "error",
+        'there is no drive "{name}"',
+        "{hint}",
         "The option --drive takes the name of a `drive` statement, or of a source to drive it alone.",
     ),
     Code(
-        "unknown-node", "error", 'there is no node "{name}"', "{hint}",
+        "unknown-node",
+        "error",
+        'there is no node "{name}"',
+        "{hint}",
         "The option --node takes a node of the flat network: a name as written, or one inside a "
         "branch, assembly "
         "or chain such as `tip.1` or `column.7.bottom`.",
     ),
     Code(
-        "drive-needed", "error",
+        "drive-needed",
+        "error",
         "several sources stand in the file and no drive says which of them moves",
         "add --drive with one of: {names}",
         "Everything is shown per unit of one drive. With several sources the first `drive` statement "
@@ -34,38 +47,60 @@ CALL: tuple[Code, ...] = (
         "own name.",
     ),
     Code(
-        "bad-frequency", "error", '"{text}" is not a frequency', "{hint}",
+        "bad-frequency",
+        "error",
+        '"{text}" is not a frequency',
+        "{hint}",
         "Frequencies on the command line are hertz (1e6) or carry a unit (1MHz); they are not negative.",
     ),
     Code(
-        "bad-let", "error", '"{text}" does not give a value to a name', "{hint}",
+        "bad-let",
+        "error",
+        '"{text}" does not give a value to a name',
+        "{hint}",
         "The option --let takes NAME=VALUE, where NAME is a `let` of the file and VALUE is written "
         "as in the file: "
         "--let lead_length=50mm.",
     ),
     Code(
-        "no-sweep", "error", "the file has no sweep statement and the call gives no frequencies",
+        "no-sweep",
+        "error",
+        "the file has no sweep statement and the call gives no frequencies",
         "add --from and --to, or --at, or the statement: sweep 10 Hz to 1 GHz, 40 per decade",
         "The frequencies come from the options --at or --from and --to, else from the `sweep` of the file.",
     ),
     Code(
-        "bad-span", "error", "a sweep from {low} to {high} is empty", "give --from a lower frequency "
-        "than --to",
+        "bad-span",
+        "error",
+        "a sweep from {low} to {high} is empty",
+        "give --from a lower frequency than --to",
         "A sweep runs from a lower to a higher frequency, both above zero; 0 Hz is reached with --at 0.",
     ),
     Code(
-        "too-many-points", "error", "the sweep would have {count} points; the most is {most}",
+        "too-many-points",
+        "error",
+        "the sweep would have {count} points; the most is {most}",
         "narrow the span or lower --per-decade",
         "A sweep has 2,000,000 points at most.",
     ),
     Code(
-        "cannot-write", "error", "cannot write {path}: {reason}", "{hint}",
+        "no-solution", "error", "{reason}", "",
+        "The network was readable but has no unique solution at some frequency, so nothing can be printed.",
+    ),
+    Code(
+        "cannot-write",
+        "error",
+        "cannot write {path}: {reason}",
+        "{hint}",
         "The file named with -o could not be written. Nothing was changed: results go to a temporary "
         "file beside it "
         "first, which takes its place when complete.",
     ),
     Code(
-        "unknown-code", "error", 'there is no code "{name}"', "{hint}",
+        "unknown-code",
+        "error",
+        'there is no code "{name}"',
+        "{hint}",
         "`nodal explain` without a code lists them all.",
     ),
 )
