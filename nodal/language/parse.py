@@ -39,29 +39,35 @@ def parse(text: str, path: str, collector: Collector) -> s.File:
     so that the meaning of the rest can be checked too; `File.lost` says which names may be missing for that
     reason.
     """
+    return parse_with_lexemes(text, path, collector)[0]
+
+
+def parse_with_lexemes(text: str, path: str, collector: Collector) -> tuple[s.File, list[Lexeme]]:
+    """The tree of `parse` and the lexemes it was built from, words told apart: `type` is the terminal of the
+    grammar that each was read as. Empty where nothing could be read."""
     collector.sources[path] = text
     whole = Span(path, 0, len(text))
     nothing = s.File(path, text, span=whole)
     if len(text) > MAX_BYTES or len(text.encode(errors="surrogatepass")) > MAX_BYTES:
         collector.add("too-long", Span(path, 0, 0), path=path)
-        return nothing
+        return nothing, []
     version = _version_ahead(text)
     if version is not None:
         collector.add("newer-version", Span(path, *version[1]), version=version[0], known=VERSION)
-        return nothing
+        return nothing, []
     lexer = lexing.Lexer(text, path, collector)
     lexemes = lexer.run()
     if lexer.too_deep:
-        return nothing
+        return nothing, []
     if not lexemes:
         if not lexer.faults:
             collector.add("empty-file", Span(path, 0, 0), path=path)
-        return nothing
+        return nothing, []
     run = _Run(lexer, collector)
     statements = run.statements()
     file = replace(nothing, statements=statements, lost=frozenset(run.lost))
     _check_version(file, lexemes[0], collector)
-    return file
+    return file, lexemes
 
 
 def read(path: str, collector: Collector) -> str | None:
@@ -424,9 +430,8 @@ def _article(word: str) -> str:
 
 
 def _nearest(word: str, among: Iterable[str]) -> str | None:
-    close = difflib.get_close_matches(word, list(among), 1, 0.6) or difflib.get_close_matches(
-        word.lower(), list(among), 1, 0.6
-    )
+    words = list(among)
+    close = difflib.get_close_matches(word, words, 1, 0.7) or difflib.get_close_matches(word.lower(), words, 1, 0.7)
     return close[0] if close else None
 
 
