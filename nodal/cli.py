@@ -170,7 +170,8 @@ def sweep(
 ) -> None:
     """Transfer functions and loading over frequency.
 
-    Every reading and contact of FILE, per unit of the drive. The frequencies are the file's `sweep` unless given.
+    Every reading and contact of FILE, per unit of the drive. The frequencies are those of the file's `sweep`
+    unless given.
     """
     from nodal.report import answers, data, terminal
     from nodal.response import Unavailable
@@ -486,7 +487,8 @@ def _write(text: str, options: Options) -> None:
 def replace_file(path: str, text: str) -> None:
     """Write `text` to a temporary file beside `path` and move it into place; OSError where that fails.
 
-    An existing file keeps its permissions, a link its target; what is no regular file (a pipe) is written to as is.
+    An existing file keeps its permissions, a link its target; what is no regular file (a pipe) is written to
+    as it is.
     """
     target = os.path.realpath(path)
     try:

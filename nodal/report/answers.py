@@ -52,7 +52,7 @@ def sweep(
     """All readings and contacts, and the nodes asked for. `drive` None is the default drive, which must
     exist.
 
-    Raises `Unavailable` where the whole network has no solution; what one contact does not have is None there.
+    Raises `Unavailable` where the whole network has no solution; what a contact does not have is None there.
     """
     network = response.network
     chosen = network.drive(drive or network.default_drive or "")
@@ -62,7 +62,7 @@ def sweep(
         {name: curve.values for name, curve in found.readings.items()},
         {reading.name: ratio_unit(reading.unit, chosen.unit) for reading in network.readings},
         {name: curve.values for name, curve in found.nodes.items()},
-        {contact.name: _contact(response, frequencies, contact.name, chosen.name) for contact in network.contacts},
+        {c.name: _contact(response, frequencies, c.name, chosen.name) for c in network.contacts},
         response.quality,
     )
 
@@ -220,15 +220,21 @@ def _rows(
         for reading in network.readings:
             if reading.name not in seen:
                 seen.add(reading.name)
-                yield from _reading_rows(responses[name], reading.name, drive, spans[name], explicit)
-                yield from (row for row in required if row.subject == reading.name)
+                rows = list(_reading_rows(responses[name], reading.name, drive, spans[name], explicit))
+                yield from _gathered([*rows, *(row for row in required if row.subject == reading.name)])
     seen.clear()
     for name, network in networks:
         for contact in network.contacts:
             if contact.name not in seen:
                 seen.add(contact.name)
-                yield from _contact_rows(contact.name, spans[name])
-                yield from (row for row in required if row.subject == contact.name)
+                rows = list(_contact_rows(contact.name, spans[name]))
+                yield from _gathered([*rows, *(row for row in required if row.subject == contact.name)])
+
+
+def _gathered(rows: Sequence[FigureRow]) -> list[FigureRow]:
+    """Rows of one figure together, figures in the order of their first row, frequencies ascending."""
+    order = list(dict.fromkeys(row.call.name for row in rows))
+    return sorted(rows, key=lambda row: (order.index(row.call.name), -1.0 if row.at is None else row.at))
 
 
 def _reading_rows(

@@ -27,6 +27,8 @@ HAZARDOUS = 60.0
 memory)."""
 
 _MOST_CROSSINGS = 8
+_ROUNDING = 1e-13
+"""What is left of a difference of equal numbers: shown as 0."""
 
 CAUTION = "Model results are no insulation, clearance or safety verification."
 
@@ -51,7 +53,7 @@ class Page:
         return Measurement.get(self.console, options, table).maximum <= self.console.width
 
     def text(self) -> str:
-        return "\n".join(line.rstrip() for line in self._out.getvalue().splitlines()) + "\n"
+        return "\n".join(line.rstrip() for line in self._out.getvalue().splitlines()).rstrip("\n") + "\n"
 
 
 @dataclass(frozen=True, slots=True)
@@ -201,7 +203,7 @@ def figures(page: Page, file: str, title: str, drive: str | None, answer: Figure
     for number, row in enumerate(answer.rows):
         if number == 0 or answer.rows[number - 1].subject != row.subject:
             sections[number] = row.subject
-    first = Group(("",), (tuple(row.label for row in answer.rows),))
+    first = Group(("",), (tuple(f"  {row.label}" for row in answer.rows),))
     groups = [
         Group((case,), (tuple(figure(row, results[row.label]) for row in answer.rows),))
         for case, results in answer.cases.items()
@@ -219,7 +221,9 @@ def figure(row: FigureRow, result: Result) -> str:
     if result.value is None:
         return numbers.NOTHING
     name = row.call.name
-    if name in ("flatness", "peaking", "disturbance", "error"):
+    if name in ("flatness", "peaking", "error"):
+        return numbers.part_of_one(result.value if abs(result.value) > _ROUNDING else 0.0)
+    if name == "disturbance":  # computed without a difference, right however small
         return numbers.part_of_one(result.value)
     if name == "rejection" and result.decibels is not None:
         return f"{numbers.decibels(result.decibels)} dB"
