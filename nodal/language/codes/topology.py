@@ -73,7 +73,8 @@ TOPOLOGY: tuple[Code, ...] = (
         "that are "
         "both tightly coupled to a third are coupled to each other, with the right sign.",
         (
-            _FRAME + "branch x: a to ground = 1 µH\nbranch y: a to ground = 1 µH\nbranch z: a to ground = 1 µH\n"
+            _FRAME + "branch x: a to ground = 1 µH\nbranch y: a to ground = 1 µH\n"
+            "branch z: a to ground = 1 µH\n"
             "coupling xy: x.L with y.L = 0.9\ncoupling yz: y.L with z.L = 0.9\ncoupling zx: z.L with x.L = "
             "-0.9",
         ),
@@ -140,7 +141,7 @@ TOPOLOGY: tuple[Code, ...] = (
         "The part has no influence, because its two ends are the same node or joined by 0 Ω, 0 H or 0 m.",
         (
             _FRAME + "branch r: a to ground = 1 Ω\nbranch q: a to a = 1 Ω",
-            _FRAME + "branch r: a to ground = 1 Ω\nbranch q: a to b = 1 Ω ∥ 0 Ω\nbranch c: b to ground = 1 pF",
+            _FRAME + "branch q: a to b = 1 Ω ∥ 0 Ω\nbranch c: b to ground = 1 pF",
         ),
     ),
     Code(
@@ -160,7 +161,8 @@ TOPOLOGY: tuple[Code, ...] = (
         "alone are "
         "without it, so undisturbed voltages and impedances at contacts do not show it.",
         (
-            _SPLIT + "branch e: a to ground = 1 kΩ }\nbranch p: a to b = 10 nH\nbranch q: b to ground = 1 MΩ\n"
+            _SPLIT + "branch e: a to ground = 1 kΩ }\nbranch p: a to b = 10 nH\n"
+            "branch q: b to ground = 1 MΩ\n"
             "coupling k: p.L with s.lead = 0.1",
         ),
     ),
