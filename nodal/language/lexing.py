@@ -443,15 +443,14 @@ class Lexer:
         assert word is not None  # called where a letter stands
         name = word.group().rstrip(".")
         end = start + len(name)
-        plain = unicodedata.normalize("NFKD", name.replace("ß", "ss")).translate(
-            {0x3BC: "u", 0xB5: "u", 0x3A9: "Ohm"}
-        )
+        names = str.maketrans({"ß": "ss", "\u03bc": "u", "µ": "u", "Ω": "Ohm", "\u2126": "Ohm"})
+        plain = unicodedata.normalize("NFKD", name.translate(names))
         plain = "".join(char for char in plain if char.isascii())
         wrong = next(char for char in name if not char.isascii())
-        fix = f"write {plain}" if plain and plain[0].isalpha() and len(plain) >= len(name) else (
-            "names are made of the letters a to z and A to Z, digits and _"
-        )  # fmt: skip
-        self._report("name-form", start, end, found=name, char=wrong, what=character_name(wrong), fix=fix)
+        shown = f"U+{ord(wrong):04X}" if unicodedata.combining(wrong) else wrong
+        whole = len(plain) >= len(unicodedata.normalize("NFC", name)) and plain[0].isalpha()
+        fix = f"write {plain}" if whole else "names are made of the letters a to z and A to Z, digits and _"
+        self._report("name-form", start, end, found=name, char=shown, what=character_name(wrong), fix=fix)
         self._emit(WORD, start, end)
         return end
 

@@ -419,9 +419,9 @@ class _Run:
             return "between two values stands an operator: ∥ (or ||), --, +, -, * or /"
         if lexeme.type == "NUMBER" and "NAME" in expected:
             return "a name begins with a letter"
-        if word in FORMS and block not in FIELD_FORMS:
-            return f"{_article(word)} reads: {FORMS[word]}"
-        return ""
+        if block in FIELD_FORMS:
+            return f"write {FIELD_FORMS[block]}"
+        return f"the statement reads: {FORMS[word]}" if word in FORMS else ""
 
 
 def _article(word: str) -> str:
@@ -431,7 +431,9 @@ def _article(word: str) -> str:
 
 def _nearest(word: str, among: Iterable[str]) -> str | None:
     words = list(among)
-    close = difflib.get_close_matches(word, words, 1, 0.7) or difflib.get_close_matches(word.lower(), words, 1, 0.7)
+    close = difflib.get_close_matches(word, words, 1, 0.7) or difflib.get_close_matches(
+        word.lower(), words, 1, 0.7
+    )
     return close[0] if close else None
 
 

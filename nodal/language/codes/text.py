@@ -253,7 +253,7 @@ TEXT: tuple[Code, ...] = (
     Code(
         "node-count",
         "error",
-        "{what} has {asked} nodes, here are {given}",
+        "{what} has {asked} nodes, here it has {given}",
         "write {form}",
         "Sources, branches, contacts and readings stand between two nodes; a cable and an amplifier have two"
         " on each side, the second of which is the reference of the first.",
