@@ -26,7 +26,7 @@ class Contact:
     name: str
     a: int
     b: int
-    place: Place | None = None
+    place: Place | None = field(default=None, compare=False)
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,7 +38,7 @@ class Reading:
     b: int
     times: Value = Value(1.0)
     unit: str = "V"
-    place: Place | None = None
+    place: Place | None = field(default=None, compare=False)
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,7 +48,7 @@ class Drive:
     name: str
     weights: tuple[tuple[str, float], ...]
     unit: str = "V"
-    place: Place | None = None
+    place: Place | None = field(default=None, compare=False)
 
 
 @dataclass(frozen=True, slots=True)
@@ -100,7 +100,7 @@ class Requirement:
     tolerance: float
     unit: str
     text: str
-    place: Place | None = None
+    place: Place | None = field(default=None, compare=False)
 
 
 @dataclass(frozen=True, slots=True)

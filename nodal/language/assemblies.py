@@ -10,9 +10,10 @@ from nodal.language.diagnostics import Collector
 from nodal.language.evaluate import SPREAD, Evaluator
 from nodal.language.frame import Frame
 from nodal.language.order import groups
-from nodal.language.quantity import Quantity
-from nodal.language.scope import Binding, Rejected, Scope
+from nodal.language.quantity import Quantity, number
+from nodal.language.scope import Binding, Rejected, Scope, names_in
 from nodal.language.syntax import Span
+from nodal.language.units import Dimension
 
 DEEPEST = 50
 """Assemblies within assemblies."""
@@ -72,13 +73,13 @@ def _count(statement: syntax.Place | syntax.Chain) -> int:
 
 
 def evaluate_arguments(
-    use: syntax.Use, assembly: syntax.Assembly, frame: Frame, overrides: Mapping[str, Quantity | None]
+    use: syntax.Use, assembly: syntax.Assembly, frame: Frame, overrides: Mapping[str, Quantity | float | None]
 ) -> Mapping[str, Quantity | None]:
     """The arguments of a use, None for one that failed, `overrides` in place of those written; every mistake
     is reported."""
     evaluator = frame.evaluator
     parameters = {parameter.name.text: parameter for parameter in assembly.parameters}
-    values: dict[str, Quantity | None] = dict(overrides)
+    values: dict[str, Quantity | None] = {}
     failed = False
     written: dict[str, Span] = {}
     for argument in use.arguments:
@@ -89,10 +90,15 @@ def evaluate_arguments(
             if name.text in written:
                 evaluator.reject("argument-twice", name.span, argument=name.text)
             written[name.text] = name.span
-            if name.text not in values and argument.value is not None:
+            if argument.value is not None:
                 values[name.text] = evaluator.value(argument.value, frame.scope, None, SPREAD)
         except Rejected:
             failed = True
+    for name_, override in overrides.items():
+        if isinstance(override, float):
+            values[name_] = number(override, _dimension(name_, values.get(name_), parameters[name_], frame))
+        else:
+            values[name_] = override
     for name_, parameter in parameters.items():
         if name_ not in values and parameter.value is None and name_ not in written:
             evaluator.report("argument-missing", use.span, argument=name_, assembly=assembly.name.text)
@@ -100,6 +106,18 @@ def evaluate_arguments(
     if failed:
         raise Rejected
     return values
+
+
+def _dimension(name: str, written: Quantity | None, parameter: syntax.Parameter, frame: Frame) -> Dimension:
+    """What a number from outside is a number of: the dimension of the argument or default it stands for."""
+    if written is not None:
+        return written.dimension
+    if parameter.value is None:
+        return units.NONE
+    known = set(frame.scope.names()) | {"pi"}
+    if not names_in(parameter.value).keys() <= known:
+        frame.evaluator.reject("override-form", parameter.name.span, name_=name)
+    return frame.evaluator.value(parameter.value, frame.scope, None, SPREAD).dimension
 
 
 def bind_nodes(use: syntax.Use, assembly: syntax.Assembly, frame: Frame) -> tuple[list[int], list[int], list[int]]:

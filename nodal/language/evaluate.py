@@ -276,7 +276,7 @@ class Evaluator:
 
     def _count(self, call: syntax.Call, wanted: str, right: bool) -> None:
         if not right:
-            self.reject("wrong-arguments", call.span, name=call.function.text, wanted=wanted,
+            self.reject("wrong-arguments", call.span, function=call.function.text, wanted=wanted,
                         found=len(call.arguments))  # fmt: skip
 
     # Qualifiers

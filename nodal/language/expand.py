@@ -75,7 +75,7 @@ class _Expansion:
         self.stocks: dict[str, syntax.Stock] = {}
         self.stock_data: dict[str, StockData | None] = {}
         self.assemblies: dict[str, syntax.Assembly] = {}
-        self.arguments: dict[str, tuple[syntax.Word | None, Quantity | None]] = {}
+        self.arguments: dict[str, tuple[syntax.Word | None, Quantity | float | None]] = {}
         """Values for the arguments of places, by their dotted name, and where each was written."""
         self.known_arguments: set[str] = set()
         self.couplings: list[tuple[syntax.Coupling, Frame]] = []
@@ -138,7 +138,7 @@ class _Expansion:
                 self.arguments[statement.name.text] = (statement.name, value)
         for name, override in self.overrides.items():
             if "." in name:
-                self.arguments[name] = (None, self.overriding(override, None))
+                self.arguments[name] = (None, self.argument(override))
         for name in check_assemblies(self.assemblies, self.collector):
             del self.assemblies[name]
         check_size(self.assemblies, (item.statement for item in self.items), self.collector)
@@ -150,13 +150,20 @@ class _Expansion:
             quantity = self.overriding(self.overrides[name], quantity)
         return randomised(quantity, scope.prefix + name)
 
-    def overriding(self, override: Override, written: Quantity | None) -> Quantity:
+    def overriding(self, override: Override, written: Quantity) -> Quantity:
         """A value from outside, in the dimension of what was written."""
-        dimension = written.dimension if written is not None else units.NONE
         if isinstance(override, int | float):
-            return number(float(override), dimension)
-        allowed = None if written is None else dimension
-        return self.evaluator.value(override, self.scope, allowed, SPREAD)
+            return number(float(override), written.dimension)
+        return self.evaluator.value(override, self.scope, written.dimension, SPREAD)
+
+    def argument(self, override: Override) -> Quantity | float | None:
+        """A place's argument from outside; a number takes its dimension from the place."""
+        if isinstance(override, int | float):
+            return float(override)
+        try:
+            return self.evaluator.value(override, self.scope, None, SPREAD)
+        except Rejected:
+            return None
 
     # Parts
 
@@ -238,7 +245,7 @@ class _Expansion:
         self.used_names.add(name)
         return self.assemblies[name]
 
-    def overridden(self, place: str, assembly: syntax.Assembly) -> dict[str, Quantity | None]:
+    def overridden(self, place: str, assembly: syntax.Assembly) -> dict[str, Quantity | float | None]:
         """Arguments of a place that a case or the caller sets."""
         found = {}
         for parameter in assembly.parameters:
@@ -266,7 +273,8 @@ class _Expansion:
         if len(assembly.left) != len(assembly.right):
             self.evaluator.reject("chain-ends", chain.use.span, assembly=assembly.name.text,
                                   left=len(assembly.left), right=len(assembly.right))  # fmt: skip
-        arguments = evaluate_arguments(chain.use, assembly, frame, self.overridden(name, assembly))
+        own_overrides = self.overridden(name, assembly)
+        arguments = evaluate_arguments(chain.use, assembly, frame, own_overrides)
         left, right, shared = bind_nodes(chain.use, assembly, frame)
         errors = len(self.collector.found)
         parts = len(self.builder.parts)
@@ -278,7 +286,10 @@ class _Expansion:
                 ends = right
                 if position < count:
                     ends = [self.builder.node(inner + word.text, chain.use.span) for word in assembly.right]
-                own = {**arguments, **self.overridden(inner[:-1], assembly)} if self.arguments else arguments
+                own = arguments
+                if self.arguments:
+                    here = {**own_overrides, **self.overridden(inner[:-1], assembly)}
+                    own = evaluate_arguments(chain.use, assembly, frame, here)
                 self.section(assembly, inner, frame, left, ends, shared, own)
                 left = ends
                 if position == 1:
@@ -484,7 +495,7 @@ class _Expansion:
             self.evaluator.reject("range-reversed", sweep.high.span, low=units.show(low, "Hz"),
                                   high=units.show(high, "Hz"))  # fmt: skip
         if per_decade * (math.log10(high) - math.log10(low)) + 2 > MOST_POINTS:
-            self.evaluator.reject("too-many-points", sweep.per_decade.span, limit=f"{MOST_POINTS:,}")
+            self.evaluator.reject("sweep-too-long", sweep.per_decade.span, limit=f"{MOST_POINTS:,}")
         return SweepGrid(low, high, per_decade)
 
     def edge(self, edge: syntax.Edge) -> Stimulus:

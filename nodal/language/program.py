@@ -131,12 +131,10 @@ class _Gathering:
                         self.program.items.append(Item(statement, under_test))
 
     def misplaced(self, statement: syntax.Statement, where: str) -> None:
-        """The parser reports most of these already; what stays is what only a whole design shows."""
         word = kind_of(statement).partition(" ")[0]
-        start = statement.span.start
-        span = Span(statement.span.path, start, start + len(word))
-        if not any(found.code == "misplaced" and found.span == span for found in self.collector.found):
-            self.collector.add("misplaced", span, what=f"`{kind_of(statement)}`", where=where, fix="move it elsewhere")
+        span = Span(statement.span.path, statement.span.start, statement.span.start + len(word))
+        fix = "it belongs in a case" if isinstance(statement, syntax.Omit) else "move it out of the braces"
+        self.collector.add("misplaced", span, kind=f"`{kind_of(statement)}`", where=where, fix=fix)
 
     def unique(self, statement: syntax.Statement) -> bool:
         word = name_of(statement)
@@ -191,9 +189,9 @@ class _Gathering:
             elif isinstance(statement, syntax.Let) and "." in statement.name.text:
                 self.collector.add("dotted-let", statement.name.span, name_=statement.name.text)
             else:
-                word = name_of(statement)
-                if word is not None:
-                    _declare(word, names, self.collector)
+                declared = name_of(statement)
+                if declared is not None:
+                    _declare(declared, names, self.collector)
 
     def include(self, include: syntax.Include) -> None:
         target = include.target

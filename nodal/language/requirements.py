@@ -86,13 +86,11 @@ def form_of(row: FigureName) -> str:
 
 def _kind(expression: syntax.Expression, kinds: list[ArgumentKind], network: Network, frame: Frame) -> ArgumentKind:
     """A contact is told from a frequency by being a name that no value bears."""
-    if isinstance(expression, syntax.Name) and "contact" in kinds:
-        contacts = {contact.name for contact in network.contacts}
-        if expression.text in contacts or expression.text not in set(frame.scope.names()):
-            return "contact"
-    if isinstance(expression, syntax.Name) and "frequency" not in kinds:
+    if not isinstance(expression, syntax.Name):
+        return "frequency"
+    if any(contact.name == expression.text for contact in network.contacts):
         return "contact"
-    return "frequency"
+    return "frequency" if "frequency" in kinds and expression.text in set(frame.scope.names()) else "contact"
 
 
 def _argument(

@@ -221,7 +221,7 @@ MEANING: tuple[Code, ...] = (
         "write its half-width: ± 1 %",
         "`±` is followed by the half-width of the interval, zero or more.",
         (
-            _FRAME + "branch t: a to ground = 1 Ω ± (0 - 1 %)",
+            _FRAME + "branch t: a to ground = 1 Ω ± -1 %",
         ),
     ),
     Code(
@@ -257,7 +257,7 @@ MEANING: tuple[Code, ...] = (
     Code(
         "wrong-arguments",
         "error",
-        "{name} takes {wanted}, not {found}",
+        "{function} takes {wanted}, not {found}",
         "",
         "The function is given too few or too many values.",
         (
@@ -478,6 +478,21 @@ MEANING: tuple[Code, ...] = (
         ),
     ),
     Code(
+        "misplaced",
+        "error",
+        "{kind} cannot stand {where}",
+        "{fix}",
+        "Under test stand the parts of the circuit; in an assembly parts, values and uses of other "
+        "assemblies; in a case all but cases, includes and the title; `omit` only in a case; in "
+        "`case nominal` requirements only, because it is the file as it is.",
+        (
+            _FRAME + "omit s",
+            _FRAME + "assembly x(p to q) { reading m: p to q }",
+            _FRAME + "case x { include \"y.nodal\" }",
+            _FRAME + "case nominal { let x = 1 }",
+        ),
+    ),
+    Code(
         "given-twice",
         "error",
         "`{kind}` is given twice",
@@ -509,7 +524,7 @@ MEANING: tuple[Code, ...] = (
         ),
     ),
     Code(
-        "too-many-points",
+        "sweep-too-long",
         "error",
         "the sweep has more than {limit} points",
         "take fewer points per decade",
