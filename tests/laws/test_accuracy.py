@@ -10,7 +10,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import given, reject, settings
 from hypothesis import strategies as st
 from support import reference
 
@@ -26,7 +26,10 @@ FLAG = 1e-11
 
 def check(network: Network, name: str, frequency: float, curve: Curve, drive: str | None = None) -> None:
     """One point against the reference. The sensitivities are worked out only where 1e-10 does not hold."""
-    exact = reference.reading(network, name, frequency, drive)
+    try:
+        exact = reference.reading(network, name, frequency, drive)
+    except reference.TooLong:
+        reject()
     found = complex(curve.values[0])
     if abs(exact) < 1e-290:  # below what a double can hold
         assert abs(found) < 1e-280

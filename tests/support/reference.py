@@ -1,7 +1,7 @@
 """An independent solution of a flat `Network`: dense modified nodal analysis in many-digit arithmetic.
 
 It shares nothing with the package but the description of the parts: every two-terminal part but a capacitor
-is an impedance with a current of its own, a cable is the matrix exponential of its telegraph equations
+is an impedance with a current of its own, a cable is the exponential of its telegraph equations
 (written for core and shield as two conductors above ground), functions of frequency are written out from the
 definitions in the language's reference, and the matrix is solved by plain Gaussian elimination. Slow on
 purpose.
@@ -29,8 +29,15 @@ from nodal.values import Value
 DIGITS = 60
 
 
+MOST_NEPERS = 600
+
+
 class Singular(ArithmeticError):
     """The network has no unique solution."""
+
+
+class TooLong(ArithmeticError):
+    """A cable attenuates by more than MOST_NEPERS: its exponential would need too many digits."""
 
 
 class _Equations:
@@ -113,41 +120,71 @@ def _number(value: Value | None, otherwise: float = 0.0) -> Any:
     return mpf(otherwise if value is None else value.nominal)
 
 
-def _cable(equations: _Equations, part: Cable, s: Any) -> None:
-    length = _number(part.length)
+def _line(part: Cable, s: Any) -> tuple[Any, Any, Any]:
+    """(series impedance of the core without inductance, external inductance, shunt admittance) per metre."""
     core = _number(part.resistance)
     if part.skin:
         at, frequency = part.skin
         core = mp.sqrt(core**2 + 2 * mpf(at) ** 2 * s / (2 * mp.pi * mpf(frequency)))
-    inductance = _number(part.inductance)
+    y = s * _lossy(s, _number(part.capacitance), part.loss) + _number(part.conductance)
+    return core, _number(part.inductance), y
+
+
+def _nepers(part: Cable, s: Any) -> float:
+    core, inductance, y = _line(part, s)
+    return float(
+        mp.re(_number(part.length) * mp.sqrt((core + _number(part.shield_resistance) + s * inductance) * y))
+    )
+
+
+def chain_matrix(z: Any, y: Any, length: Any) -> Any:
+    """exp of -[[0, z], [y, 0]] length: (V, I) at the near end to (V, I) at the far end, I toward it.
+
+    z and y are symmetric and y has rank one, so that (zy)² = γ² zy with γ² its trace, and the even and odd power
+    series of √(zy) sum to a cosh and a sinh of γ.
+    """
+    n = z.rows
+    product = z * y
+    square = sum((product[i, i] for i in range(n)), mpf(0))
+    even, odd = mpmath.eye(n), length * mpmath.eye(n)
+    if square:
+        gamma = mp.sqrt(square)
+        even += (mp.cosh(gamma * length) - 1) / square * product
+        odd += (mp.sinh(gamma * length) / gamma - length) / square * product
+    upper, lower = -odd * z, -y * odd
+    chain = mpmath.zeros(2 * n)
+    for i in range(n):
+        for j in range(n):
+            chain[i, j], chain[i, n + j] = even[i, j], upper[i, j]
+            chain[n + i, j], chain[n + i, n + j] = lower[i, j], even[j, i]
+    return chain
+
+
+def _cable(equations: _Equations, part: Cable, s: Any) -> None:
+    length = _number(part.length)
+    core, inductance, y = _line(part, s)
     rs, ls, k = (
         _number(x, y)
         for x, y in ((part.shield_resistance, 0), (part.shield_inductance, 0), (part.shield_coupling, 1))
     )
-    y = s * _lossy(s, _number(part.capacitance), part.loss) + _number(part.conductance)
     ends = ((part.core1, part.shield1), (part.core2, part.shield2))
     own_shield = part.shield1 != part.shield2 and (rs or ls)
-    nepers = int(mp.re(length * mp.sqrt((core + rs + s * inductance) * y)) * 2 / mp.log(10)) + 1
-    with mp.workdps(mp.dps + 2 * nepers):
-        if own_shield:
-            impedances = [[core + s * (inductance + (2 * k - 1) * ls), s * k * ls], [s * k * ls, rs + s * ls]]
-            admittances = [[y, -y], [-y, y]]
-            voltages = (
-                [[(("v", core_node), 1)] for core_node, _ in ends],
-                [[(("v", shield), 1)] for _, shield in ends],
-            )
-            nodes = [(part.core1, part.core2), (part.shield1, part.shield2)]
-        else:
-            impedances, admittances = [[core + rs + s * inductance]], [[y]]
-            voltages = ([[(("v", a), 1), (("v", b), -1)] for a, b in ends],)
-            nodes = [(part.core1, part.core2)]
-        n = len(impedances)
-        system = mp.zeros(2 * n)
-        for i in range(n):
-            for j in range(n):
-                system[i, n + j] = -impedances[i][j] * length
-                system[n + i, j] = -admittances[i][j] * length
-        chain = mp.expm(system, method="taylor")
+    if own_shield:
+        impedances = mpmath.matrix(
+            [[core + s * (inductance + (2 * k - 1) * ls), s * k * ls], [s * k * ls, rs + s * ls]]
+        )
+        admittances = y * mpmath.matrix([[1, -1], [-1, 1]])
+        voltages = (
+            [[(("v", core_node), 1)] for core_node, _ in ends],
+            [[(("v", shield), 1)] for _, shield in ends],
+        )
+        nodes = [(part.core1, part.core2), (part.shield1, part.shield2)]
+    else:
+        impedances, admittances = mpmath.matrix([[core + rs + s * inductance]]), mpmath.matrix([[y]])
+        voltages = ([[(("v", a), 1), (("v", b), -1)] for a, b in ends],)
+        nodes = [(part.core1, part.core2)]
+    chain = chain_matrix(impedances, admittances, length)
+    n = len(nodes)
     currents = [[(part.name, f"{end}{i}") for i in range(n)] for end in ("near", "far")]
     for i in range(2 * n):
         entries: list[tuple[Any, Any]] = []
@@ -199,9 +236,18 @@ def _amplifier(equations: _Equations, part: Amplifier, s: Any) -> None:
 def solve(network: Network, s: Any, drive: str | None = None) -> dict[Any, Any]:
     """Every voltage ("v", node) and the currents of parts, per unit of the drive, at one complex s (rad/s).
 
-    Call inside `mpmath.workdps`. A `Singular` is raised where the elimination meets no pivot.
+    Call inside `mpmath.workdps`. Raises `Singular` where the elimination meets no pivot, `TooLong`.
     """
     s = mpmath.mpmathify(s)
+    nepers = max((_nepers(part, s) for part in network.parts if isinstance(part, Cable)), default=0.0)
+    if nepers > MOST_NEPERS:
+        raise TooLong(f"{nepers:.3g} nepers")
+    # Both waves of a line are in each row: the smaller one must keep all its digits.
+    with mp.workdps(mp.dps + int(nepers)):
+        return _solve(network, s, drive)
+
+
+def _solve(network: Network, s: Any, drive: str | None) -> dict[Any, Any]:
     equations = _Equations(len(network.nodes))
     name = drive or network.default_drive
     weights = dict(network.drive(name).weights) if name else {}
