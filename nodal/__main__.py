@@ -1,0 +1,5 @@
+"""`python -m nodal` is the command `nodal`."""
+
+from nodal.cli import main
+
+main()
