@@ -1,13 +1,13 @@
 """Poles and residues of lumped systems: A(s) = G + s C without functions of s.
 
-With C = U V^T taken from the terms themselves and a real shift w, z = V^T x obeys (1 + (s - w) M) z = V^T A(w)⁻¹ b,
-M = V^T A(w)⁻¹ U: a pole p is an eigenvalue 1/(w - p) of M, and what has no dynamics (loops of capacitors, algebraic
-constraints) is an eigenvalue 0 that is never asked for. Poles within about two decades of the shift come out to full
-relative precision, so that picoseconds and seconds in one network take several shifts, each with a band of its own.
-How many poles there are, and how many at the origin, is known exactly beforehand from the degree and the order of
-det A(s). A band's invariant subspace comes from an ordered Schur form; it is then split into clusters of close
-eigenvalues as far as that keeps the transformation harmless (Bavely and Stewart 1979), and each cluster answers with
-its matrix exponential.
+With C = U V^T taken from the terms themselves and a real shift w, z = V^T x obeys (1 + (s - w) M) z = V^T
+A(w)⁻¹ b, M = V^T A(w)⁻¹ U: a pole p is an eigenvalue 1/(w - p) of M, and what has no dynamics (loops of
+capacitors, algebraic constraints) is an eigenvalue 0 that is never asked for. Poles within about two decades
+of the shift come out to full relative precision, so that picoseconds and seconds in one network take several
+shifts, each with a band of its own. How many poles there are, and how many at the origin, is known exactly
+beforehand from the degree and the order of det A(s). A band's invariant subspace comes from an ordered Schur
+form; it is then split into clusters of close eigenvalues as far as that keeps the transformation harmless
+(Bavely and Stewart 1979), and each cluster answers with its matrix exponential.
 """
 
 from __future__ import annotations
@@ -24,9 +24,8 @@ from scipy.linalg import lapack
 
 from nodal.solver.arithmetic import MpArithmetic
 from nodal.solver.exact import Exact
-from nodal.solver.kernel import Kernel
 from nodal.solver.matrix import System
-from nodal.solver.pattern import Complexes, Floats, Pattern
+from nodal.solver.pattern import Complexes, Floats, Pattern, product
 from nodal.solver.plan import Plan, make_plan
 from nodal.solver.sweep import solve
 
@@ -43,6 +42,8 @@ _FAR = (60, 80)
 """s = 10 ** these, rad/s: beyond every corner that parts of any size can make."""
 
 _DIGITS = 600
+
+_CORRECTIONS = 3
 
 
 class NotRealised(Exception):
@@ -76,9 +77,10 @@ class Cluster:
 class Realisation:
     """H(s) = direct + slope s + sum over modes of residue/(s - pole) + sum over clusters.
 
-    `poles` (n,) rad/s are all finite ones, n = degree of det A, those of clusters included; exact zeros are those at
-    the origin. `mode_poles` (m,) and `residues` (n_outputs, m) are the single ones. `mismatch` (n_outputs,): largest
-    difference from the solver at the frequencies looked at; `largest`: largest |H| there.
+    `poles` (n,) rad/s are all finite ones, n = degree of det A, those of clusters included; exact zeros are
+    those at the origin. `mode_poles` (m,) and `residues` (n_outputs, m) are the single ones. `mismatch`
+    (n_outputs,): largest difference from the solver at the frequencies looked at; `largest`: largest |H|
+    there.
     """
 
     direct: Floats
@@ -108,9 +110,11 @@ class Realisation:
         return values
 
     def edge(self, times: ArrayLike, ramp: float = 0.0) -> Floats:
-        """Response to a unit step at t = 0, or to a linear ramp from 0 to 1 of duration `ramp`; (n_outputs, n_times).
+        """Response to a unit step at t = 0, or to a linear ramp from 0 to 1 of duration `ramp`; (n_outputs,
+        n_times).
 
-        At a jump the value is the one after it. Nothing is subtracted that nearly cancels, however short the ramp.
+        At a jump the value is the one after it. Nothing is subtracted that nearly cancels, however short the
+        ramp.
         """
         t = np.atleast_1d(np.asarray(times, dtype=float))
         values = np.zeros((len(self.direct), len(t)))
@@ -133,9 +137,11 @@ class Realisation:
 
 
 def realise(
-    system: System, source: Mapping[int, float], outputs: Sequence[Mapping[int, float]], frequencies: ArrayLike = (),
+    system: System, source: Mapping[int, float], outputs: Sequence[Mapping[int, float]], frequencies:
+    ArrayLike = (),
 ) -> Realisation:
-    """Realise every output of A(s) x = source; checked against the solver at its own grid and at `frequencies` (Hz).
+    """Realise every output of A(s) x = source; checked against the solver at its own grid and at
+    `frequencies` (Hz).
 
     Raises NotRealised where the poles cannot be told reliably, ValueError for a system with functions of s.
     """
@@ -208,9 +214,10 @@ def _order_at_origin(pattern: Pattern) -> int:
 
 def _log_det(exact: Exact) -> float:
     """log10 |det A|."""
-    log10 = exact.arithmetic.context.log10
-    pivots = exact.order.pivot.tolist()
-    return float(-sum((log10(abs(exact.reciprocal_pivot(slot))) for slot in pivots), exact.arithmetic.number(0)))
+    reciprocal = exact.arithmetic.number(1)
+    for slot in exact.order.pivot.tolist():
+        reciprocal = reciprocal * exact.reciprocal_pivot(slot)
+    return float(-exact.arithmetic.context.log10(abs(reciprocal)))
 
 
 @dataclass(frozen=True, slots=True)
@@ -242,7 +249,8 @@ class _Shifted:
 
 
 def _bands(
-    pattern: Pattern, degree: int, origin: int, source: Mapping[int, float], outputs: Sequence[Mapping[int, float]]
+    pattern: Pattern, degree: int, origin: int, source: Mapping[int, float], outputs: Sequence[Mapping[int,
+    float]]
 ) -> list[_Band]:
     if degree == 0:
         return []
@@ -295,14 +303,20 @@ def _band_edges(pattern: Pattern, degree: int, origin: int) -> list[float]:
 
 def _log_dets(plan: Plan, s: Floats) -> Floats:
     """log10 |det A| at real s, up to a constant; double precision."""
-    entries = plan.pattern.entries @ (plan.pattern.g[:, None] + np.multiply.outer(plan.pattern.c, s))
-    entries *= (plan.row_scale[plan.pattern.rows] * plan.col_scale[plan.pattern.cols])[:, None]
-    w = [*entries, *np.zeros((plan.order.slots - len(entries), len(s)))]
+    w = _factors(plan, s)
     with np.errstate(all="ignore"):
-        Kernel(plan.order).factor(w, np.empty(len(s)))
         logs = [-np.log10(np.abs(w[slot])) for slot in plan.order.pivot.tolist()]
     total: Floats = np.nan_to_num(np.sum(logs, axis=0), posinf=0.0, neginf=0.0)
     return total
+
+
+def _factors(plan: Plan, s: Floats) -> list[Complexes]:
+    points = s.astype(complex)
+    entries = plan.pattern.matrix(points, {})
+    w = [*entries, *np.zeros((plan.order.slots - len(entries), len(s)), dtype=complex)]
+    with np.errstate(all="ignore"):
+        plan.kernel.factor(w, np.empty(len(s), dtype=complex))
+    return w
 
 
 def _gap(sizes: Floats, edge: float) -> float:
@@ -319,7 +333,9 @@ def _shifted(
     dynamic = np.flatnonzero(pattern.c)
     scale = np.sqrt(np.abs(pattern.c[dynamic]))
     right = np.zeros((pattern.size, len(dynamic) + 1))
-    right[:, :-1] = pattern.giving[:, dynamic].toarray() * (scale * np.sign(pattern.c[dynamic]))
+    for k, term in enumerate(dynamic.tolist()):
+        for equation, weight in pattern.term_rows[term]:
+            right[equation, k] = weight * scale[k] * np.sign(pattern.c[term])
     for equation, value in source.items():
         right[equation, -1] += value
     taking = pattern.taking[dynamic]
@@ -334,36 +350,31 @@ def _shifted(
     if not (np.isfinite(states).all() and np.isfinite(read).all()):
         raise NotRealised("the equations have no solution at the shift")
     balanced, (scaling, _) = scipy.linalg.matrix_balance(m, permute=False, separate=True)
-    t, q = scipy.linalg.schur(balanced, output="complex")
+    t, q = scipy.linalg.rsf2csf(*scipy.linalg.schur(balanced))
     return _Shifted(shift, t, (c * scaling) @ q, q.conj().T @ (b / scaling))
 
 
 def _solve_real(pattern: Pattern, shift: float, right: Floats) -> tuple[Floats, Floats]:
-    """A(shift)⁻¹ right, as an unevaluated sum of two: corrected three times with residuals formed term by term."""
+    """A(shift)⁻¹ right, as an unevaluated sum of two: corrected with residuals formed term by term."""
     plan = make_plan(pattern.system, [shift], pattern)
-    order, kernel = plan.order, plan.kernel
-    coefficients = pattern.g + shift * pattern.c
-    entries = pattern.entries @ coefficients * (plan.row_scale[pattern.rows] * plan.col_scale[pattern.cols])
-    w = [np.array([e]) for e in entries] + [np.zeros(1) for _ in range(order.slots - len(entries))]
-    spare = np.empty(right.shape[1])
-
-    def solved(b: Floats) -> Floats:
-        y = np.empty_like(b)
-        y[order.place] = b * plan.row_scale[:, None]
-        kernel.solve(w, list(y), spare)
-        return y * plan.col_scale[:, None]
-
+    coefficients = (pattern.g + shift * pattern.c)[:, None]
+    w = _factors(plan, np.array([shift]))
+    spare = np.empty(right.shape[1], dtype=complex)
+    b = np.empty(right.shape, dtype=complex)
+    b[plan.order.place] = right
     with np.errstate(all="ignore"):
-        kernel.factor(w, np.empty(1))
-        x = solved(right)
+        x = b.copy()
+        plan.kernel.solve(w, list(x), spare)
         small = np.zeros_like(x)
-        for _ in range(3):
-            drops = (pattern.taking @ x + pattern.taking @ small) * coefficients[:, None]
-            small += solved(right - pattern.giving @ drops)
+        for _ in range(_CORRECTIONS):
+            drops = product(pattern.taking, x) + product(pattern.taking, small)
+            correction = plan.balance.remainder(b, coefficients * drops)
+            plan.kernel.solve(w, list(correction), spare)
+            small += correction
             total = x + small
             small -= total - x
             x = total
-    return x, small
+    return x.real, small.real
 
 
 def _band(form: _Shifted, chosen: NDArray[np.bool_]) -> _Band:
@@ -403,7 +414,8 @@ def _split(t: Complexes, c: Complexes, b: Complexes) -> list[Cluster]:
         size = 1
         while size < len(b):
             x, scale, info = lapack.ztrsyl(t[:size, :size], t[size:, size:], -t[:size, size:], isgn=-1)
-            x = x / scale
+            with np.errstate(over="ignore"):
+                x = x / scale
             if info == 0 and np.isfinite(x).all() and np.abs(x).max() <= _SPLIT:
                 found.append(Cluster(t[:size, :size], c[:, :size], b[:size] - x @ b[size:]))
                 t, c, b = t[size:, size:], c[:, :size] @ x + c[:, size:], b[size:]
@@ -487,10 +499,6 @@ def phi2(z: Complexes) -> Complexes:
     return result
 
 
-_SMALL = 10
-"""Clusters up to this size get one matrix exponential a time; larger ones are stepped with powers of two."""
-
-
 def _advance(
     cluster: Cluster, x: Any, u: Floats, slope: Floats, elapsed: Floats
 ) -> Complexes:
@@ -503,32 +511,25 @@ def _advance(
     matrix[:n, n] = cluster.b / size
     matrix[n, n + 1] = rate
     state: Complexes = np.vstack([x, u * size, slope * (size / rate)]).astype(complex)
-    if n <= _SMALL:
-        result: Complexes = np.empty((n, len(elapsed)), dtype=complex)
-        for first in range(0, len(elapsed), 512):
-            part = slice(first, first + 512)
-            powers = scipy.linalg.expm(matrix * elapsed[part, None, None])
-            result[:, part] = np.einsum("tij,jt->it", powers[:, :n], state[:, part])
-        return result
     return _doubled(matrix, state, elapsed)[:n]
 
 
 def _doubled(matrix: Complexes, state: Complexes, elapsed: Floats) -> Complexes:
     """exp(matrix elapsed) state, one column a time: the binary digits of each time choose among exponentials."""
     longest = float(elapsed.max())
-    if longest == 0:
-        return state
-    levels = 54
-    power = scipy.linalg.expm(matrix * math.ldexp(longest, -levels))
-    whole = np.floor(elapsed / longest * 2.0**levels)
-    left = elapsed - whole * math.ldexp(longest, -levels)
-    state = state + matrix @ state * left
-    for _ in range(levels + 1):
+    norm = float(np.linalg.norm(matrix, 1))
+    levels = max(0, math.ceil(math.log2(longest * norm) + 1)) if longest * norm > 0 else 0
+    unit = math.ldexp(longest, -levels)
+    whole = np.floor(elapsed / unit) if unit else np.zeros_like(elapsed)
+    left = elapsed - whole * unit
+    term = state
+    for k in range(1, 20):  # what is left is half a time constant of the fastest at most
+        term = matrix @ term * (left / k)
+        state = state + term
+    power = scipy.linalg.expm(matrix * unit)
+    while whole.any():
         odd = whole % 2 == 1
-        if odd.any():
-            state[:, odd] = power @ state[:, odd]
+        state[:, odd] = power @ state[:, odd]
         whole = np.floor(whole / 2)
-        if not whole.any():
-            break
         power = power @ power
     return state
