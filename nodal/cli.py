@@ -331,7 +331,8 @@ def _frequency(text: str) -> float:
     scanned = units.scan_unit(unit) if unit else "Hz"
     if scanned is None or units.dimension_of(scanned) != units.HERTZ:
         near = units.nearest_unit(unit, units.HERTZ)
-        hint = f"write {digits}{near}" if near else "the unit is Hz, kHz, MHz or GHz"
+        fits = near is not None and units.dimension_of(near) == units.HERTZ
+        hint = f"write {digits}{near}" if fits else "write hertz or a number in Hz, kHz, MHz or GHz"
         _fail("bad-frequency", text=text, hint=hint)
     value = units.to_number(digits, scanned)
     if not math.isfinite(value):
@@ -473,9 +474,14 @@ def _finish(design: Design, options: Options, text: str) -> None:
     _write(text, options)
 
 
+_PIECE = 8192
+
+
 def _write(text: str, options: Options) -> None:
     if options.output is None or options.output == "-":
-        sys.stdout.write(text)
+        # In pieces: one large write to a pipe whose reader leaves can end short and silent.
+        for start in range(0, len(text), _PIECE):
+            sys.stdout.write(text[start : start + _PIECE])
         return
     try:
         replace_file(options.output, text)
