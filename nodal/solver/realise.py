@@ -14,7 +14,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
@@ -30,7 +31,7 @@ from nodal.solver.plan import Plan, make_plan
 from nodal.solver.sweep import solve
 
 AGREEMENT = 1e-9
-"""Largest difference between a reading rebuilt from its poles and the solver, as part of its own largest |H|."""
+"""Largest difference between a reading rebuilt from its poles and the solver, over its largest |H|."""
 
 _BAND = 4.0
 """Decades of poles that one shift serves."""
@@ -255,7 +256,7 @@ def _bands(
     if degree == 0:
         return []
     edges = _band_edges(pattern, degree, origin)
-    shifts = [math.sqrt(a * b) for a, b in zip(edges[:-1], edges[1:], strict=True)]
+    shifts = [math.sqrt(a * b) for a, b in pairwise(edges)]
     forms = [_shifted(pattern, shift, source, outputs) for shift in shifts]
     limits = [0.0]
     for form, edge in zip(forms[:-1], edges[1:-1], strict=True):
@@ -450,10 +451,7 @@ def _checked(
     difference = np.where(usable, np.abs(np.where(usable, rebuilt - expected, 0)), 0.0)
     difference[~np.isfinite(difference)] = np.inf
     largest = np.where(usable, np.abs(np.where(usable, expected, 0)), 0.0).max(axis=1)
-    return Realisation(
-        found.direct, found.slope, found.poles, found.mode_poles, found.residues, found.clusters,
-        difference.max(axis=1), largest,
-    )
+    return replace(found, mismatch=difference.max(axis=1), largest=largest)
 
 
 def _mode_edge(poles: Complexes, t: Floats, ramp: float) -> Complexes:
@@ -515,7 +513,7 @@ def _advance(
 
 
 def _doubled(matrix: Complexes, state: Complexes, elapsed: Floats) -> Complexes:
-    """exp(matrix elapsed) state, one column a time: the binary digits of each time choose among exponentials."""
+    """exp(matrix elapsed) state, one column a time: binary digits of each time choose exponentials."""
     longest = float(elapsed.max())
     norm = float(np.linalg.norm(matrix, 1))
     levels = max(0, math.ceil(math.log2(longest * norm) + 1)) if longest * norm > 0 else 0
