@@ -15,7 +15,7 @@ from typing import Any, Literal
 from hypothesis import strategies as st
 
 from nodal.network import Contact, Drive, Network, Reading
-from nodal.parts.amplifier import Amplifier
+from nodal.parts.amplifier import Amplifier, Root
 from nodal.parts.base import Part
 from nodal.parts.cable import Cable
 from nodal.parts.capacitor import Capacitor
@@ -160,7 +160,17 @@ def _couplings(draw: st.DrawFn, coils: Sequence[Inductor]) -> list[Part]:
     return parts
 
 
+_SHAPES: tuple[tuple[tuple[Root, ...], tuple[Root, ...]], ...] = (
+    ((), ()),
+    (((1e6, None),), ()),
+    (((1e6, None),), ((2e5, None),)),
+    (((1e5, None), (3e6, 0.8)), ((2e5, None),)),
+    (((3e6, 0.8),), ((1e6, 5.0),)),
+)
+
+
 def _amplifier(draw: st.DrawFn, name: str, positive: int, negative: int, out: int) -> Amplifier:
+    poles, zeros = draw(st.sampled_from(_SHAPES))
     return Amplifier(
         name,
         positive,
@@ -168,8 +178,8 @@ def _amplifier(draw: st.DrawFn, name: str, positive: int, negative: int, out: in
         out,
         0,
         gain=draw(values(1.0, 4.0)),
-        poles=draw(st.sampled_from([(), ((1e6, None),), ((1e5, None), (3e6, 0.8))])),
-        zeros=draw(st.sampled_from([(), ((2e5, None),)])),
+        poles=poles,
+        zeros=zeros,
         delay=draw(st.sampled_from([0.0, 1e-7])),
     )
 

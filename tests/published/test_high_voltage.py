@@ -51,7 +51,7 @@ def test_resistor_with_uniform_earth_capacitance() -> None:
 def first_moment(body: str) -> float:
     """-H′(0)/H(0), the area under 1 - g(t): the response time. Taken at a frequency whose square no longer
     shows."""
-    value, slope = load(body).network().response.derivative([1e-6], "out")
+    value, slope = load(body).network().response.derivative([1e-4], "out")
     return float((-slope.values[0] / value.values[0]).real)
 
 
