@@ -66,6 +66,8 @@ def limit_of(evaluate: Evaluate) -> tuple[Floats, Floats]:
             for k, correction in enumerate(corrections):
                 if abs(correction) <= _AGREEMENT * abs(values[point][k]):
                     continue
+                if values[point][k] == 0:
+                    continue  # only the correction is rounding
                 if before is not None and abs(values[point][k]) < 1e-100 * abs(before[point][k]):
                     values[point][k] = arithmetic.number(0)  # shrinks with the digits: rounding around zero
                 else:

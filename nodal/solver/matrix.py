@@ -48,6 +48,22 @@ class Function(Protocol):
     def evaluate(self, s: Any, arithmetic: Arithmetic) -> Sequence[Any]: ...
 
 
+class Delayed(Function, Protocol):
+    """A Function with a pure delay in it: outputs = still + front * exp(-s delay), neither with a delay left in it.
+
+    Both parts stay bounded for Re s > 0 where the outputs do, so that edges can be followed front by front.
+    """
+
+    @property
+    def delay(self) -> float:
+        """Seconds; 0 where there is no delay to take out, `split` is then not asked for."""
+        ...
+
+    def split(self, s: Any, arithmetic: Arithmetic) -> tuple[Sequence[Any], Sequence[Any]]:
+        """(still, front), as many numbers as `evaluate` gives."""
+        ...
+
+
 @dataclass(frozen=True, slots=True)
 class Term:
     """One summand of A(s): outer(rows, cols) * (g + s c + F_f(s)). Indices are of equations and unknowns."""

@@ -123,8 +123,15 @@ class Pattern:
     def exact_entries(self, coefficients: Sequence[Any], arithmetic: MpArithmetic) -> list[Any]:
         """Matrix entries, in the order of `rows` and `cols`, from `exact_coefficients`."""
         result = [arithmetic.number(0)] * len(self.rows)
-        for entry, term, weight in self.shares:
-            result[entry] = result[entry] + coefficients[term] * weight
+        products = (
+            (row_weight, col_weight)
+            for rows, cols in zip(self.term_rows, self.term_cols, strict=True)
+            for _, row_weight in rows
+            for _, col_weight in cols
+        )
+        # One weight at a time: the product in `shares` is rounded.
+        for (entry, term, _), (row_weight, col_weight) in zip(self.shares, products, strict=True):
+            result[entry] = result[entry] + coefficients[term] * row_weight * col_weight
         return result
 
 

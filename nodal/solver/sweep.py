@@ -208,7 +208,7 @@ def _rounded(values: list[Any], errors: list[float], before: Complexes) -> tuple
     """Doubles; an output that shrank with the digits it is computed with is rounding around an exact zero."""
     result = [complex(v) for v in values]
     for k, error in enumerate(errors):
-        if error > TOLERANCE and 0 < abs(result[k]) < 1e-20 * abs(before[k]):
+        if error > TOLERANCE and (values[k] == 0 or abs(result[k]) < 1e-20 * abs(before[k])):
             result[k], errors[k] = 0j, 0.0
     return result, errors
 

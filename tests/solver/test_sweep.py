@@ -7,7 +7,7 @@ import math
 import mpmath
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import Phase, given, settings
 from hypothesis import strategies as st
 from support.systems import Sketch, reference, worst_error
 
@@ -41,9 +41,9 @@ def networks(draw):
     return net, ({0: 1.0} if drive is None else {drive: 1.0}), outputs
 
 
-def sensitivity(system, s, source, output, digits=60):
+def sensitivity(system, s, source, output):
     """Σ|∂ ln H/∂ ln p| over the terms by differences with many digits."""
-    base = reference(system, s, source, [output], digits)[0]
+    base = reference(system, s, source, [output])[0]
     if base == 0:
         return math.inf
     total = mpmath.mpf(0)
@@ -51,10 +51,11 @@ def sensitivity(system, s, source, output, digits=60):
     for k, term in enumerate(system.terms):
         moved = Term(term.rows, term.cols, term.g * step, term.c * step, term.f)
         other = System(system.size, (*system.terms[:k], moved, *system.terms[k + 1:]), system.functions)
-        total += abs(reference(other, s, source, [output], digits)[0] / base - 1) * 2**40
+        total += abs(reference(other, s, source, [output])[0] / base - 1) * 2**40
     return float(total)
 
 
+@settings(phases=[Phase.explicit, Phase.generate])  # shrinking takes minutes at these digits
 @given(networks(), st.lists(st.floats(-6, 15), min_size=1, max_size=3))
 def test_random_networks(example, exponents):
     """The accuracy of the design, section 4, or flagged."""
@@ -65,12 +66,17 @@ def test_random_networks(example, exponents):
     for k, point in enumerate(s):
         expected = reference(system, complex(point), source, outputs)
         for at, output in enumerate(outputs):
+            if expected[at] == 0:
+                floor = max(abs(complex(v)) for v in reference(system, complex(point), source, [{j: 1.0} for j in output]))
+                assert abs(solution.values[0, at, k]) <= 1000 * EPSILON * floor
+                continue
             error = worst_error(solution.values[0, at:at + 1, k], expected[at:at + 1])
             if error > 1e-10 and solution.error[0, at, k] <= 1e-10:
                 bound = 1000 * EPSILON * sensitivity(system, complex(point), source, output)
                 assert error <= bound, (exponents[k], output)
 
 
+@settings(phases=[Phase.explicit, Phase.generate])  # shrinking takes minutes at these digits
 @given(networks())
 def test_random_limits(example):
     """The value at a frequency far below every corner tends to the limit, in its order."""
