@@ -31,8 +31,16 @@ class Delay:
     seconds: float
     count: int = 1
 
+    @property
+    def delay(self) -> float:
+        return self.seconds
+
     def evaluate(self, s: Any, arithmetic: Arithmetic) -> Sequence[Any]:
         return (-arithmetic.exp(-s * self.seconds),)
+
+    def split(self, s: Any, arithmetic: Arithmetic) -> tuple[Sequence[Any], Sequence[Any]]:
+        """See `nodal.solver.matrix.Delayed`."""
+        return (0 * s,), (0 * s - 1,)
 
 
 @dataclass(frozen=True, slots=True)

@@ -81,6 +81,30 @@ class Line:
         return (s * (self.shield_inductance - self.mutual_inductance) + self.shield_resistance) * self.length
 
     @property
+    def delay(self) -> float:
+        """Of the very first of a wave, s: from what inductance and capacitance are for s → ∞."""
+        stretch = Dielectric(self.loss).scale if self.loss else 1.0
+        return self.length * math.sqrt(self.inductance * self.capacitance * stretch)
+
+    def wake(self, s: Any, arithmetic: Arithmetic) -> Any:
+        """sT - 2u, T the `delay`, from what losses add to (sT)²: no difference of large numbers."""
+        external = s * self.inductance * self.length
+        shunt = self.conductance * self.length + 0 * s
+        if self.loss:
+            dielectric = Dielectric(self.loss)
+            charging = s * (self.capacitance * dielectric.scale * self.length)
+            shunt = shunt + charging * dielectric.excess(s, arithmetic)
+        resistance = (self.resistance + self.shield_resistance) * self.length + 0 * s
+        if self.skin is not None:
+            at, frequency = self.skin
+            slope = 2 * at**2 / (2 * math.pi * frequency)
+            core = arithmetic.sqrt(s * slope + self.resistance**2)
+            resistance = (core + self.shield_resistance) * self.length
+        admittance = self.shunt(s, arithmetic)
+        added = external * shunt + resistance * admittance
+        return -added / (arithmetic.sqrt(self.series(s, arithmetic) * admittance) + s * self.delay)
+
+    @property
     def has_series(self) -> bool:
         return bool(self.resistance or self.inductance or self.skin or self.shield_resistance)
 
@@ -110,6 +134,24 @@ class Waves:
 
     line: Line
     count: int = OUTPUTS
+
+    @property
+    def delay(self) -> float:
+        return self.line.delay
+
+    def split(self, s: Any, arithmetic: Arithmetic) -> tuple[Sequence[Any], Sequence[Any]]:
+        """The travelling waves, with the delay taken out of E; see `nodal.solver.matrix.Delayed`."""
+        line = self.line
+        zl = line.series(s, arithmetic)
+        impedance = arithmetic.sqrt(zl / line.shunt(s, arithmetic))
+        decay = arithmetic.exp(line.wake(s, arithmetic))
+        drag = impedance * line.transfer(s) / zl
+        zero = 0 * s
+        unused = (zero,) * ONE
+        return (
+            (*unused, zero + 1, zero, -impedance, zero, drag, -zl),
+            (*unused, zero, -decay, zero, -decay * impedance, -decay * drag, zero),
+        )
 
     def evaluate(self, s: Any, arithmetic: Arithmetic) -> Sequence[Any]:
         line = self.line

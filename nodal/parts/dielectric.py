@@ -15,6 +15,9 @@ MIDDLE = 2 * math.pi * 1e6
 HIGH = 2 * math.pi * 1e15
 """rad/s: the ends of the flat range, and where the capacitance is what was written."""
 
+_BINOMIAL = 14
+"""Terms of (1 + x)^n for x below 1/20: the next is below 1e-18."""
+
 
 @dataclass(frozen=True, slots=True)
 class Dielectric:
@@ -39,6 +42,15 @@ class Dielectric:
     def relative(self, s: Any, arithmetic: Arithmetic) -> Any:
         """C(s)/C."""
         return self.scale * arithmetic.power((s + HIGH) / (s + LOW), self.exponent)
+
+    def excess(self, s: Any, arithmetic: Arithmetic) -> Any:
+        """C(s)/C(∞) - 1, small for large s and right in its own digits there."""
+        x = (HIGH - LOW) / (s + LOW)
+        series: Any = 0.0
+        for k in range(_BINOMIAL, 0, -1):
+            series = (series + 1) * x * ((self.exponent - (k - 1)) / k)
+        far = arithmetic.real(s) + abs(arithmetic.real(1j * s)) > 20 * HIGH
+        return arithmetic.select(far, series, arithmetic.expm1(self.exponent * arithmetic.log(1 + x)))
 
 
 @dataclass(frozen=True, slots=True)

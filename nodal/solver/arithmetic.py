@@ -22,6 +22,9 @@ class NumpyArithmetic:
     def expm1(self, x: Any) -> Any:
         return np.expm1(x)
 
+    def log(self, x: Any) -> Any:
+        return np.log(x)
+
     def power(self, x: Any, exponent: float) -> Any:
         return np.power(x, exponent)
 
@@ -63,6 +66,9 @@ class MpArithmetic:
 
     def expm1(self, x: Any) -> Any:
         return self.context.expm1(x)
+
+    def log(self, x: Any) -> Any:
+        return self.context.log(x)
 
     def power(self, x: Any, exponent: float) -> Any:
         return self.context.power(x, self.context.mpf(exponent))
@@ -140,6 +146,11 @@ class JetArithmetic:
         if not isinstance(x, Jet):
             return self.base.expm1(x)
         return Jet(self.base.expm1(x.value), self.base.exp(x.value) * x.slope)
+
+    def log(self, x: Any) -> Any:
+        if not isinstance(x, Jet):
+            return self.base.log(x)
+        return Jet(self.base.log(x.value), x.slope / x.value)
 
     def power(self, x: Any, exponent: float) -> Any:
         if not isinstance(x, Jet):

@@ -24,6 +24,10 @@ class Arithmetic(Protocol):
 
     def expm1(self, x: Any) -> Any: ...
 
+    def log(self, x: Any) -> Any:
+        """Principal branch."""
+        ...
+
     def power(self, x: Any, exponent: float) -> Any:
         """Principal branch of x ** exponent, exponent real."""
         ...
