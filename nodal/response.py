@@ -305,7 +305,7 @@ class Response:
             values, error = np.empty(flat.shape, dtype=np.complex128), np.empty(flat.shape)
             for mask, piece in pieces:
                 values[mask], error[mask] = piece[k].values, piece[k].error
-            self.quality.worst_estimated_error = max(self.quality.worst_estimated_error, *error, 0.0)
+            self.quality.worst_estimated_error = max(self.quality.worst_estimated_error, float(error.max(initial=0.0)))
             curves.append(Curve(values.reshape(f.shape), error.reshape(f.shape)))
         return curves
 
@@ -369,8 +369,8 @@ class Response:
         undisturbed = {c.name: next(curves) for c in before}
         impedance = {c.name: next(curves) for c in closed}
         at_contacts = {
-            name: ContactCurves(impedance.get(name) or _infinite(f), loaded[name], undisturbed.get(name), reason)
-            for name, reason in missing.items()
+            c: ContactCurves(impedance.get(c) or _infinite(f), loaded[c], undisturbed.get(c), reason)
+            for c, reason in missing.items()
         }
         return SweepResult(f, self._drive(drive).name, by_reading, by_node, at_contacts, self.quality)
 

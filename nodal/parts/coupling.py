@@ -61,7 +61,8 @@ class Group:
     def squares(self) -> Iterator[tuple[tuple[tuple[str, float], ...], float]]:
         """(weights, factor): flux = sum of factor * outer(weights, weights) times the currents."""
         roots = np.sqrt(self.inductances)
-        outside = np.abs(self.coefficients).sum(axis=1) - 1
+        # Summed without the 1 of the diagonal, which would round off what is left beside a tight coupling.
+        outside = np.abs(self.coefficients - np.eye(len(self.names))).sum(axis=1)
         if (outside <= 1).all():
             yield from self._pairwise(roots, outside)
         else:
