@@ -7,7 +7,9 @@ from support.texts import codes, read_all, value
 
 from nodal.language import syntax as s
 from nodal.language.diagnostics import Collector
-from nodal.language.parse import MAX_BYTES, parse
+from nodal.language.parse import parse
+
+TWO_MEBIBYTES = 2_097_152
 
 
 @pytest.mark.parametrize("operator", ["+", "-", "*", "/", "∥", "--"])
@@ -45,9 +47,9 @@ def test_many_mistakes() -> None:
 
 
 def test_two_mebibytes_and_no_more() -> None:
-    fill = "nodal 1\n#" + "µ" * ((MAX_BYTES - 9) // 2)
-    fill += "x" * (MAX_BYTES - len(fill.encode()))
-    assert len(fill.encode()) == MAX_BYTES
+    fill = "nodal 1\n#" + "µ" * ((TWO_MEBIBYTES - 9) // 2)
+    fill += "x" * (TWO_MEBIBYTES - len(fill.encode()))
+    assert len(fill.encode()) == TWO_MEBIBYTES
     assert codes(fill) == []
     assert codes(fill + "x") == ["too-long"]
 

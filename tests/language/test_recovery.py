@@ -140,6 +140,23 @@ def test_an_unclosed_brace_is_told_at_its_place_and_the_rest_read(opening: str) 
     assert [type(statement) for statement in file.statements[2:]] == [s.Reading, s.Case, s.Sweep]
 
 
+@pytest.mark.parametrize(
+    ("opening", "inside"),
+    [
+        ("under test {", ["source s: a to b = 1 V", "stock q { loss 0 }", "assembly m(a) { }", "let x = 1"]),
+        ("assembly m(a to b) {", ["branch c: a to b = 1 Ω", "place p: m(a)", "let x = 1"]),
+        ("case k {", ["reading r: a to b", "under test { let y = 1 }", "let x = 1", "require r: f(x) <= 1"]),
+    ],
+)
+def test_what_can_stand_inside_an_unclosed_brace_stays_there(opening: str, inside: list[str]) -> None:
+    file, found = read_all("\n".join(["nodal 1", opening, *inside, 'title "x"', ""]))
+    assert [d.code for d in found] == ["unclosed"]
+    _, block, title = file.statements
+    assert isinstance(block, s.UnderTest | s.Assembly | s.Case)
+    assert len(block.body) == len(inside)
+    assert isinstance(title, s.Title)
+
+
 def test_an_unclosed_case_ends_before_the_next() -> None:
     file, found = read_all("nodal 1\ncase k {\n let x = 1\ncase l { let x = 2 }\n")
     assert [d.code for d in found] == ["unclosed"]
