@@ -225,7 +225,9 @@ def figures(options: Options, file: str, low: str | None, high: str | None) -> N
     models = _models(design, options, default_all=True)
     responses = {case: model.response for case, model in models.items()}
     drives = {case: _drive(response.network, options.drive) for case, response in responses.items()}
-    span = _span(next(iter(responses.values())).network, low, high) if low or high else None
+    lacking = next((r.network for r in responses.values() if r.network.grid is None), None)
+    first = next(iter(responses.values())).network
+    span = _span(lacking or first, low, high) if low or high or lacking else None
     answer = answers.figures(responses, options.drive, span)
     if options.form == "json":
         cases = {case: data.figures_case(results) for case, results in answer.cases.items()}

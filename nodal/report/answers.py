@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from nodal.figure_names import BY_NAME, ratio_unit
 from nodal.figures import Result, evaluate, extreme
-from nodal.figures.search import Span, crossings, grid, maximum, minimum
+from nodal.figures.search import Span, crossings, default_span, grid, maximum, minimum
 from nodal.network import FigureCall, Network, Requirement
 from nodal.report.numbers import frequency as hertz
 from nodal.response import Curve, Quality, Response, Unavailable
@@ -190,12 +190,12 @@ def figures(responses: Mapping[str, Response], drive: str | None, span: Span | N
     about.
 
     `span` (Hz) stands in for the sweep of the files. Frequencies follow the first case, so that rows
-    compare alike. Rows that no case can fill are left out, unless required.
+    compare alike. Rows that no case can fill are left out, unless required. Raises `Unavailable` where a
+    file has no sweep and the call no span.
     """
     spans: dict[str, Span] = {}
     for name, response in responses.items():
-        own = response.network.grid
-        spans[name] = span or ((own.low, own.high) if own else (10.0, 1e9))
+        spans[name] = span or default_span(response.network)
     rows = list(dict.fromkeys(_rows(responses, drive, spans, explicit=span)))
     cases = {
         name: {row.label: row.evaluate(response, drive) for row in rows}

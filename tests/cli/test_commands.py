@@ -233,6 +233,7 @@ def test_other_wrong_calls():
     fails("sweep", PROBE + "x", code="no-file")
     no_sweep = TWO_SOURCES.replace("sweep 1 Hz to 1 MHz, 10 per decade\n", "drive d: high by 1\n")
     fails("sweep", "-", code="no-sweep", input=no_sweep)
+    fails("figures", "-", code="no-sweep", input=no_sweep)
 
 
 def test_mistakes_in_a_file_end_with_status_2():

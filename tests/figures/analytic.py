@@ -8,6 +8,7 @@ from collections.abc import Callable
 from typing import Any
 
 import numpy as np
+import pytest
 
 from nodal.network import Contact, Drive, FigureCall, Network, Reading, SweepGrid
 from nodal.response import Curve, Response
@@ -73,8 +74,13 @@ class Analytic(Response):
 def _curve(function: Transfer, frequencies: Any) -> Curve:
     s = 2j * np.pi * np.asarray(frequencies, dtype=float)
     with np.errstate(divide="ignore", invalid="ignore"):
-        values = np.asarray(function(s) + 0.0 * s, dtype=complex)
+        values = np.broadcast_to(np.asarray(function(s), dtype=complex), s.shape).copy()
     return Curve(values, np.zeros(values.shape))
+
+
+def close(expected: Any, rel: float = 1e-12) -> Any:
+    """Equal to a relative tolerance alone: pytest's own absolute one would wave farads and volts through."""
+    return pytest.approx(expected, rel=rel, abs=0.0)
 
 
 def call(name: str, *arguments: str | float) -> FigureCall:
