@@ -1,7 +1,7 @@
 """The tree of a file, as written: frozen dataclasses whose span takes no part in equality. No meaning yet.
 
-Chains of one operator are flat (`Sum`, `Product`, `Parallel`, `Series` hold all their members), so that a long line
-needs no deep recursion; only parentheses nest, to the limit of 100 levels.
+Chains of one operator are flat (`Sum`, `Product`, `Parallel`, `Series` hold all their members), so that a
+long line needs no deep recursion; only parentheses nest, to the limit of 100 levels.
 """
 
 from __future__ import annotations
@@ -202,8 +202,9 @@ class Coupling(Node):
 class Field(Node):
     """One field of a `stock` or `amplifier`: its word(s) and what follows.
 
-    `values` hold the expressions in the order written. Stock: `skin 1.1 Ω/m at 100 MHz` is two values. Amplifier:
-    `poles 120 MHz, 300 MHz q 0.8` is ((120 MHz,), (300 MHz, 0.8)), every other field one tuple of its values.
+    `values` hold the expressions in the order written. Stock: `skin 1.1 Ω/m at 100 MHz` is two values.
+    Amplifier: `poles 120 MHz, 300 MHz q 0.8` is ((120 MHz,), (300 MHz, 0.8)), every other field one tuple of
+    its values.
     """
 
     name: Word
@@ -396,5 +397,5 @@ class File(Node):
     text: str = field(compare=False, repr=False)
     statements: tuple[Statement, ...] = ()
     lost: frozenset[str] = field(default=frozenset(), compare=False)
-    """Every word of the statements that could not be read: names that may be declared there. Nothing should be
-    said against an unknown name among them."""
+    """Every word of the statements that could not be read: names that may be declared there. Nothing should
+    be said against an unknown name among them."""
