@@ -162,9 +162,13 @@ def side_parts(network: Network, side: str) -> list[Part]:
     """The parts of one side of the split; couplings where both inductors are on it."""
     inside = {part.name for part in network.parts if part.side == side}
     return [
-        part for part in network.parts
-        if (part.first in inside and part.second in inside if isinstance(part, Coupling) else part.side ==
-        side)
+        part
+        for part in network.parts
+        if (
+            part.first in inside and part.second in inside
+            if isinstance(part, Coupling)
+            else part.side == side
+        )
     ]
 
 
@@ -172,7 +176,8 @@ def cross_couplings(network: Network) -> list[Coupling]:
     """Couplings between an inductor under test and one of the chain."""
     sides = {part.name: part.side for part in network.parts if isinstance(part, Inductor)}
     return [
-        part for part in network.parts
+        part
+        for part in network.parts
         if isinstance(part, Coupling) and sides.get(part.first, "") != sides.get(part.second, "")
     ]
 

@@ -150,8 +150,9 @@ class _Moving:
     def solve(
         self, assembly: Assembly, sources: Sequence[Source], outputs: Sequence[Functional]
     ) -> list[list[Estimated]]:
-        if not outputs or not sources:
-            return [[] for _ in sources]
+        if not outputs or not assembly.system.size:
+            nothing = Estimated(np.zeros(len(self.s), dtype=np.complex128), np.zeros(len(self.s)))
+            return [[nothing] * len(outputs) for _ in sources]
         numbers = [{k: _value(v) for k, v in source.items()} for source in sources]
         try:
             plan = self.response._plan(assembly.system, self.s)
@@ -179,8 +180,9 @@ class _Resting:
     def solve(
         self, assembly: Assembly, sources: Sequence[Source], outputs: Sequence[Functional]
     ) -> list[list[Estimated]]:
-        if not outputs or not sources:
-            return [[] for _ in sources]
+        if not outputs or not assembly.system.size:
+            nothing = self.arithmetic.number(0)
+            return [[Estimated(nothing, nothing)] * len(outputs) for _ in sources]
         exact = self._solved.get(id(assembly))
         if exact is None:
             try:
@@ -305,7 +307,8 @@ class Response:
             values, error = np.empty(flat.shape, dtype=np.complex128), np.empty(flat.shape)
             for mask, piece in pieces:
                 values[mask], error[mask] = piece[k].values, piece[k].error
-            self.quality.worst_estimated_error = max(self.quality.worst_estimated_error, float(error.max(initial=0.0)))
+            worst = float(error.max(initial=0.0))
+            self.quality.worst_estimated_error = max(self.quality.worst_estimated_error, worst)
             curves.append(Curve(values.reshape(f.shape), error.reshape(f.shape)))
         return curves
 
@@ -340,8 +343,13 @@ class Response:
     # Curves.
 
     def sweep(
-        self, frequencies: ArrayLike, *, drive: str | None = None, readings: Sequence[str] | None = None,
-        nodes: Sequence[str] = (), contacts: Sequence[str] | None = None,
+        self,
+        frequencies: ArrayLike,
+        *,
+        drive: str | None = None,
+        readings: Sequence[str] | None = None,
+        nodes: Sequence[str] = (),
+        contacts: Sequence[str] | None = None,
     ) -> SweepResult:
         """All of the curves below from one pass: what `nodal sweep` prints. None means all there are."""
         network = self.network

@@ -29,6 +29,7 @@ from nodal.parts import (
 )
 from nodal.parts.coupling import groups
 from nodal.place import Place
+from nodal.solver.matrix import System
 from nodal.solver.plan import Singular, make_plan
 
 Severity = Literal["error", "warning", "note"]
@@ -96,7 +97,9 @@ def floating_nodes(network: Network) -> Iterator[Finding]:
         if not _entering(network, island):
             verb = "has" if len(island) == 1 else "have"
             arguments = {
-                "nodes": _quoted(network, island), "verb": verb, "example": network.nodes[island[0]],
+                "nodes": _quoted(network, island),
+                "verb": verb,
+                "example": network.nodes[island[0]],
             }
             names = _names(network, island)
             yield Finding("floating-nodes", "error", names, arguments, _where(network, island))
@@ -201,13 +204,23 @@ def amplifier_loops(network: Network) -> Iterator[Finding]:
     if not amplifiers:
         return
     assembly = assemble(network)
-    try:
-        make_plan(assembly.system, list(SAMPLES))
-    except Singular as error:
-        moving = {assembly.names[k].partition(" of ")[2] for k in error.unknowns}
-        involved = [name for name in amplifiers if name in moving] or list(amplifiers)
+    moving = _free(assembly.system)
+    if moving:
+        # What the loop drives moves with it, what feeds the loop contradicts it: the loop itself does both.
+        loop = moving & _free(assembly.system.transposed())
+        inputs = {name: assembly.find_extra(name, "input") for name in amplifiers}
+        involved = [name for name, unknown in inputs.items() if unknown in loop] or list(amplifiers)
         arguments = {"parts": _listed(involved), "does": "is" if len(involved) == 1 else "are"}
         yield Finding("amplifier-loop", "error", tuple(involved), arguments, amplifiers[involved[0]].place)
+
+
+def _free(system: System) -> set[int]:
+    """Unknowns that no equation settles, at any frequency."""
+    try:
+        make_plan(system, list(SAMPLES))
+    except Singular as error:
+        return set(error.unknowns)
+    return set()
 
 
 def dangling_nodes(network: Network) -> Iterator[Finding]:

@@ -12,10 +12,25 @@ from nodal.parts.resistor import Resistor
 from nodal.parts.source import CurrentSource, VoltageSource
 
 KINDS: tuple[type[Part], ...] = (
-    Resistor, Capacitor, Inductor, Coupling, VoltageSource, CurrentSource, Cable, Amplifier,
+    Resistor,
+    Capacitor,
+    Inductor,
+    Coupling,
+    VoltageSource,
+    CurrentSource,
+    Cable,
+    Amplifier,
 )
 
 __all__ = [
-    "KINDS", "Amplifier", "Cable", "Capacitor", "Coupling", "CurrentSource", "Inductor", "Part", "Resistor",
+    "KINDS",
+    "Amplifier",
+    "Cable",
+    "Capacitor",
+    "Coupling",
+    "CurrentSource",
+    "Inductor",
+    "Part",
+    "Resistor",
     "VoltageSource",
 ]

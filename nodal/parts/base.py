@@ -94,7 +94,7 @@ class Part(Protocol):
 
     @property
     def side(self) -> str:
-        """"test" or "chain"."""
+        """ "test" or "chain"."""
         ...
 
     @property

@@ -226,9 +226,15 @@ class Cable(Element):
         shield = self.shield_inductance.nominal if self.shield_inductance else 0.0
         coupling = self.shield_coupling.nominal if self.shield_coupling else 1.0
         return Line(
-            self.resistance.nominal, self.inductance.nominal, self.conductance.nominal,
-            self.capacitance.nominal, self.loss, self.skin if self.skin and self.skin[0] else None,
-            self.shield_resistance.nominal if self.shield_resistance else 0.0, shield, coupling * shield,
+            self.resistance.nominal,
+            self.inductance.nominal,
+            self.conductance.nominal,
+            self.capacitance.nominal,
+            self.loss,
+            self.skin if self.skin and self.skin[0] else None,
+            self.shield_resistance.nominal if self.shield_resistance else 0.0,
+            shield,
+            coupling * shield,
             self.length.nominal,
         )
 
@@ -366,8 +372,10 @@ class Cable(Element):
             (shunt,) = Shunt(line).evaluate(s, NumpyArithmetic())
             rows = ((build.node(self.core1), 1.0), (build.node(self.shield1), -1.0))
             return (thermal(rows, np.real(shunt), temperature, len(s)),)
-        out = [np.broadcast_to(np.asarray(x, np.complex128), s.shape)
-               for x in Waves(line).evaluate(s, NumpyArithmetic())]
+        out = [
+            np.broadcast_to(np.asarray(x, np.complex128), s.shape)
+            for x in Waves(line).evaluate(s, NumpyArithmetic())
+        ]
         size = 3 if self.separate_shields else 2
         p = np.zeros((size, size, *s.shape), np.complex128)
         q = np.zeros_like(p)
@@ -401,17 +409,18 @@ class Cable(Element):
 
     def describe(self) -> Any:
         entries = (
-            ("length", self.length, "m"), ("resistance", self.resistance, "Ω/m"),
-            ("inductance", self.inductance, "H/m"), ("conductance", self.conductance, "S/m"),
-            ("capacitance", self.capacitance, "F/m"), ("shield resistance", self.shield_resistance, "Ω/m"),
+            ("length", self.length, "m"),
+            ("resistance", self.resistance, "Ω/m"),
+            ("inductance", self.inductance, "H/m"),
+            ("conductance", self.conductance, "S/m"),
+            ("capacitance", self.capacitance, "F/m"),
+            ("shield resistance", self.shield_resistance, "Ω/m"),
             ("shield inductance", self.shield_inductance, "H/m"),
         )
         return tuple(entry for entry in entries if entry[1] is not None and entry[1].nominal)
 
 
-def _travelling(
-    build: Build, f: int, near: tuple[int, Weights, int], far: tuple[int, Weights, int]
-) -> None:
+def _travelling(build: Build, f: int, near: tuple[int, Weights, int], far: tuple[int, Weights, int]) -> None:
     """V1 - Zc I1 = E (V2 + Zc I2) and its mirror; each end is (equation, voltage, current)."""
     for (equation, voltage, current), (_, opposite, returning) in ((near, far), (far, near)):
         row = ((equation, 1.0),)

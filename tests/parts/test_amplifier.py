@@ -26,14 +26,22 @@ def driven(amplifier: Amplifier) -> Network:
         ),
         readings=(Reading("out", 3, 0),),
         drives=(
-            Drive("difference", (("high", 0.5), ("low", -0.5))), Drive("common", (("high", 1.0), ("low", 1.0))),
+            Drive("difference", (("high", 0.5), ("low", -0.5))),
+            Drive("common", (("high", 1.0), ("low", 1.0))),
         ),
-    )  # fmt: skip
+    )
 
 
 def test_poles_zeros_and_delay() -> None:
     amplifier = Amplifier(
-        "m", 1, 2, 3, 0, gain=Value(-7.0), poles=((1e6, None), (3e7, 0.8)), zeros=((5e5, None), (2e8, 2.0)),
+        "m",
+        1,
+        2,
+        3,
+        0,
+        gain=Value(-7.0),
+        poles=((1e6, None), (3e7, 0.8)),
+        zeros=((5e5, None), (2e8, 2.0)),
         delay=3e-9,
     )
     w = 2 * np.pi * np.array([1e6, 3e7, 5e5, 2e8])
@@ -41,7 +49,9 @@ def test_poles_zeros_and_delay() -> None:
     numerator = -7.0 * np.polymul([1 / w[2], 1], [1 / w[3] ** 2, 1 / (2.0 * w[3]), 1])
     _, expected = signal.freqs(numerator, denominator, 2 * np.pi * F)
     expected = expected * np.exp(-2j * np.pi * F * 3e-9)
-    assert np.allclose(Response(driven(amplifier)).reading(F, "out", "difference").values, expected, rtol=1e-11)
+    assert np.allclose(
+        Response(driven(amplifier)).reading(F, "out", "difference").values, expected, rtol=1e-11
+    )
 
 
 def test_transconductance_drives_a_current_out_of_its_first_output() -> None:
@@ -53,9 +63,7 @@ def test_transconductance_drives_a_current_out_of_its_first_output() -> None:
 def test_common_mode_rejection_falls_above_its_corner() -> None:
     amplifier = Amplifier("m", 1, 2, 3, 0, gain=Value(4.0), poles=((1e7, None),), common_mode=(1e4, 1e3))
     response = Response(driven(amplifier))
-    ratio = (
-        response.reading(F, "out", "difference").values / response.reading(F, "out", "common").values
-    )
+    ratio = response.reading(F, "out", "difference").values / response.reading(F, "out", "common").values
     assert np.allclose(ratio, 1e4 / (1 + 1j * F / 1e3), rtol=1e-10)
 
 

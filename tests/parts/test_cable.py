@@ -1,5 +1,5 @@
-"""Cables against independent formulas: the chain matrix with cosh and sinh, and the exponential of the telegraph
-equations of core and shield, both with 60 digits (mpmath).
+"""Cables against independent formulas, with 60 digits (mpmath): the chain matrix with cosh and sinh, and the
+exponential of the telegraph equations of core and shield.
 """
 
 from __future__ import annotations
@@ -127,22 +127,40 @@ def test_no_length_is_a_short() -> None:
 
 
 SHIELDED = {
-    "cored": {"resistance": 0.09, "inductance": 253e-9, "capacitance": 101e-12, "shield_resistance": 0.015,
-              "shield_inductance": 6e-6, "shield_coupling": 0.9995},
-    "leaky coupling": {"inductance": 400e-9, "capacitance": 80e-12, "conductance": 1e-7,
-                       "shield_resistance": 0.05, "shield_inductance": 1e-6, "shield_coupling": 0.5},
+    "cored": {
+        "resistance": 0.09,
+        "inductance": 253e-9,
+        "capacitance": 101e-12,
+        "shield_resistance": 0.015,
+        "shield_inductance": 6e-6,
+        "shield_coupling": 0.9995,
+    },
+    "leaky coupling": {
+        "inductance": 400e-9,
+        "capacitance": 80e-12,
+        "conductance": 1e-7,
+        "shield_resistance": 0.05,
+        "shield_inductance": 1e-6,
+        "shield_coupling": 0.5,
+    },
     "inductive": {"inductance": 250e-9, "capacitance": 100e-12, "shield_inductance": 1e-6},
     "resistive": {"inductance": 250e-9, "capacitance": 100e-12, "resistance": 3.0, "shield_resistance": 1.0},
     "no loop impedance": {"capacitance": 100e-12, "shield_inductance": 1e-6},
     "no dielectric": {"inductance": 250e-9, "resistance": 3.0, "shield_resistance": 1.0},
-    "skin and loss": {"inductance": 250e-9, "capacitance": 100e-12, "skin": (1.2, 100e6), "loss": 1e-3,
-                      "shield_resistance": 0.02, "shield_inductance": 2e-6},
-}  # fmt: skip
+    "skin and loss": {
+        "inductance": 250e-9,
+        "capacitance": 100e-12,
+        "skin": (1.2, 100e6),
+        "loss": 1e-3,
+        "shield_resistance": 0.02,
+        "shield_inductance": 2e-6,
+    },
+}
 BOND = 1.5
 
 
 def shielded(length: float, fields: dict[str, Any]) -> Network:
-    """Driven between core and a near shield that stands on a second source; far shield bonded by BOND to ground."""
+    """Driven between core and near shield, which stands on a second source; the far shield is bonded."""
     values = {k: v if k in ("loss", "skin") else Value(v) for k, v in fields.items()}
     return Network(
         ("ground", "drive", "core", "plug", "sink", "panel", "earth"),
@@ -162,7 +180,7 @@ def shielded(length: float, fields: dict[str, Any]) -> Network:
 
 
 def shielded_exactly(s: Any, length: float, fields: dict[str, Any], drive: str) -> list[complex]:
-    """Two conductors over ground: d/dx (Vc, Vs, Ic, Is) = -M (Vc, Vs, Ic, Is), solved by the matrix exponential."""
+    """Two conductors over ground: d/dx (Vc, Vs, Ic, Is) = -M (Vc, Vs, Ic, Is), by the matrix exponential."""
     loop, y = line_constants(s, fields)
     own = mpf(fields.get("shield_resistance", 0)) + s * mpf(fields.get("shield_inductance", 0))
     k, ls = mpf(fields.get("shield_coupling", 1)), mpf(fields.get("shield_inductance", 0))
@@ -213,7 +231,14 @@ def test_a_shield_at_zero_frequency_is_its_resistance() -> None:
 
 def test_one_common_shield_node_sees_core_and_shield_resistance_in_series() -> None:
     part = Cable(
-        "line", 2, 0, 3, 0, Value(2.0), resistance=Value(3.0), shield_resistance=Value(1.0),
+        "line",
+        2,
+        0,
+        3,
+        0,
+        Value(2.0),
+        resistance=Value(3.0),
+        shield_resistance=Value(1.0),
         shield_inductance=Value(1e-6),
     )
     z = Response(between(part)).impedance([0.0, 1e3], "touch").values
@@ -232,12 +257,17 @@ def test_a_current_down_the_shield_alone_meets_its_own_impedance() -> None:
     values = {k: Value(v) for k, v in fields.items()}
     network = Network(
         ("ground", "near", "far"),
-        (CurrentSource("s", 1, 0, Value(1.0)), Cable("line", 2, 1, 2, 0, Value(3.0), **values),
-         Resistor("hold", 2, 0, Value(1e9))),
-        readings=(Reading("v", 1, 0),), drives=(Drive("s", (("s", 1.0),)),), default_drive="s",
-    )  # fmt: skip
+        (
+            CurrentSource("s", 1, 0, Value(1.0)),
+            Cable("line", 2, 1, 2, 0, Value(3.0), **values),
+            Resistor("hold", 2, 0, Value(1e9)),
+        ),
+        readings=(Reading("v", 1, 0),),
+        drives=(Drive("s", (("s", 1.0),)),),
+        default_drive="s",
+    )
     f = 1e4
-    # The core's two ends are one node: its loop shares the current in proportion to the impedances (hand calculation).
+    # The core's two ends are one node, so that its loop carries a current of its own (hand calculation).
     s = 2j * np.pi * f
     shield, mutual, core = (0.5 + s * 2e-6) * 3, s * 2e-6 * 3, s * (1e-7 + 2e-6) * 3
     assert Response(network).reading(f, "v").values == pytest.approx(shield - mutual**2 / core, rel=1e-9)

@@ -12,11 +12,15 @@ from nodal.response import Response
 from nodal.values import Value
 
 
-@pytest.mark.parametrize("k", [[0.5, 0.2, 0.2], [0.9, 0.8, 0.95], [1.0, 1.0, 1.0], [-1.0, 1.0, -1.0], [0.0, 0.3, 0.0]])
+@pytest.mark.parametrize(
+    "k", [[0.5, 0.2, 0.2], [0.9, 0.8, 0.95], [1.0, 1.0, 1.0], [-1.0, 1.0, -1.0], [0.0, 0.3, 0.0]]
+)
 def test_squares_add_up_to_the_inductance_matrix(k: list[float]) -> None:
     sizes = {"x": 1e-6, "y": 4e-6, "z": 9e-6}
     pairs = [("x", "y"), ("y", "z"), ("x", "z")]
-    couplings = [Coupling(a + b, a, b, Value(v), coefficient=True) for (a, b), v in zip(pairs, k, strict=True)]
+    couplings = [
+        Coupling(a + b, a, b, Value(v), coefficient=True) for (a, b), v in zip(pairs, k, strict=True)
+    ]
     total = dict.fromkeys(((a, b) for a in sizes for b in sizes), 0.0)
     covered = set()
     for group in groups(sizes, couplings):
@@ -45,8 +49,10 @@ def test_the_rounded_root_of_a_product_is_a_perfect_coupling() -> None:
 
 def test_couplings_that_yield_energy_are_told() -> None:
     sizes = dict.fromkeys("xyz", 1e-6)
-    couplings = [Coupling(a + b, a, b, Value(v), coefficient=True)
-                 for a, b, v in (("x", "y", 0.9), ("y", "z", 0.9), ("x", "z", -0.9))]  # fmt: skip
+    couplings = [
+        Coupling(a + b, a, b, Value(v), coefficient=True)
+        for a, b, v in (("x", "y", 0.9), ("y", "z", 0.9), ("x", "z", -0.9))
+    ]
     (group,) = groups(sizes, couplings)
     assert not group.passive()
 
@@ -62,8 +68,10 @@ def transformer(k: float, load: float) -> Network:
             Coupling("k", "x", "y", Value(k), coefficient=True),
             Resistor("load", 3, 0, Value(load)),
         ),
-        contacts=(Contact("touch", 2, 0),), readings=(Reading("out", 3, 0),),
-        drives=(Drive("s", (("s", 1.0),)),), default_drive="s",
+        contacts=(Contact("touch", 2, 0),),
+        readings=(Reading("out", 3, 0),),
+        drives=(Drive("s", (("s", 1.0),)),),
+        default_drive="s",
     )
 
 
@@ -76,7 +84,9 @@ def test_input_impedance_of_a_loaded_transformer(k: float, load: float) -> None:
     l1, l2 = 100e-6, 400e-6
     # (s L1 R + s² L1 L2 (1 - k²))/(s L2 + R), without cancellation.
     expected = (s * l1 * load + s**2 * l1 * l2 * (1 - k) * (1 + k)) / (s * l2 + load)
-    assert np.allclose(Response(transformer(k, load)).impedance(f, "touch").values, expected, rtol=1e-10, atol=0)
+    assert np.allclose(
+        Response(transformer(k, load)).impedance(f, "touch").values, expected, rtol=1e-10, atol=0
+    )
 
 
 def test_a_perfect_transformer_with_a_shorted_winding_is_a_short() -> None:

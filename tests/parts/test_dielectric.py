@@ -1,4 +1,4 @@
-"""Dielectric loss against its definition: loss angle and capacitance at 1 MHz, flatness, passivity, causality."""
+"""Dielectric loss: loss angle and capacitance at 1 MHz, flatness, passivity, causality."""
 
 from __future__ import annotations
 
@@ -46,7 +46,9 @@ def test_real_and_imaginary_part_are_a_causal_pair() -> None:
 
     def integrand(t: float) -> float:
         # x = w e^t and its mirror w e^-t: the pole at t = 0 cancels in the sum of the two.
-        return (imaginary(w * np.exp(t)) * np.exp(t) - imaginary(w * np.exp(-t)) * np.exp(-t)) / np.sinh(t) / 2
+        return (
+            (imaginary(w * np.exp(t)) * np.exp(t) - imaginary(w * np.exp(-t)) * np.exp(-t)) / np.sinh(t) / 2
+        )
 
     total, _ = quad(integrand, 1e-9, 60, limit=400, epsabs=1e-12)
     infinite = float(np.real(model.relative(1e30, NumpyArithmetic())))

@@ -1,7 +1,7 @@
 """Laws that hold for every kind of part, each kind in a small two-port of its own.
 
-Sources: reciprocity, passivity and Nyquist's theorem from any textbook on networks (e.g. Desoer and Kuh, "Basic
-Circuit Theory"); the scaling laws are dimensional analysis.
+Sources: reciprocity, passivity and Nyquist's theorem from any textbook on networks (e.g. Desoer and Kuh,
+"Basic Circuit Theory"); the scaling laws are dimensional analysis.
 """
 
 from __future__ import annotations
@@ -47,7 +47,10 @@ def capacitor(z: float, w: float) -> tuple[Part, ...]:
 
 
 def lossy_capacitor(z: float, w: float) -> tuple[Part, ...]:
-    return (Capacitor("c", 1, 2, Value(1e-9 / z), loss=0.02), Capacitor("d", 2, 0, Value(2e-12 / z), loss=1e-4))
+    return (
+        Capacitor("c", 1, 2, Value(1e-9 / z), loss=0.02),
+        Capacitor("d", 2, 0, Value(2e-12 / z), loss=1e-4),
+    )
 
 
 def inductor(z: float, w: float) -> tuple[Part, ...]:
@@ -58,9 +61,7 @@ def couplings(coefficients: tuple[float, ...], in_henries: bool = False) -> Make
     def make(z: float, w: float) -> tuple[Part, ...]:
         sizes = (1e-6, 4e-6, 9e-6)
         ends = ((1, 0), (0, 2), (3, 0))
-        coils = [
-            Inductor(n, *e, Value(size * z / w)) for n, e, size in zip("xyz", ends, sizes, strict=True)
-        ]
+        coils = [Inductor(n, *e, Value(size * z / w)) for n, e, size in zip("xyz", ends, sizes, strict=True)]
         pairs = (("x", "y", 0, 1), ("y", "z", 1, 2), ("z", "x", 2, 0))
         joined = []
         for (first, second, i, j), k in zip(pairs, coefficients, strict=False):
@@ -72,8 +73,15 @@ def couplings(coefficients: tuple[float, ...], in_henries: bool = False) -> Make
 
 
 def cable(**fields: float) -> Make:
-    powers = {"resistance": (1, 0), "inductance": (1, -1), "conductance": (-1, 0), "capacitance": (-1, -1),
-              "shield_resistance": (1, 0), "shield_inductance": (1, -1), "shield_coupling": (0, 0)}  # fmt: skip
+    powers = {
+        "resistance": (1, 0),
+        "inductance": (1, -1),
+        "conductance": (-1, 0),
+        "capacitance": (-1, -1),
+        "shield_resistance": (1, 0),
+        "shield_inductance": (1, -1),
+        "shield_coupling": (0, 0),
+    }
 
     def make(z: float, w: float) -> tuple[Part, ...]:
         values = {k: Value(v * z ** powers[k][0] * w ** powers[k][1]) for k, v in fields.items()}
@@ -86,8 +94,18 @@ def cable(**fields: float) -> Make:
 
 def lossy_cable(z: float, w: float) -> tuple[Part, ...]:
     line = Cable(
-        "line", 1, 0, 2, 3, Value(1.7), inductance=Value(250e-9 * z), capacitance=Value(100e-12 / z), loss=2e-3,
-        skin=(1.2 * z, 1e8), shield_resistance=Value(0.02 * z), shield_inductance=Value(1e-6 * z),
+        "line",
+        1,
+        0,
+        2,
+        3,
+        Value(1.7),
+        inductance=Value(250e-9 * z),
+        capacitance=Value(100e-12 / z),
+        loss=2e-3,
+        skin=(1.2 * z, 1e8),
+        shield_resistance=Value(0.02 * z),
+        shield_inductance=Value(1e-6 * z),
         shield_coupling=Value(0.9),
     )
     return (line, Resistor("bond", 3, 0, Value(0.7 * z)))
@@ -103,15 +121,33 @@ def current_source(z: float, w: float) -> tuple[Part, ...]:
 
 def amplifier(z: float, w: float) -> tuple[Part, ...]:
     buffer = Amplifier(
-        "m", 1, 0, 3, 0, gain=Value(3.0), poles=((1e6 * w, None), (3e7 * w, 0.7)), zeros=((5e6 * w, None),),
-        delay=1e-9 / w, common_mode=(1e4, 1e3 * w),
+        "m",
+        1,
+        0,
+        3,
+        0,
+        gain=Value(3.0),
+        poles=((1e6 * w, None), (3e7 * w, 0.7)),
+        zeros=((5e6 * w, None),),
+        delay=1e-9 / w,
+        common_mode=(1e4, 1e3 * w),
     )
     return (buffer, Resistor("out", 3, 2, Value(50.0 * z)))
 
 
 def transconductor(z: float, w: float) -> tuple[Part, ...]:
-    return (Amplifier("m", 1, 0, 2, 0, transconductance=Value(1e-2 / z), poles=((1e6 * w, None),),
-                      zeros=((2e7 * w, 1.5),)),)  # fmt: skip
+    return (
+        Amplifier(
+            "m",
+            1,
+            0,
+            2,
+            0,
+            transconductance=Value(1e-2 / z),
+            poles=((1e6 * w, None),),
+            zeros=((2e7 * w, 1.5),),
+        ),
+    )
 
 
 CASES: dict[str, tuple[type, Make]] = {
@@ -129,12 +165,21 @@ CASES: dict[str, tuple[type, Make]] = {
     "current source": (CurrentSource, current_source),
     "cable": (Cable, cable(inductance=250e-9, capacitance=100e-12, resistance=0.3, conductance=1e-7)),
     "lossless cable": (Cable, cable(inductance=250e-9, capacitance=100e-12)),
-    "shielded cable": (Cable, cable(inductance=400e-9, capacitance=80e-12, resistance=0.4, shield_resistance=0.1,
-                                    shield_inductance=1e-6, shield_coupling=0.7)),
+    "shielded cable": (
+        Cable,
+        cable(
+            inductance=400e-9,
+            capacitance=80e-12,
+            resistance=0.4,
+            shield_resistance=0.1,
+            shield_inductance=1e-6,
+            shield_coupling=0.7,
+        ),
+    ),
     "cable with skin and loss": (Cable, lossy_cable),
     "amplifier": (Amplifier, amplifier),
     "transconductor": (Amplifier, transconductor),
-}  # fmt: skip
+}
 RECIPROCAL = [name for name, (kind, _) in CASES.items() if kind is not Amplifier]
 FREE_OF_FIXED_FREQUENCIES = [name for name in CASES if not {"lossy", "loss"} & set(name.split())]
 
@@ -144,7 +189,9 @@ def two_port(name: str, z: float = 1.0, w: float = 1.0) -> Network:
     ends = (Resistor("one", 1, 0, Value(1e3 * z)), Resistor("two", 2, 0, Value(75.0 * z)))
     parts = (*CASES[name][1](z, w), *ends)
     return Network(
-        ("ground", "a", "b", "c", "d"), parts, readings=(Reading("a", 1, 0), Reading("b", 2, 0)),
+        ("ground", "a", "b", "c", "d"),
+        parts,
+        readings=(Reading("a", 1, 0), Reading("b", 2, 0)),
         temperature=TEMPERATURE,
     )
 
@@ -214,15 +261,17 @@ def test_slope_against_a_difference_quotient(name: str) -> None:
     """dH/ds by central differences (an error of the order of the step squared)."""
     network = two_port(name)
     driven = replace(
-        network, parts=(*network.parts, CurrentSource("i", 1, 0, Value(1.0))),
-        drives=(Drive("i", (("i", 1.0),)),), default_drive="i",
+        network,
+        parts=(*network.parts, CurrentSource("i", 1, 0, Value(1.0))),
+        drives=(Drive("i", (("i", 1.0),)),),
+        default_drive="i",
     )
     response = Response(driven)
     f = np.array([1e3, 2e6, 3e7])
     step = 1e-5
     value, slope = response.derivative(f, "b")
     assert np.allclose(value.values, response.reading(f, "b").values, rtol=1e-12, atol=0)
-    around = (response.reading(f * (1 + step), "b").values - response.reading(f * (1 - step), "b").values)
+    around = response.reading(f * (1 + step), "b").values - response.reading(f * (1 - step), "b").values
     expected = around / (2j * np.pi * f * 2 * step)
     floor = np.abs(value.values / (2 * np.pi * f))
     assert np.all(np.abs(slope.values - expected) <= 1e-6 * np.abs(expected) + 1e-8 * floor)

@@ -19,7 +19,7 @@ TOPOLOGY: tuple[Code, ...] = (
     Code(
         "nothing-there",
         "error",
-        "the {what} \"{name_}\" is on what does not exist: {reason}",
+        'the {what} "{name_}" is on what does not exist: {reason}',
         "correct the name, or add what is missing",
         "Readings and contacts stand at nodes that parts are connected to, couplings between inductors, "
         "drives move "
@@ -42,7 +42,7 @@ TOPOLOGY: tuple[Code, ...] = (
     Code(
         "open-current-source",
         "error",
-        "the current of \"{source}\" has no way back from {nodes}",
+        'the current of "{source}" has no way back from {nodes}',
         "give it a path, for example `shunted by` a resistor in the source",
         "An ideal current source drives its current whatever the voltage. Where no part carries it back "
         "there is no "
@@ -82,7 +82,7 @@ TOPOLOGY: tuple[Code, ...] = (
     Code(
         "impossible-shield",
         "error",
-        "the cable \"{cable}\" has too little inductance for its shield's",
+        'the cable "{cable}" has too little inductance for its shield\'s',
         "raise `inductance` to {least} at least, or bring `shield_coupling` nearer to 1",
         "With the shield inductance Ls and the coupling k, the loop's inductance L is at least (1 - k)² Ls; "
         "less would "
@@ -96,9 +96,9 @@ TOPOLOGY: tuple[Code, ...] = (
     Code(
         "sides-meet",
         "error",
-        "the circuit under test and the chain meet at \"{node}\", which is no contact",
-        "add a contact there, for example `contact at_{node}: {node} to ground`, or move \"{chain}\" or "
-        "\"{test}\" to "
+        'the circuit under test and the chain meet at "{node}", which is no contact',
+        'add a contact there, for example `contact at_{node}: {node} to ground`, or move "{chain}" or '
+        '"{test}" to '
         "the other side",
         "What the chain changes is told from the circuit under test alone and the chain alone. The two may "
         "meet at the "
@@ -126,7 +126,7 @@ TOPOLOGY: tuple[Code, ...] = (
     Code(
         "dangling-node",
         "warning",
-        "only \"{part}\" touches the node \"{node}\"",
+        'only "{part}" touches the node "{node}"',
         "connect it, read it, or silence this with `allow dangling-node: {node}`",
         "A node at which one part ends and nothing is read is often a slip of spelling. An open end that is "
         "meant "
@@ -147,7 +147,7 @@ TOPOLOGY: tuple[Code, ...] = (
     Code(
         "source-shorted",
         "warning",
-        "the source \"{source}\" is short-circuited at its terminals",
+        'the source "{source}" is short-circuited at its terminals',
         "check the nodes that it stands between",
         "Both terminals of the source are one node, so it drives nothing beyond the impedance behind it.",
         (_FRAME + "branch r: a to ground = 0 Ω",),
@@ -155,7 +155,7 @@ TOPOLOGY: tuple[Code, ...] = (
     Code(
         "coupling-across-split",
         "warning",
-        "\"{coupling}\" couples {first} under test with {second} of the chain",
+        '"{coupling}" couples {first} under test with {second} of the chain',
         "if that is meant, silence this with `allow coupling-across-split: {coupling}`",
         "The coupling counts in loaded voltages and readings. The circuit under test alone and the chain "
         "alone are "
