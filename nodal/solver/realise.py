@@ -25,9 +25,10 @@ from scipy.linalg import lapack
 
 from nodal.solver.arithmetic import MpArithmetic
 from nodal.solver.exact import Exact
+from nodal.solver.factored import Factored
 from nodal.solver.matrix import System
-from nodal.solver.pattern import Complexes, Floats, Pattern, product
-from nodal.solver.plan import Plan, make_plan
+from nodal.solver.pattern import Complexes, Floats, Pattern
+from nodal.solver.plan import make_plan
 from nodal.solver.sweep import solve
 
 AGREEMENT = 1e-9
@@ -43,8 +44,6 @@ _FAR = (60, 80)
 """s = 10 ** these, rad/s: beyond every corner that parts of any size can make."""
 
 _DIGITS = 600
-
-_CORRECTIONS = 3
 
 
 class NotRealised(Exception):
@@ -110,7 +109,9 @@ class Realisation:
             values += cluster.c @ np.linalg.solve(matrices, cluster.b[None, :, None])[:, :, 0].T
         return values
 
-    def edge(self, times: ArrayLike, ramp: float = 0.0) -> Floats:
+    def edge(
+        self, times: ArrayLike, ramp: float = 0.0, outputs: Sequence[int] | NDArray[np.intp] | None = None
+    ) -> Floats:
         """Response to a unit step at t = 0, or to a linear ramp from 0 to 1 of duration `ramp`; (n_outputs,
         n_times).
 
@@ -118,21 +119,22 @@ class Realisation:
         ramp.
         """
         t = np.atleast_1d(np.asarray(times, dtype=float))
-        values = np.zeros((len(self.direct), len(t)))
+        which = np.arange(len(self.direct)) if outputs is None else np.asarray(outputs, dtype=np.intp)
+        values = np.zeros((len(which), len(t)))
         on = t >= 0
         if not on.any():
             return values
         t = t[on]
         if ramp > 0:
-            found = np.multiply.outer(self.direct, np.minimum(t / ramp, 1.0))
-            found += np.multiply.outer(self.slope / ramp, (t < ramp).astype(float))
+            found = np.multiply.outer(self.direct[which], np.minimum(t / ramp, 1.0))
+            found += np.multiply.outer(self.slope[which] / ramp, (t < ramp).astype(float))
         else:
-            found = np.repeat(self.direct[:, None], len(t), axis=1)
+            found = np.repeat(self.direct[which, None], len(t), axis=1)
         for first in range(0, len(t), 512):
             part = slice(first, first + 512)
-            found[:, part] += (self.residues @ _mode_edge(self.mode_poles, t[part], ramp)).real
+            found[:, part] += (self.residues[which] @ _mode_edge(self.mode_poles, t[part], ramp)).real
         for cluster in self.clusters:
-            found += (cluster.c @ _cluster_edge(cluster, t, ramp)).real
+            found += (cluster.c[which] @ _cluster_edge(cluster, t, ramp)).real
         values[:, on] = found
         return values
 
@@ -284,7 +286,7 @@ def _band_edges(pattern: Pattern, degree: int, origin: int) -> list[float]:
     exponents = np.arange(-16.0, 26.0, 0.25)
     points = 10.0**exponents
     plan = make_plan(pattern.system, points[[40, 80, 110, 140]], pattern)
-    log_det = _log_dets(plan, points)
+    log_det = Factored(plan, points.astype(complex)).log_det()
     below = np.gradient(log_det, exponents)
     middle = exponents
     inside = (below > origin + 0.02) & (below < degree - 0.02)
@@ -300,24 +302,6 @@ def _band_edges(pattern: Pattern, degree: int, origin: int) -> list[float]:
         near = np.flatnonzero(np.abs(middle - wanted) <= 0.75)
         edges.append(float(middle[near[np.argmin(density[near])]]))
     return [10.0**e for e in [*edges, high]]
-
-
-def _log_dets(plan: Plan, s: Floats) -> Floats:
-    """log10 |det A| at real s, up to a constant; double precision."""
-    w = _factors(plan, s)
-    with np.errstate(all="ignore"):
-        logs = [-np.log10(np.abs(w[slot])) for slot in plan.order.pivot.tolist()]
-    total: Floats = np.nan_to_num(np.sum(logs, axis=0), posinf=0.0, neginf=0.0)
-    return total
-
-
-def _factors(plan: Plan, s: Floats) -> list[Complexes]:
-    points = s.astype(complex)
-    entries = plan.pattern.matrix(points, {})
-    w = [*entries, *np.zeros((plan.order.slots - len(entries), len(s)), dtype=complex)]
-    with np.errstate(all="ignore"):
-        plan.kernel.factor(w, np.empty(len(s), dtype=complex))
-    return w
 
 
 def _gap(sizes: Floats, edge: float) -> float:
@@ -339,9 +323,10 @@ def _shifted(
             right[equation, k] = weight * scale[k] * np.sign(pattern.c[term])
     for equation, value in source.items():
         right[equation, -1] += value
-    taking = pattern.taking[dynamic]
-    big, small = _solve_real(pattern, shift, right)
-    states = (taking @ big + taking @ small) * scale[:, None]
+    factored = Factored(make_plan(pattern.system, [shift], pattern), np.array([shift], dtype=complex))
+    x = factored.solve(right.astype(complex))
+    big, small = (part.real for part in x)
+    states = factored.drops(*x)[dynamic].real * scale[:, None]
     weights = np.zeros((len(outputs), pattern.size))
     for k, output in enumerate(outputs):
         for unknown, weight in output.items():
@@ -353,29 +338,6 @@ def _shifted(
     balanced, (scaling, _) = scipy.linalg.matrix_balance(m, permute=False, separate=True)
     t, q = scipy.linalg.rsf2csf(*scipy.linalg.schur(balanced))
     return _Shifted(shift, t, (c * scaling) @ q, q.conj().T @ (b / scaling))
-
-
-def _solve_real(pattern: Pattern, shift: float, right: Floats) -> tuple[Floats, Floats]:
-    """A(shift)⁻¹ right, as an unevaluated sum of two: corrected with residuals formed term by term."""
-    plan = make_plan(pattern.system, [shift], pattern)
-    coefficients = (pattern.g + shift * pattern.c)[:, None]
-    w = _factors(plan, np.array([shift]))
-    spare = np.empty(right.shape[1], dtype=complex)
-    b = np.empty(right.shape, dtype=complex)
-    b[plan.order.place] = right
-    with np.errstate(all="ignore"):
-        x = b.copy()
-        plan.kernel.solve(w, list(x), spare)
-        small = np.zeros_like(x)
-        for _ in range(_CORRECTIONS):
-            drops = product(pattern.taking, x) + product(pattern.taking, small)
-            correction = plan.balance.remainder(b, coefficients * drops)
-            plan.kernel.solve(w, list(correction), spare)
-            small += correction
-            total = x + small
-            small -= total - x
-            x = total
-    return x.real, small.real
 
 
 def _band(form: _Shifted, chosen: NDArray[np.bool_]) -> _Band:

@@ -1,0 +1,217 @@
+"""Transfer functions front by front: what pure delays carry, with the delays taken out.
+
+A(s) = A0(s) + sum over k of A_k(s) exp(-s T_k): cables in their travelling waves and amplifiers with a delay are of
+this form. x(s) = sum of x_τ(s) exp(-s τ) over all sums τ of delays, with
+
+    A0 x_0 = b,    A0 x_τ = -sum over k of A_k x_(τ - T_k),
+
+and no x_τ has a delay left in it: an edge arrives at each τ in a shape that is smooth after it. For lines without
+loss this is the lattice of reflections (Bewley 1933). Within a window the sum is finite; where it would be long, what
+comes after some time is kept together: A x_rest = -sum of A_k x_τ exp(-s(τ + T_k)) over all steps that leave what was
+summed.
+"""
+
+from __future__ import annotations
+
+import heapq
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any, cast
+
+import numpy as np
+
+from nodal.solver.arithmetic import NumpyArithmetic
+from nodal.solver.factored import Factored
+from nodal.solver.matrix import Arithmetic, Delayed, Function, System
+from nodal.solver.pattern import Complexes, Floats, Pattern
+from nodal.solver.plan import Plan
+from nodal.solver.sweep import Output, plan_for
+
+MOST = 200
+"""Fronts that are followed one by one."""
+
+_SAME = 1e-12
+"""Delays this close, relatively, are one."""
+
+_DECADES = 4
+"""Of |s| that one elimination order serves."""
+
+_POINTS = 512
+
+Step = tuple[int, int]
+"""(index of an arrival, index of the delay that takes it further)."""
+
+
+@dataclass(frozen=True, slots=True)
+class Still:
+    """A function with its delayed part left out."""
+
+    function: Delayed
+
+    @property
+    def count(self) -> int:
+        return self.function.count
+
+    def evaluate(self, s: Any, arithmetic: Arithmetic) -> Sequence[Any]:
+        return self.function.split(s, arithmetic)[0]
+
+
+def delay_of(function: Function) -> float:
+    """Seconds; 0 for a function without a delay to take out."""
+    return float(getattr(function, "delay", 0.0))
+
+
+class Fronts:
+    """Follows the delays of a system for a window of seconds; no more than `most` of them one by one."""
+
+    def __init__(
+        self, system: System, source: Mapping[int, float], outputs: Sequence[Output], window: float,
+        most: int = MOST,
+    ) -> None:
+        self.system, self.source, self.outputs = system, source, outputs
+        still = [Still(cast(Delayed, f)) if delay_of(f) else f for f in system.functions]
+        self._base = _Planned(System(system.size, system.terms, tuple(still)))
+        self._whole = _Planned(system)
+        self._delays, self._groups = _by_delay(system)
+        self._terms = [self._terms_of(group) for group in self._groups]
+        arrivals, self._before, self._leaving = _lattice(self._delays, window, most)
+        self.arrivals: Floats = np.array(arrivals)
+        """(n,) s, in order: the fronts that are followed."""
+        self.rest: float | None = min((time for time, _ in self._leaving), default=None)
+        """When what is not followed one by one sets in; None where that is after the window."""
+
+    @property
+    def starts(self) -> Floats:
+        """When each of what `evaluate` gives sets in, s."""
+        return np.append(self.arrivals, [] if self.rest is None else [self.rest])
+
+    def evaluate(self, s: Complexes) -> Complexes:
+        """(n, n_outputs, n_points): the transfer function of each front without its delay, and of the rest."""
+        shape = len(self.starts), len(self.outputs), len(s)
+        result: Complexes = np.empty(shape, dtype=complex)
+        decade = np.floor(np.log10(np.abs(s)) / _DECADES)
+        for level in np.unique(decade):
+            chosen = np.flatnonzero(decade == level)
+            for part in np.array_split(chosen, -(-len(chosen) // _POINTS)):
+                with np.errstate(all="ignore"):
+                    result[:, :, part] = self._evaluate(s[part])
+        return result
+
+    def _evaluate(self, s: Complexes) -> Complexes:
+        base = self._base.at(s)
+        tables = [self._table(group, terms, s) for group, terms in zip(self._groups, self._terms, strict=True)]
+        result: Complexes = np.empty((len(self.starts), len(self.outputs), len(s)), dtype=complex)
+        sent: list[list[Complexes]] = []
+        for index in range(len(self.arrivals)):
+            right = np.zeros((self.system.size, len(s)), dtype=complex)
+            if index == 0:
+                for equation, value in self.source.items():
+                    right[equation] = value
+            for step in self._before[index]:
+                self._arrive(right, sent, step, 1.0)
+            x, small = base.solve(right)
+            self._read(result[index], x, small)
+            drops = base.drops(x, small)
+            sent.append([drops[terms] * table for terms, table in zip(self._terms, tables, strict=True)])
+        if self.rest is not None:
+            right = np.zeros((self.system.size, len(s)), dtype=complex)
+            for time, step in self._leaving:
+                self._arrive(right, sent, step, np.exp(-s * (time - self.rest)))
+            self._read(result[-1], *self._whole.at(s).solve(right))
+        return result
+
+    def _arrive(self, right: Complexes, sent: list[list[Complexes]], step: Step, factor: Any) -> None:
+        """Subtract A_k x of a step from the right-hand side."""
+        index, delay = step
+        for term, amount in zip(self._terms[delay], sent[index][delay], strict=True):
+            for row, weight in self._base.pattern.term_rows[term]:
+                right[row] -= amount * factor * weight
+
+    def _read(self, result: Complexes, x: Complexes, small: Complexes) -> None:
+        for k, output in enumerate(self.outputs):
+            big: Any = sum((x[i] * w for i, w in output.items()), 0.0)
+            result[k] = big + sum((small[i] * w for i, w in output.items()), 0.0)
+
+    def _terms_of(self, group: Sequence[int]) -> list[int]:
+        """The terms that a group of delayed functions sends something through."""
+        probe = np.array([1e9 + 1e9j, 1e6 + 2e6j])
+        front = self._front(group, probe)
+        functions = self._base.pattern.functions
+        return [term for term, f in functions.items() if f in front and np.any(front[f] != 0)]
+
+    def _table(self, group: Sequence[int], terms: Sequence[int], s: Complexes) -> Complexes:
+        """Coefficients of A_k at the points, (n_terms, n_points)."""
+        front = self._front(group, s)
+        table: Complexes = np.empty((len(terms), len(s)), dtype=complex)
+        for k, term in enumerate(terms):
+            table[k] = front[self._base.pattern.functions[term]]
+        return table
+
+    def _front(self, group: Sequence[int], s: Complexes) -> dict[int, Any]:
+        """{output of the system's functions: its delayed part}."""
+        first = np.cumsum([0, *(f.count for f in self.system.functions)]).tolist()
+        found: dict[int, Any] = {}
+        with np.errstate(all="ignore"):
+            for number in group:
+                function = cast(Delayed, self.system.functions[number])
+                found.update(enumerate(function.split(s, NumpyArithmetic())[1], first[number]))
+        return found
+
+
+class _Planned:
+    """A system with an elimination order for every few decades of |s|."""
+
+    def __init__(self, system: System) -> None:
+        self.system = system
+        self.pattern = Pattern(system)
+        self._plans: dict[int, Plan] = {}
+
+    def at(self, s: Complexes) -> Factored:
+        level = int(np.floor(np.log10(np.abs(s[0])) / _DECADES))
+        if level not in self._plans:
+            self._plans[level] = plan_for(self.system, s)
+        return Factored(self._plans[level], s)
+
+
+def _by_delay(system: System) -> tuple[list[float], list[list[int]]]:
+    """Delays that differ, in order, and the functions that have each."""
+    delays: list[float] = []
+    groups: list[list[int]] = []
+    for number in sorted(range(len(system.functions)), key=lambda k: delay_of(system.functions[k])):
+        delay = delay_of(system.functions[number])
+        if not delay:
+            continue
+        if delays and delay - delays[-1] <= _SAME * delay:
+            groups[-1].append(number)
+        else:
+            delays.append(delay)
+            groups.append([number])
+    return delays, groups
+
+
+def _lattice(
+    delays: Sequence[float], window: float, most: int
+) -> tuple[list[float], list[list[Step]], list[tuple[float, Step]]]:
+    """(arrivals, the steps that lead to each, the steps that leave what is followed with the time they end at).
+
+    Steps that end after the window are left out altogether unless arrivals had to be cut short.
+    """
+    arrivals: list[float] = []
+    before: list[list[Step]] = []
+    waiting: list[tuple[float, int, int]] = [(0.0, -1, -1)]
+    while waiting and waiting[0][0] <= window:
+        time = waiting[0][0]
+        if arrivals and time - arrivals[-1] <= _SAME * time:
+            _, index, delay = heapq.heappop(waiting)
+            before[-1].append((index, delay))
+            continue
+        if len(arrivals) == most:
+            break
+        _, index, delay = heapq.heappop(waiting)
+        arrivals.append(time)
+        before.append([(index, delay)] if index >= 0 else [])
+        for k, further in enumerate(delays):
+            heapq.heappush(waiting, (time + further, len(arrivals) - 1, k))
+    cut = bool(waiting) and waiting[0][0] <= window
+    leaving = [(time, (index, delay)) for time, index, delay in sorted(waiting)] if cut else []
+    return arrivals, before, leaving

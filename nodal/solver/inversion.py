@@ -1,0 +1,259 @@
+"""From a transfer function at complex s to the response in time: the Bromwich integral on a line of s.
+
+y(t) = (e^(at)/π) ∫ Re[F(a + jω) e^(jωt)] dω over ω > 0. Away from ω = 0 F bends no faster than in proportion to ω
+unless the network rings, so the line is cut into panels that double in length, halved where a resonance asks for it.
+On each F is a sum of Legendre polynomials, whose integrals against e^(jωt) are spherical Bessel functions (Bakhvalov
+and Vasil'eva 1968): exact for every t, so that one set of panels serves from the first instant to the end of the
+window, and the error of a value is that of the polynomials alone. Nothing wraps round, as it would with equidistant
+frequencies, and slowly decaying F costs a few panels a decade.
+
+Steps come in as F = (H - H(∞))/s, the jump being put back in closed form. A ramp of duration d multiplies it by
+(1 - e^(-sd))/(sd): as it stands on the panels where that is smooth (|s|d < 1), as two terms, the second delayed by d,
+on the others. Neither subtracts what nearly cancels.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from nodal.solver.pattern import Complexes, Floats
+
+NODES = 20
+"""Gauss points a panel."""
+
+SHIFT = 2.0
+"""a times the window: errors grow by e² toward its end."""
+
+FINE = 1e-14
+"""What the polynomials of one panel may leave out of the response, as part of the largest |H|."""
+
+BEYOND = 2e-15
+"""|H - H(∞)| over the largest |H| where the line may end."""
+
+MOST_PANELS = 3000
+
+_REACH = 45.0
+"""Decades above 1/window: s = 10 ** this / window stands for infinity."""
+
+_PROBES = 6
+"""Per decade, for finding where the line may end."""
+
+ROUNDING = 2e-14
+"""What rounding does to a response, as part of the largest |H|: some hundred panels of a few units each, times e²."""
+
+Transfer = Callable[[Complexes], Complexes]
+"""H at complex s, (n, n_points): any number n of transfer functions at once."""
+
+_POINTS, _WEIGHTS = np.polynomial.legendre.leggauss(NODES)
+_TO_LEGENDRE: Floats = (
+    np.polynomial.legendre.legvander(_POINTS, NODES - 1).T * _WEIGHTS * (np.arange(NODES) + 0.5)[:, None]
+)
+"""Coefficients from values at the Gauss points."""
+_TURNS: Complexes = 1j ** np.arange(NODES)
+
+
+class NotInverted(Exception):
+    """No response that could be trusted: says why. `rows`: the transfer functions that would give an impulse."""
+
+    def __init__(self, reason: str, rows: Sequence[int] | None = None) -> None:
+        super().__init__(reason)
+        self.rows = rows
+
+
+@dataclass(frozen=True)
+class Inversion:
+    """Responses of n transfer functions for 0 <= t <= window, after a unit step or ramp at t = 0.
+
+    `jump` (n,): H(∞), `slope` (n,): what grows with s. `error` (n,): estimate of the largest absolute error.
+    """
+
+    window: float
+    jump: Floats
+    largest: Floats
+    error: Floats
+    shift: float
+    centre: Floats
+    half: Floats
+    values: Complexes
+    """(n, n_panels, NODES): (H - H(∞))/s at the Gauss points."""
+
+    def edge(self, times: Floats, ramp: float = 0.0, which: slice | NDArray[np.intp] = slice(None)) -> Floats:
+        """(n, n_times); 0 before t = 0, at a jump the value after it."""
+        t = np.asarray(times, dtype=float)
+        result = np.zeros((len(self.jump[which]), len(t)))
+        on = t >= 0
+        if on.any():
+            level = np.minimum(t[on] / ramp, 1.0) if ramp > 0 else np.ones(int(on.sum()))
+            result[:, on] = np.multiply.outer(self.jump[which], level) + self.smooth(t[on], ramp, which)
+        return result
+
+    def smooth(self, t: Floats, ramp: float, which: slice | NDArray[np.intp] = slice(None)) -> Floats:
+        """Without the jump; at negative t what should be zero."""
+        values = self.values[which]
+        if ramp <= 0:
+            return self._integral(values, slice(None), t)
+        s = self.shift + 1j * (self.centre[:, None] + self.half[:, None] * _POINTS)
+        slow = (self.centre + self.half) * ramp < 1
+        slow[: int(slow.sum())] = True
+        turned = s[slow] * ramp
+        result = self._integral(values[:, slow] * (-np.expm1(-turned) / turned), slow, t)
+        if not slow.all():
+            fast = values[:, ~slow] / (s[~slow] * ramp)
+            result += self._integral(fast, ~slow, t)
+            result -= self._integral(fast, ~slow, t - ramp)
+        return result
+
+    def _integral(self, values: Complexes, panels: Any, t: Floats) -> Floats:
+        coefficients = values @ _TO_LEGENDRE.T * _TURNS
+        centre, half = self.centre[panels], self.half[panels]
+        result = np.zeros((len(values), len(t)))
+        step = max(1, int(2e5 // max(len(centre), 1)))
+        for first in range(0, len(t), step):
+            part = t[first : first + step]
+            bessel = spherical_bessel(np.multiply.outer(half, part))
+            phase = np.exp(1j * np.multiply.outer(centre, part)) * (2 * half[:, None])
+            stacked = np.moveaxis(coefficients, 1, 0)
+            sums = np.matmul(stacked.real, bessel) + 1j * np.matmul(stacked.imag, bessel)
+            result[:, first : first + step] = np.einsum("pnt,pt->nt", sums, phase).real
+        growth: Floats = np.exp(self.shift * t) / np.pi
+        return result * growth
+
+
+def invert(transfer: Transfer, window: float, outputs: int = 1) -> Inversion:
+    """Prepare the responses of stable transfer functions for the times up to `window` (s).
+
+    The rows of `transfer` belong to `outputs` readings in turn (row k to reading k mod outputs), whose largest |H|
+    is the measure of all errors. Raises NotInverted for impulses, for responses that grow by more than the window
+    can take, and for values that are not finite.
+    """
+    jump = _at_infinity(transfer, window)
+    shift = SHIFT / window
+    omega = 10.0 ** np.arange(-1.0, _REACH - 5, 1 / _PROBES) / window
+    probed = transfer(np.asarray(shift + 1j * omega, dtype=np.complex128))
+    if not np.isfinite(probed).all():
+        raise NotInverted("the transfer function is not finite everywhere")
+    peaks = np.maximum(np.abs(probed).max(axis=1), np.abs(jump)).reshape(-1, outputs)
+    largest = np.where(peaks.max(axis=0) == 0, 1.0, peaks.max(axis=0))
+    measure = np.tile(largest, len(peaks))
+    still_there = (np.abs(probed - jump[:, None]) > BEYOND * measure[:, None]).any(axis=0)
+    end = omega[min(int(np.flatnonzero(still_there)[-1]) + 2, len(omega) - 1)] if still_there.any() else shift
+    edges = np.append(0.0, shift * 2.0 ** np.arange(math.ceil(math.log2(max(end / shift, 1))) + 1))
+    centre, half, values, left_out = _panels(transfer, jump, measure, shift, edges)
+    sizes = np.abs(values[:, -1, -1] * (edges[-1] / np.pi))
+    error = math.exp(SHIFT) * (left_out + sizes) + ROUNDING * measure
+    made = Inversion(window, jump, measure, error, shift, centre, half, values)
+    before = np.abs(made.smooth(-window * 10.0 ** -np.arange(0.0, 12.0, 0.25), 0.0)).max(axis=1)
+    if (before > 1e-3 * measure).any():
+        raise NotInverted("the response grows without bound, or too much of it could not be resolved")
+    return Inversion(window, jump, measure, error + 2 * before, shift, centre, half, values)
+
+
+def _at_infinity(transfer: Transfer, window: float) -> Floats:
+    s = 10.0 ** np.array([_REACH, _REACH + 2]) / window
+    near, far = transfer(np.asarray(s, dtype=np.complex128)).T
+    if not (np.isfinite(near).all() and np.isfinite(far).all()):
+        raise NotInverted("the transfer function is not finite at high frequencies")
+    rising = np.flatnonzero((np.abs(far) > 2 * np.abs(near)) & (np.abs(far) > 1e-3))
+    if len(rising):
+        raise NotInverted("a step would give an impulse", rising.tolist())
+    limit: Floats = far.real
+    return limit
+
+
+def _panels(
+    transfer: Transfer, jump: Floats, measure: Floats, shift: float, edges: Floats
+) -> tuple[Floats, Floats, Complexes, Floats]:
+    """(centre, half, values, sum of what the polynomials leave out) of panels that are all fine enough."""
+    kept: list[tuple[Floats, Floats, Complexes]] = []
+    left_out = np.zeros(len(jump))
+    centre, half = (edges[1:] + edges[:-1]) / 2, np.diff(edges) / 2
+    count = 0
+    while len(centre):
+        s = shift + 1j * (centre[:, None] + half[:, None] * _POINTS)
+        h = transfer(s.ravel())
+        if not np.isfinite(h).all():
+            raise NotInverted("the transfer function is not finite everywhere")
+        values = (h - jump[:, None]).reshape(len(jump), *s.shape) / s
+        high = values @ _TO_LEGENDRE[-2:].T
+        rough = np.abs(high).sum(axis=-1) * half * (2 / np.pi)
+        count += len(centre)
+        split = (rough > FINE * measure[:, None]).any(axis=0) & (half > shift / 8)
+        if count + 2 * int(split.sum()) > MOST_PANELS:
+            # Polynomials that do not follow the curve may be wrong by as much as there is of it.
+            rough[:, split] = (np.abs(values).mean(axis=-1) * half * (2 / np.pi))[:, split]
+            split[:] = False
+        kept.append((centre[~split], half[~split], values[:, ~split]))
+        left_out += rough[:, ~split].sum(axis=1)
+        quarter = half[split] / 2
+        centre = np.concatenate([centre[split] - quarter, centre[split] + quarter])
+        half = np.concatenate([quarter, quarter])
+        count -= int(split.sum())
+    centre = np.concatenate([c for c, _, _ in kept])
+    order = np.argsort(centre)
+    half = np.concatenate([h for _, h, _ in kept])
+    values = np.concatenate([v for _, _, v in kept], axis=1)
+    return centre[order], half[order], values[:, order], left_out
+
+
+def spherical_bessel(x: Floats) -> Floats:
+    """j_k(x) for k = 0 … NODES - 1, put before the last axis of x; absolute accuracy of a few roundings.
+
+    Upward recurrence where |x| > NODES, downward below (Miller's; Abramowitz and Stegun
+    10.1.19 and 10.5), the power series next to 0.
+    """
+    result: Floats = np.empty((*x.shape[:-1], NODES, x.shape[-1]))
+    target = np.moveaxis(result, -2, 0)
+    size = np.abs(x)
+    tiny, large = size < 1, size > NODES
+    middle = ~tiny & ~large
+    target[:, tiny] = _series(size[tiny])
+    target[:, large] = _upward(size[large])
+    target[:, middle] = _downward(size[middle])
+    target[1::2][:, x < 0] *= -1
+    return result
+
+
+def _series(x: Floats) -> Floats:
+    found = np.empty((NODES, len(x)))
+    square = -x * x / 2
+    front = np.ones_like(x)
+    for k in range(NODES):
+        total = np.ones_like(x)
+        for m in range(9, 0, -1):
+            total = 1 + total * square / (m * (2 * k + 2 * m + 1))
+        found[k] = front * total
+        front = front * x / (2 * k + 3)
+    return found
+
+
+def _upward(x: Floats) -> Floats:
+    found = np.empty((NODES, len(x)))
+    found[0] = np.sin(x) / x
+    found[1] = (found[0] - np.cos(x)) / x
+    for k in range(1, NODES - 1):
+        found[k + 1] = (2 * k + 1) / x * found[k] - found[k - 1]
+    return found
+
+
+_ABOVE = NODES + 32
+
+
+def _downward(x: Floats) -> Floats:
+    found = np.empty((NODES, len(x)))
+    above, here = np.zeros_like(x), np.full_like(x, 1e-250)
+    for k in range(_ABOVE, -1, -1):
+        if k < NODES:
+            found[k] = here
+        above, here = here, (2 * k + 1) / x * here - above
+    zeroth = np.sin(x) / x
+    first = (zeroth - np.cos(x)) / x
+    use = np.abs(zeroth) > np.abs(first)
+    scale = np.where(use, zeroth, first) / np.where(use, found[0], found[1])
+    scaled: Floats = found * scale
+    return scaled
