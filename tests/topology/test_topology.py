@@ -142,8 +142,8 @@ def test_impossible_couplings() -> None:
 
 def test_impossible_shields() -> None:
     text = (
-        FRAME
-        + "stock x {{ inductance {} nH/m; capacitance 100 pF/m; shield_inductance 1 µH/m\ncapacitance 1 pF/m\nshield_coupling 0.5 }}\n"
+        FRAME + "stock x {{ inductance {} nH/m; shield_inductance 1 µH/m\n"
+        "capacitance 1 pF/m; shield_coupling 0.5 }}\n"
         "cable k: a, ground to b, q = 1 m of x\nbranch l: b to q = 1 Ω\nbranch e: q to ground = 1 Ω\n"
     )
     assert found(text.format(249.9), "impossible-shield")
