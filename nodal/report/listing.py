@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Sequence
 from typing import Any
 
@@ -31,7 +32,7 @@ def explanation(page: Page, row: Code) -> None:
     """All that the table says about one code, with an input that raises it."""
     page.add(Text.assemble((row.severity, _STYLES[row.severity]), f"[{row.code}]: {_shown(row.message)}"), "")
     page.add(row.explanation)
-    if row.help:
+    if _shown(row.help).strip("… "):  # nothing is known of a help that is all argument
         page.add("", f"help: {_shown(row.help)}")
     if row.examples:
         page.add("", "A file that raises it:", "", Padding(row.examples[0].rstrip("\n"), (0, 0, 0, 2)))
@@ -48,6 +49,4 @@ def as_data(rows: Sequence[Code]) -> list[dict[str, Any]]:
 
 def _shown(template: str) -> str:
     """A message template as a reader sees it: {name} becomes …"""
-    import re
-
     return re.sub(r"\{[^{}]*\}", "…", template).replace("{{", "{").replace("}}", "}")
