@@ -8,6 +8,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from functools import cached_property
@@ -34,7 +35,8 @@ __all__ = ["Design", "DesignError", "Model", "Sweep", "load", "loads"]
 
 
 def load(path: str) -> Design:
-    """The design in a file, "-" for standard input. Raises DesignError with everything that is wrong with it."""
+    """The design in a file, "-" for standard input. Raises DesignError with everything that is wrong with
+    it."""
     collector = Collector()
     text = read(path, collector)
     if text is None:
@@ -45,7 +47,8 @@ def load(path: str) -> Design:
 def loads(text: str, path: str = "<text>", *, read_include: Reader | None = None) -> Design:
     """The design in a text; `path` stands in messages, and includes are looked for beside it.
 
-    `read_include(path, collector)` gives the text of an included file where it is not on disk. Raises DesignError
+    `read_include(path, collector)` gives the text of an included file where it is not on disk. Raises
+    DesignError
     with all errors: of the text, of the meaning and connections of every case.
     """
     collector = Collector(sources={path: text})
@@ -79,8 +82,10 @@ class Design:
     def network(self, case: str | None = None, **lets: float | str) -> Model:
         """The network of a case (None: nominal), ready to be evaluated.
 
-        `lets` set values in place of what the file or the case says: a number in SI units, or text ("12 mm ± 1 mm").
-        Arguments of places have dotted names: `design.network(**{"n.skew": 0.01})`. Raises DesignError where that
+        `lets` set values in place of what the file or the case says: a number in SI units, or text ("12 mm ±
+        1 mm").
+        Arguments of places have dotted names: `design.network(**{"n.skew": 0.01})`. Raises DesignError where
+        that
         gives no network, KeyError for a case that does not exist.
         """
         case = case or NOMINAL
@@ -98,7 +103,8 @@ class Design:
         return Model(network, case)
 
     def check(self, collector: Collector) -> None:
-        """Expands and checks every case; raises DesignError with all errors, else keeps networks and warnings."""
+        """Expands and checks every case; raises DesignError with all errors, else keeps networks and
+        warnings."""
         used: set[str] = set()
         readable = not collector.failed
         for case in self.cases:
@@ -119,7 +125,8 @@ class Design:
         return expand(self.program, case, collector, overrides)
 
     def _unused(self, used: set[str], collector: Collector) -> None:
-        """Warns of values and stocks of the main file that no case uses; included files may hold more than that."""
+        """Warns of values and stocks of the main file that no case uses; included files may hold more than
+        that."""
         if collector.failed:
             return
         statements = [item.statement for item in self.program.items]
@@ -139,11 +146,14 @@ def parse_overrides(lets: Mapping[str, float | str], collector: Collector) -> di
     """Values given from outside: numbers as they are, text as the language reads it."""
     overrides: dict[str, Override] = {}
     for name, value in lets.items():
+        path = f"--let {name}"
         if not isinstance(value, str):
             overrides[name] = float(value)
+            if not math.isfinite(value):
+                collector.add("override-form", None, name_=name)
             continue
-        path = f"--let {name}"
-        file = parse(f"nodal 1\nlet x = {value}", path, collector)
+        plain = name if name.isascii() and name.isidentifier() else "x"
+        file = parse(f"nodal 1\nlet {plain} = {value}", path, collector)
         found = [statement for statement in file.statements if isinstance(statement, syntax.Let)]
         if len(found) == 1 and len(file.statements) == 2:
             overrides[name] = found[0].value
@@ -174,7 +184,11 @@ def span_of(place: Place, sources: Mapping[str, str]) -> Span | None:
     if text is None:
         return None
     starts = line_starts(text)
-    return Span(place.path, starts[place.line - 1] + place.column - 1, starts[place.end_line - 1] + place.end_column - 1)
+    return Span(
+        place.path,
+        starts[place.line - 1] + place.column - 1,
+        starts[place.end_line - 1] + place.end_column - 1,
+    )
 
 
 def distinct(found: Iterable[Diagnostic]) -> list[Diagnostic]:
@@ -225,7 +239,8 @@ class Model:
 
 @dataclass(frozen=True)
 class Sweep:
-    """Curves at the given frequencies; complex arrays of their shape, per unit of the drive. KeyError: no such name."""
+    """Curves at the given frequencies; complex arrays of their shape, per unit of the drive. KeyError: no
+    such name."""
 
     model: Model
     frequencies: NDArray[np.float64]

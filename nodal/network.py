@@ -1,6 +1,7 @@
 """Network: the flat numeric description (nodes, parts, values) that everything below the language works on.
 
-Nodes are indices into `Network.nodes`; index 0 is always `ground`. Parts (see `nodal.parts`) hold node indices and
+Nodes are indices into `Network.nodes`; index 0 is always `ground`. Parts (see `nodal.parts`) hold node
+indices and
 values in SI units. Nothing here knows how a network is written or how it is solved.
 """
 
@@ -62,7 +63,8 @@ class SweepGrid:
 
 @dataclass(frozen=True, slots=True)
 class Stimulus:
-    """Default edge: a linear ramp of whole duration `ramp` (0 for an ideal step), watched for `window` seconds."""
+    """Default edge: a linear ramp of whole duration `ramp` (0 for an ideal step), watched for `window`
+    seconds."""
 
     ramp: float
     window: float
@@ -73,7 +75,8 @@ class Stimulus:
 class FigureCall:
     """A figure of merit as asked for: bandwidth(screen), settling(screen, 2 %), rejection(screen, high, low).
 
-    `arguments` are names (str) and numbers (float, SI; Hz for a reference frequency, a fraction for a band); `text`
+    `arguments` are names (str) and numbers (float, SI; Hz for a reference frequency, a fraction for a band);
+    `text`
     is the canonical spelling, for output and records.
     """
 
@@ -86,7 +89,8 @@ class FigureCall:
 class Requirement:
     """`require NAME: FIGURE [with DRIVE] [at F | from F to F] (<= | >= | =) VALUE`, resolved.
 
-    `limit` is in SI units of `unit` ("" for ratios, "dB" kept as decibels with `limit` in dB). For `=`, `tolerance` is
+    `limit` is in SI units of `unit` ("" for ratios, "dB" kept as decibels with `limit` in dB). For `=`,
+    `tolerance` is
     the half-width in the same unit.
     """
 

@@ -67,8 +67,10 @@ class Random:
 class Formula:
     """How a value follows from numbers and random quantities; evaluates on numbers and arrays alike.
 
-    `operator` is "number" (operand: a float), "random" (operand: a Random), or takes formulas: "negate" and "sqrt"
-    one, "+", "*", "min" and "max" any number, "-" and "/" any number from left to right, or the name of a geometry
+    `operator` is "number" (operand: a float), "random" (operand: a Random), or takes formulas: "negate" and
+    "sqrt"
+    one, "+", "*", "min" and "max" any number, "-" and "/" any number from left to right, or the name of a
+    geometry
     function with its arguments.
     """
 
@@ -96,7 +98,9 @@ class Formula:
                 if missing:
                     waiting.extend(missing)
                     continue
-                done[id(formula)] = apply(formula.operator, [done[id(operand)] for operand in formula.operands])
+                done[id(formula)] = apply(
+                    formula.operator, [done[id(operand)] for operand in formula.operands]
+                )
             waiting.pop()
         return done[id(self)]
 

@@ -12,8 +12,18 @@ from nodal.parts.amplifier import Amplifier, Root
 from nodal.values import Value
 
 _ROOT_HZ = units.root(units.HERTZ)
-FIELDS = ("gain", "transconductance", "poles", "zeros", "delay", "input", "output", "noise", "current_noise",
-          "common_mode")  # fmt: skip
+FIELDS = (
+    "gain",
+    "transconductance",
+    "poles",
+    "zeros",
+    "delay",
+    "input",
+    "output",
+    "noise",
+    "current_noise",
+    "common_mode",
+)
 
 
 def expand_amplifier(statement: syntax.Amplifier, frame: Frame) -> None:
@@ -49,8 +59,8 @@ def expand_amplifier(statement: syntax.Amplifier, frame: Frame) -> None:
         else:
             expand_network(network, out, ref2, f"{name}.output", frame, noiseless=True)
     part = Amplifier(
-        name, in_, ref, ideal, ref2, gain, transconductance, poles, zeros, delay, noise, current_noise, common_mode,
-        side=frame.side, place=frame.builder.place(statement.span),
+        name, in_, ref, ideal, ref2, gain, transconductance, poles, zeros, delay, noise, current_noise,
+        common_mode, side=frame.side, place=frame.builder.place(statement.span),
     )  # fmt: skip
     frame.builder.add(part, statement.span)
 
@@ -89,11 +99,13 @@ def _fields(statement: syntax.Amplifier, frame: Frame) -> dict[str, syntax.Field
 
 def _check(statement: syntax.Amplifier, fields: dict[str, syntax.Field], frame: Frame) -> None:
     if "gain" in fields and "transconductance" in fields:
-        frame.evaluator.reject("field-clash", fields["transconductance"].name.span, first="gain",
-                               second="transconductance")  # fmt: skip
+        frame.evaluator.reject(
+            "field-clash", fields["transconductance"].name.span, first="gain", second="transconductance"
+        )
     if "gain" not in fields and "transconductance" not in fields:
-        frame.evaluator.reject("missing-field", statement.name.span, given="the amplifier",
-                               missing="gain or transconductance")  # fmt: skip
+        frame.evaluator.reject(
+            "missing-field", statement.name.span, given="the amplifier", missing="gain or transconductance"
+        )
 
 
 class _Reading:

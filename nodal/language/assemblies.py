@@ -30,7 +30,9 @@ def check_assemblies(assemblies: Mapping[str, syntax.Assembly], collector: Colle
             collector.add("assembly-recursion", first.name.span, names=" -> ".join([*group, group[0]]))
             wrong.update(group)
         name = group[0]
-        depth.update((member, 1 + max((depth.get(use, 0) for use in uses[member]), default=0)) for member in group)
+        depth.update(
+            (member, 1 + max((depth.get(use, 0) for use in uses[member]), default=0)) for member in group
+        )
         if depth[name] == DEEPEST + 1 and name not in wrong:
             collector.add("assembly-too-deep", first.name.span, limit=DEEPEST)
         if depth[name] > DEEPEST:
@@ -120,7 +122,9 @@ def _dimension(name: str, written: Quantity | None, parameter: syntax.Parameter,
     return frame.evaluator.value(parameter.value, frame.scope, None, SPREAD).dimension
 
 
-def bind_nodes(use: syntax.Use, assembly: syntax.Assembly, frame: Frame) -> tuple[list[int], list[int], list[int]]:
+def bind_nodes(
+    use: syntax.Use, assembly: syntax.Assembly, frame: Frame
+) -> tuple[list[int], list[int], list[int]]:
     """The nodes of a use: left of `to`, right of it, after `with`."""
     for where, given, wanted in (
         ("left", use.left, assembly.left),
@@ -129,9 +133,17 @@ def bind_nodes(use: syntax.Use, assembly: syntax.Assembly, frame: Frame) -> tupl
     ):
         if len(given) != len(wanted):
             names = ", ".join(word.text for word in wanted) or "none"
-            frame.evaluator.reject("wrong-nodes-of-use", use.span, assembly=assembly.name.text, where=_WHERE[where],
-                                   wanted=names, found=len(given))  # fmt: skip
-    left, right, shared = ([frame.node(word) for word in words] for words in (use.left, use.right, use.shared))
+            frame.evaluator.reject(
+                "wrong-nodes-of-use",
+                use.span,
+                assembly=assembly.name.text,
+                where=_WHERE[where],
+                wanted=names,
+                found=len(given),
+            )
+    left, right, shared = (
+        [frame.node(word) for word in words] for words in (use.left, use.right, use.shared)
+    )
     return left, right, shared
 
 

@@ -68,7 +68,9 @@ class NetworkBuilder:
                 return None
             starts = self._lines[span.path] = line_starts(text)
         first, last = bisect_right(starts, span.start) - 1, bisect_right(starts, span.end) - 1
-        return Place(span.path, first + 1, span.start - starts[first] + 1, last + 1, span.end - starts[last] + 1)
+        return Place(
+            span.path, first + 1, span.start - starts[first] + 1, last + 1, span.end - starts[last] + 1
+        )
 
 
 class TooLarge(Exception):

@@ -41,8 +41,13 @@ FIELDS: dict[str, Dimension] = {
     "shield_coupling": units.NONE,
 }
 _AT = ("skin", "attenuation")
-_CLASHES = (("impedance", "inductance"), ("impedance", "capacitance"), ("velocity", "inductance"),
-            ("velocity", "capacitance"), ("skin", "attenuation"))  # fmt: skip
+_CLASHES = (
+    ("impedance", "inductance"),
+    ("impedance", "capacitance"),
+    ("velocity", "inductance"),
+    ("velocity", "capacitance"),
+    ("skin", "attenuation"),
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -114,9 +119,14 @@ def _fields(
             _shape(field, evaluator)
             expression = field.values[0][0]
             qualifiers = () if name in (*_AT, "loss") else SPREAD
-            quantity = evaluator.positive(expression, scope, FIELDS[name], f"the {name} of a stock",
-                                          zero=name not in ("impedance", "velocity"),
-                                          qualifiers=qualifiers)  # fmt: skip
+            quantity = evaluator.positive(
+                expression,
+                scope,
+                FIELDS[name],
+                f"the {name} of a stock",
+                zero=name not in ("impedance", "velocity"),
+                qualifiers=qualifiers,
+            )
             if name in ("velocity", "shield_coupling") and quantity.nominal > 1:
                 evaluator.reject("beyond-one", expression.span, what=f"the {name} of a stock")
             if name in _AT:
@@ -198,15 +208,23 @@ def _skin_from(wanted: float, frequency: float, data: StockData) -> float | None
 def expand_cable(cable: syntax.Cable, data: StockData, frame: Frame) -> None:
     """One cable part between its four nodes."""
     evaluator = frame.evaluator
-    length = evaluator.positive(cable.length, frame.scope, units.METRE, "the length of a cable", zero=True,
-                                qualifiers=SPREAD)  # fmt: skip
+    length = evaluator.positive(
+        cable.length, frame.scope, units.METRE, "the length of a cable", zero=True, qualifiers=SPREAD
+    )
     core1, shield1 = (frame.node(word) for word in cable.near)
     core2, shield2 = (frame.node(word) for word in cable.far)
-    shielded = any(value is not None and value.nominal for value in (data.shield_inductance, data.shield_resistance))
+    shielded = any(
+        value is not None and value.nominal for value in (data.shield_inductance, data.shield_resistance)
+    )
     if shield1 != shield2 and not shielded:
         span = syntax.Span(cable.near[1].span.path, cable.near[1].span.start, cable.far[1].span.end)
-        evaluator.reject("shield-without-fields", span, near=cable.near[1].text, far=cable.far[1].text,
-                         stock=cable.stock.text)  # fmt: skip
+        evaluator.reject(
+            "shield-without-fields",
+            span,
+            near=cable.near[1].text,
+            far=cable.far[1].text,
+            stock=cable.stock.text,
+        )
     part = Cable(
         frame.prefix + cable.name.text, core1, shield1, core2, shield2, length.value, data.resistance,
         data.inductance, data.conductance, data.capacitance, data.loss, data.skin, data.shield_inductance,

@@ -19,6 +19,9 @@ from nodal.values import Drift, Rating, Tolerance, Trim
 
 FUNCTIONS = ("sqrt", "min", "max", *geometry.SHAPES)
 
+MOST_GUESSES = 50
+"""Unknown names for which the nearest known one is looked for."""
+
 Kind = type[syntax.Qualifier]
 
 EVERY: frozenset[Kind] = frozenset(
@@ -45,6 +48,7 @@ class Evaluator:
         self.collector = collector
         self.lost = lost
         """Words of statements that could not be read: what is unknown may have been declared there."""
+        self.guesses = 0
         self.uses: list[tuple[Span, str]] = []
         """The places and chains being expanded, outermost first."""
 
@@ -61,7 +65,9 @@ class Evaluator:
         """Report a name that nothing bears, unless what bears it may be a statement that could not be
         read."""
         if name not in self.lost and name.partition(".")[0] not in self.lost:
-            self.report("unknown-name", span, what=what, unknown=name, hint=nearest(name, known))
+            self.guesses += 1
+            hint = nearest(name, known) if self.guesses <= MOST_GUESSES else "check the spelling"
+            self.report("unknown-name", span, what=what, unknown=name, hint=hint)
         raise Rejected
 
     def value(
@@ -80,7 +86,9 @@ class Evaluator:
         self.expect(quantity, expression.span, dimensions)
         return quantity
 
-    def expect(self, quantity: Quantity, span: Span, dimensions: Dimension | Sequence[Dimension] | None) -> None:
+    def expect(
+        self, quantity: Quantity, span: Span, dimensions: Dimension | Sequence[Dimension] | None
+    ) -> None:
         """Report a quantity that is of none of the dimensions."""
         if dimensions is None:
             return
@@ -88,7 +96,9 @@ class Evaluator:
             dimensions = (dimensions,)  # type: ignore[assignment]
         if quantity.dimension not in dimensions:
             wanted = " or ".join(units.quantity_name(d) for d in dimensions)  # type: ignore[arg-type]
-            self.reject("wrong-dimension", span, expected=wanted, found=units.quantity_name(quantity.dimension))
+            self.reject(
+                "wrong-dimension", span, expected=wanted, found=units.quantity_name(quantity.dimension)
+            )
 
     def positive(
         self,
@@ -109,8 +119,13 @@ class Evaluator:
         """Report a quantity below zero, or at zero where that is not allowed."""
         if quantity.nominal < 0 or (quantity.nominal == 0 and not zero):
             shown = units.show(quantity.nominal, units.unit_name(quantity.dimension))
-            self.reject("negative-value", span, what=what, value=shown,
-                        bound="zero or more" if zero else "more than zero")  # fmt: skip
+            self.reject(
+                "negative-value",
+                span,
+                what=what,
+                value=shown,
+                bound="zero or more" if zero else "more than zero",
+            )
 
     def let(self, binding: Binding, scope: Scope) -> Quantity:
         """The value of a let, its own tolerance not yet a random quantity."""
@@ -120,7 +135,7 @@ class Evaluator:
         """Report lets that refer to themselves."""
         names = [binding.word.text for binding in bindings]
         first = min(bindings, key=lambda binding: (binding.word.span.path, binding.word.span.start))
-        self.report("let-cycle", first.word.span, names=" -> ".join([*names, names[0]]))
+        self.report("let-cycle", first.word.span, names=_circle_text(names))
 
     # Arithmetic
 
@@ -136,6 +151,8 @@ class Evaluator:
                 quantity = literal(expression.digits, expression.unit)
                 if not math.isfinite(quantity.nominal):
                     self.reject("overflow", expression.span)
+                if quantity.nominal == 0 and expression.digits.lower().partition("e")[0].strip("0."):
+                    self.reject("underflow", expression.span)
                 return quantity
             case syntax.Name():
                 return self._plain(self._name(expression, scope), expression.span, expression.text)
@@ -149,8 +166,9 @@ class Evaluator:
                 return self._call(expression, [self._work_out(argument, scope) for argument in arguments])
             case syntax.Qualified():
                 self._no_network_in(expression.base)
-                self.reject("qualifier-in-arithmetic", expression.span,
-                            word=_WORDS[type(expression.qualifiers[0])])  # fmt: skip
+                self.reject(
+                    "qualifier-in-arithmetic", expression.span, word=_WORDS[type(expression.qualifiers[0])]
+                )
             case syntax.Parallel() | syntax.Series():
                 sign = "∥" if isinstance(expression, syntax.Parallel) else "--"
                 self.reject("network-in-arithmetic", expression.span, sign=sign)
@@ -158,8 +176,11 @@ class Evaluator:
 
     def _no_network_in(self, expression: syntax.Expression) -> None:
         if isinstance(expression, syntax.Parallel | syntax.Series):
-            self.reject("network-in-arithmetic", expression.span,
-                        sign="∥" if isinstance(expression, syntax.Parallel) else "--")  # fmt: skip
+            self.reject(
+                "network-in-arithmetic",
+                expression.span,
+                sign="∥" if isinstance(expression, syntax.Parallel) else "--",
+            )
 
     def _name(self, name: syntax.Name, scope: Scope) -> Quantity:
         try:
@@ -198,8 +219,12 @@ class Evaluator:
         for term, node in zip(terms, expression.terms, strict=True):
             self._apart(term, node.span)
             if term.dimension != first.dimension:
-                self.reject("wrong-dimension", node.span, expected=units.quantity_name(first.dimension),
-                            found=units.quantity_name(term.dimension))  # fmt: skip
+                self.reject(
+                    "wrong-dimension",
+                    node.span,
+                    expected=units.quantity_name(first.dimension),
+                    found=units.quantity_name(term.dimension),
+                )
         points = all(term.points for term in terms)
         return self._fold(expression, terms, expression.operators, [first.dimension] * len(terms), points)
 
@@ -270,22 +295,35 @@ class Evaluator:
         thick = arguments[-1].nominal
         for argument, node, label in zip(arguments[:-1], call.arguments, labels, strict=False):
             if argument.nominal < geometry.SHORTEST * thick:
-                self.reject("short-wire", node.span, label=label, length=units.show(argument.nominal, "m"),
-                            limit=units.show(geometry.SHORTEST * thick, "m"))  # fmt: skip
+                self.reject(
+                    "short-wire",
+                    node.span,
+                    label=label,
+                    length=units.show(argument.nominal, "m"),
+                    limit=units.show(geometry.SHORTEST * thick, "m"),
+                )
         return self._finite(call, operate(name, arguments, units.HENRY))
 
     def _count(self, call: syntax.Call, wanted: str, right: bool) -> None:
         if not right:
-            self.reject("wrong-arguments", call.span, function=call.function.text, wanted=wanted,
-                        found=len(call.arguments))  # fmt: skip
+            self.reject(
+                "wrong-arguments",
+                call.span,
+                function=call.function.text,
+                wanted=wanted,
+                found=len(call.arguments),
+            )
 
     # Qualifiers
 
     def _qualified(self, expression: syntax.Qualified, scope: Scope, allowed: frozenset[Kind]) -> Quantity:
         self._no_network_in(expression.base)
         if isinstance(expression.base, syntax.Qualified):
-            self.reject("qualifier-in-arithmetic", expression.base.span,
-                        word=_WORDS[type(expression.base.qualifiers[0])])  # fmt: skip
+            self.reject(
+                "qualifier-in-arithmetic",
+                expression.base.span,
+                word=_WORDS[type(expression.base.qualifiers[0])],
+            )
         quantity = self._named_or_worked_out(expression.base, scope)
         written: set[Kind] = set()
         for qualifier in expression.qualifiers:
@@ -300,11 +338,15 @@ class Evaluator:
             quantity = self._qualify(quantity, qualifier, scope, points)
         return quantity
 
-    def _qualify(self, quantity: Quantity, qualifier: syntax.Qualifier, scope: Scope, points: bool) -> Quantity:
+    def _qualify(
+        self, quantity: Quantity, qualifier: syntax.Qualifier, scope: Scope, points: bool
+    ) -> Quantity:
         value = quantity.value
         match qualifier:
             case syntax.PlusMinus():
-                return replace(quantity, value=replace(value, tolerance=self._spread(quantity, qualifier, scope, points)))
+                return replace(
+                    quantity, value=replace(value, tolerance=self._spread(quantity, qualifier, scope, points))
+                )
             case syntax.TrimRange():
                 return replace(quantity, value=replace(value, trim=self._trim(quantity, qualifier, scope)))
             case syntax.Rated():
@@ -317,21 +359,27 @@ class Evaluator:
             case syntax.Called(name=name):
                 return replace(quantity, name=name)
 
-    def _spread(
-        self, quantity: Quantity, written: syntax.PlusMinus, scope: Scope, points: bool
-    ) -> Tolerance:  # fmt: skip
+    def _spread(self, quantity: Quantity, written: syntax.PlusMinus, scope: Scope, points: bool) -> Tolerance:
         width = self.value(written.width, scope)
         relative = width.points and not points
         if not relative and width.dimension != quantity.dimension:
             found = units.quantity_name(width.dimension)
             name = units.unit_name(quantity.dimension)
-            self.reject("wrong-dimension", written.width.span, found=found,
-                        expected=f"{name} or %" if name else "a plain number or %")  # fmt: skip
+            self.reject(
+                "wrong-dimension",
+                written.width.span,
+                found=found,
+                expected=f"{name} or %" if name else "a plain number or %",
+            )
         if width.nominal < 0:
             self.reject("negative-tolerance", written.width.span)
         if relative and quantity.dimension in _APART:
-            self.reject("wrong-dimension", written.width.span, found="a percentage",
-                        expected=units.quantity_name(quantity.dimension))  # fmt: skip
+            self.reject(
+                "wrong-dimension",
+                written.width.span,
+                found="a percentage",
+                expected=units.quantity_name(quantity.dimension),
+            )
         if relative and quantity.nominal == 0 and width.nominal:
             self.reject("percent-of-zero", written.width.span)
         half = abs(width.nominal * quantity.nominal) if relative else width.nominal
@@ -368,10 +416,17 @@ class Evaluator:
         for expression in written.rates:
             rate = self.value(expression, scope, (_PER_KELVIN, _PER_VOLT))
             if rate.dimension in rates:
-                self.reject("qualifier-twice", expression.span,
-                            word=f"a drift in {units.unit_name(rate.dimension)}")  # fmt: skip
+                self.reject(
+                    "qualifier-twice", expression.span, word=f"a drift in {units.unit_name(rate.dimension)}"
+                )
             rates[rate.dimension] = rate.nominal
         return Drift(rates.get(_PER_KELVIN, 0.0), rates.get(_PER_VOLT, 0.0))
+
+
+def _circle_text(names: list[str]) -> str:
+    """A circle on one line, its middle left out where it is long."""
+    shown = names if len(names) <= 8 else [*names[:6], "…", names[-1]]
+    return " -> ".join([*shown, names[0]])
 
 
 def _bears(quantity: Quantity, kind: Kind) -> bool:
@@ -390,4 +445,3 @@ def _is_literal(expression: syntax.Expression) -> bool:
     while isinstance(expression, syntax.Negative):
         expression = expression.operand
     return isinstance(expression, syntax.Number)
-

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, field, replace
+from typing import NoReturn
 
 from nodal.language import syntax, units
 from nodal.language.amplifiers import expand_amplifier
@@ -26,7 +27,8 @@ from nodal.language.program import Item, Program, case_items, name_of
 from nodal.language.quantity import Quantity, number, randomised
 from nodal.language.requirements import resolve_requirement
 from nodal.language.scope import Binding, Rejected, Scope, nearest
-from nodal.network import Contact, Drive, Network, Reading, SweepGrid, Stimulus
+from nodal.network import Contact, Drive, Network, Reading, Stimulus, SweepGrid
+from nodal.parts.base import Part
 from nodal.parts.coupling import Coupling
 from nodal.parts.inductor import Inductor
 from nodal.parts.source import CurrentSource, VoltageSource
@@ -79,6 +81,8 @@ class _Expansion:
         """Values for the arguments of places, by their dotted name, and where each was written."""
         self.known_arguments: set[str] = set()
         self.couplings: list[tuple[syntax.Coupling, Frame]] = []
+        self.inside: dict[str, list[Part]] = {}
+        """Parts of each branch, once couplings ask."""
         self.pending = 1
         """How many times what is being expanded will be repeated by the chains around it."""
         self.contacts: dict[str, Contact] = {}
@@ -220,7 +224,9 @@ class _Expansion:
         right = "behind" if unit == "V" else "shunted by"
         if source.relation is not None and source.relation != right:
             assert source.network is not None
-            evaluator.reject("source-network", source.network.span, unit=unit, right=right, wrong=source.relation)
+            evaluator.reject(
+                "source-network", source.network.span, unit=unit, right=right, wrong=source.relation
+            )
         place = builder.place(source.span)
         if unit == "A":
             part = CurrentSource(name, a, b, value.value, (a, b), side="test", place=place)
@@ -239,7 +245,9 @@ class _Expansion:
     def assembly(self, use: syntax.Use) -> syntax.Assembly:
         name = use.assembly.text
         if name not in self.assemblies:
-            if any(isinstance(i.statement, syntax.Assembly) and i.statement.name.text == name for i in self.items):
+            if any(
+                isinstance(i.statement, syntax.Assembly) and i.statement.name.text == name for i in self.items
+            ):
                 raise Rejected  # it uses itself, which has been reported
             self.evaluator.unknown("assembly", use.assembly.span, name, self.assemblies)
         self.used_names.add(name)
@@ -271,8 +279,13 @@ class _Expansion:
         assembly = self.assembly(chain.use)
         count = section_count(chain, self.evaluator, frame.scope)
         if len(assembly.left) != len(assembly.right):
-            self.evaluator.reject("chain-ends", chain.use.span, assembly=assembly.name.text,
-                                  left=len(assembly.left), right=len(assembly.right))  # fmt: skip
+            self.evaluator.reject(
+                "chain-ends",
+                chain.use.span,
+                assembly=assembly.name.text,
+                left=len(assembly.left),
+                right=len(assembly.right),
+            )
         own_overrides = self.overridden(name, assembly)
         arguments = evaluate_arguments(chain.use, assembly, frame, own_overrides)
         left, right, shared = bind_nodes(chain.use, assembly, frame)
@@ -304,9 +317,15 @@ class _Expansion:
             self.evaluator.uses.pop()
 
     def section(
-        self, assembly: syntax.Assembly, prefix: str, frame: Frame, left: list[int], right: list[int],
-        shared: list[int], arguments: Mapping[str, Quantity | None],
-    ) -> None:  # fmt: skip
+        self,
+        assembly: syntax.Assembly,
+        prefix: str,
+        frame: Frame,
+        left: list[int],
+        right: list[int],
+        shared: list[int],
+        arguments: Mapping[str, Quantity | None],
+    ) -> None:
         words = (*assembly.left, *assembly.right, *assembly.shared)
         nodes = {word.text: index for word, index in zip(words, (*left, *right, *shared), strict=True)}
         scope = inner_scope(assembly, self.scope, prefix)
@@ -327,7 +346,9 @@ class _Expansion:
             if name in self.known_arguments:
                 continue
             if word is not None:
-                self.guarded(self.evaluator.unknown, "argument of a place", word.span, name, self.known_arguments)
+                self.guarded(
+                    self.evaluator.unknown, "argument of a place", word.span, name, self.known_arguments
+                )
             else:
                 self.unknown_override(name)
         for name in self.overrides:
@@ -341,11 +362,15 @@ class _Expansion:
     # Couplings
 
     def all_couplings(self) -> None:
+        for part in self.builder.parts if self.couplings else ():
+            self.inside.setdefault(part.name.rpartition(".")[0], []).append(part)
         pairs: dict[frozenset[str], syntax.Coupling] = {}
         for coupling, frame in self.couplings:
             self.guarded(self.coupling, coupling, frame, pairs)
 
-    def coupling(self, coupling: syntax.Coupling, frame: Frame, pairs: dict[frozenset[str], syntax.Coupling]) -> None:
+    def coupling(
+        self, coupling: syntax.Coupling, frame: Frame, pairs: dict[frozenset[str], syntax.Coupling]
+    ) -> None:
         evaluator = self.evaluator
         first, second = self.inductor(coupling.first, frame), self.inductor(coupling.second, frame)
         if first.name == second.name:
@@ -360,8 +385,12 @@ class _Expansion:
         limit = 1.0 if coefficient else geometric
         if abs(value.nominal) > limit * (1 + 1e-12):  # 1 written as a mutual inductance may round upward
             shown = "1" if coefficient else units.show(limit, "H")
-            evaluator.reject("coupling-beyond-one", coupling.value.span, limit=shown,
-                             found=units.show(value.nominal, units.unit_name(value.dimension)))  # fmt: skip
+            evaluator.reject(
+                "coupling-beyond-one",
+                coupling.value.span,
+                limit=shown,
+                found=units.show(value.nominal, units.unit_name(value.dimension)),
+            )
         part = Coupling(
             frame.prefix + coupling.name.text, first.name, second.name, value.value, coefficient,
             side=first.side, place=self.builder.place(coupling.span),
@@ -376,19 +405,22 @@ class _Expansion:
             return part
         if part is not None:
             self.evaluator.reject("coupling-without-inductor", word.span, word=word.text)
-        inside = [p for p in self.builder.parts if p.name.startswith(name + ".")]
-        inductors = [p for p in inside if isinstance(p, Inductor)]
-        if len(inductors) == 1:
-            return inductors[0]
+        inductors = [p for p in self.inside.get(name, ()) if isinstance(p, Inductor)]
+        if len(inductors) != 1:
+            self.no_inductor(word, frame, inductors)
+        return inductors[0]
+
+    def no_inductor(self, word: syntax.Word, frame: Frame, inductors: list[Inductor]) -> NoReturn:
+        """Says why a word of a coupling means no single inductor."""
         if inductors:
             names = ", ".join(p.name[len(frame.prefix) :] for p in inductors[:8])
             self.evaluator.reject("coupling-ambiguous", word.span, word=word.text, names=names)
-        branches = {word.text for word in map(name_of, (item.statement for item in self.items)) if word}
-        if inside or (not frame.prefix and word.text in branches):
+        declared = (name_of(item.statement) for item in self.items)
+        branches = {name.text for name in declared if name is not None}
+        if frame.prefix + word.text in self.inside or (not frame.prefix and word.text in branches):
             self.evaluator.reject("coupling-without-inductor", word.span, word=word.text)
-        known = [p.name[len(frame.prefix) :] for p in self.builder.parts
-                 if isinstance(p, Inductor) and p.name.startswith(frame.prefix)]  # fmt: skip
-        self.evaluator.unknown("inductor", word.span, word.text, known)
+        own = (p for p in self.builder.parts if isinstance(p, Inductor) and p.name.startswith(frame.prefix))
+        self.evaluator.unknown("inductor", word.span, word.text, [p.name[len(frame.prefix) :] for p in own])
 
     # What is looked at
 
@@ -428,11 +460,20 @@ class _Expansion:
 
     def displayable(self, times: Quantity, expression: syntax.Expression) -> None:
         if any(times.dimension[5:]):
-            self.evaluator.reject("wrong-dimension", expression.span, expected="a number or a quantity such as 200 A/V",
-                                  found=units.quantity_name(times.dimension))  # fmt: skip
+            self.evaluator.reject(
+                "wrong-dimension",
+                expression.span,
+                expected="a number or a quantity such as 200 A/V",
+                found=units.quantity_name(times.dimension),
+            )
         if times.nominal == 0:
-            self.evaluator.reject("negative-value", expression.span, what="what a reading is multiplied by", value="0",
-                                  bound="other than zero")  # fmt: skip
+            self.evaluator.reject(
+                "negative-value",
+                expression.span,
+                what="what a reading is multiplied by",
+                value="0",
+                bound="other than zero",
+            )
 
     def drive(self, drive: syntax.Drive) -> None:
         name = drive.name.text
@@ -490,10 +531,13 @@ class _Expansion:
     def sweep(self, sweep: syntax.Sweep) -> SweepGrid:
         low = self.evaluator.positive(sweep.low, self.scope, units.HERTZ, "the low end of a sweep").nominal
         high = self.evaluator.positive(sweep.high, self.scope, units.HERTZ, "the high end of a sweep").nominal
-        per_decade = self.evaluator.positive(sweep.per_decade, self.scope, units.NONE, "points per decade").nominal
+        per_decade = self.evaluator.positive(
+            sweep.per_decade, self.scope, units.NONE, "points per decade"
+        ).nominal
         if high <= low:
-            self.evaluator.reject("range-reversed", sweep.high.span, low=units.show(low, "Hz"),
-                                  high=units.show(high, "Hz"))  # fmt: skip
+            self.evaluator.reject(
+                "range-reversed", sweep.high.span, low=units.show(low, "Hz"), high=units.show(high, "Hz")
+            )
         if per_decade * (math.log10(high) - math.log10(low)) + 2 > MOST_POINTS:
             self.evaluator.reject("sweep-too-long", sweep.per_decade.span, limit=f"{MOST_POINTS:,}")
         return SweepGrid(low, high, per_decade)
@@ -505,19 +549,30 @@ class _Expansion:
         window = self.evaluator.positive(edge.window, self.scope, units.SECOND, "the time watched").nominal
         top_at = None
         if edge.top_at is not None:
-            top_at = self.evaluator.positive(edge.top_at, self.scope, units.SECOND, "the time of the top").nominal
+            top_at = self.evaluator.positive(
+                edge.top_at, self.scope, units.SECOND, "the time of the top"
+            ).nominal
         for time, expression in ((ramp, edge.ramp), (top_at, edge.top_at)):
             if time is not None and expression is not None and time > window:
-                self.evaluator.reject("outside-window", expression.span, time=units.show(time, "s"),
-                                      window=units.show(window, "s"))  # fmt: skip
+                self.evaluator.reject(
+                    "outside-window",
+                    expression.span,
+                    time=units.show(time, "s"),
+                    window=units.show(window, "s"),
+                )
         return Stimulus(ramp, window, top_at)
 
     def temperature(self, statement: syntax.Temperature) -> float:
         value = self.evaluator.value(statement.value, self.scope, (units.CELSIUS, units.KELVIN))
         kelvin = value.nominal + (FREEZING if value.dimension == units.CELSIUS else 0.0)
         if kelvin < 0:
-            self.evaluator.reject("negative-value", statement.value.span, what="an absolute temperature",
-                                  value=units.show(kelvin, "K"), bound="zero or more")  # fmt: skip
+            self.evaluator.reject(
+                "negative-value",
+                statement.value.span,
+                what="an absolute temperature",
+                value=units.show(kelvin, "K"),
+                bound="zero or more",
+            )
         return kelvin
 
     def allowed(self) -> frozenset[tuple[str, str]]:
@@ -533,4 +588,3 @@ class _Expansion:
             else:
                 self.guarded(self.evaluator.unknown, "warning", code.span, code.text, warnings)
         return frozenset(allowed)
-

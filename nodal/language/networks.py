@@ -121,4 +121,3 @@ def _add(leaf: _Leaf, name: str, frame: Frame, noiseless: bool) -> None:
         conductance = leaf.quantity.dimension == units.SIEMENS
         part = Resistor(name, a, b, value, conductance, side=side, noiseless=noiseless, place=place)
     frame.builder.add(part, leaf.span)
-

@@ -25,8 +25,15 @@ _NAMED = (
 _ONCE: dict[type, str] = {
     syntax.Title: "title", syntax.Sweep: "sweep", syntax.Edge: "edge", syntax.Temperature: "temperature",
 }  # fmt: skip
-_PIECES = (syntax.Branch, syntax.Coupling, syntax.Cable, syntax.Amplifier, syntax.Place, syntax.Chain,
-    syntax.Let)
+_PIECES = (
+    syntax.Branch,
+    syntax.Coupling,
+    syntax.Cable,
+    syntax.Amplifier,
+    syntax.Place,
+    syntax.Chain,
+    syntax.Let,
+)
 """What an assembly may hold."""
 _CIRCUIT = (*_PIECES, syntax.Source, syntax.Stock, syntax.Assembly)
 """What may stand under test."""
@@ -143,7 +150,9 @@ class _Gathering:
         if type(statement) in _ONCE:
             if type(statement) in self.once:
                 related = [(_head(self.once[type(statement)]), "first here")]
-                self.collector.add("given-twice", _head(statement), kind=_ONCE[type(statement)], related=related)
+                self.collector.add(
+                    "given-twice", _head(statement), kind=_ONCE[type(statement)], related=related
+                )
                 return False
             self.once[type(statement)] = statement
         return True
@@ -153,7 +162,13 @@ class _Gathering:
         declared: dict[str, syntax.Word] = {}
         once: set[type] = set()
         for statement, under_test in _flat(case.body):
-            wrong: tuple[type, ...] = (syntax.Version, syntax.Include, syntax.Case, syntax.Title, syntax.UnderTest)
+            wrong: tuple[type, ...] = (
+                syntax.Version,
+                syntax.Include,
+                syntax.Case,
+                syntax.Title,
+                syntax.UnderTest,
+            )
             if case.name.text == NOMINAL and not isinstance(statement, syntax.Require | syntax.Allow):
                 self.misplaced(statement, "inside case nominal")
             elif isinstance(statement, wrong):
@@ -198,8 +213,14 @@ class _Gathering:
         shown = os.path.normpath(os.path.join(os.path.dirname(include.span.path), target))
         try:
             path = _resolved(shown)
-        except (OSError, RuntimeError, ValueError):  # a circle of symbolic links, a character no path may hold
-            self.collector.add("include-unreadable", include.span, target=target, reason="it is no usable path")
+        except (
+            OSError,
+            RuntimeError,
+            ValueError,
+        ):  # a circle of symbolic links, a character no path may hold
+            self.collector.add(
+                "include-unreadable", include.span, target=target, reason="it is no usable path"
+            )
             return
         if os.path.isabs(target) or not path.is_relative_to(self.root):
             self.collector.add("include-outside", include.span, target=target, root=self.shown_root)
@@ -224,7 +245,9 @@ class _Gathering:
             self.open.pop()
 
 
-def _flat(body: tuple[syntax.Statement, ...], under_test: bool = False) -> Iterator[tuple[syntax.Statement, bool]]:
+def _flat(
+    body: tuple[syntax.Statement, ...], under_test: bool = False
+) -> Iterator[tuple[syntax.Statement, bool]]:
     """The statements of a case, those under test among them."""
     for statement in body:
         if isinstance(statement, syntax.UnderTest) and not under_test:
@@ -285,8 +308,13 @@ def case_items(program: Program, case: str, collector: Collector) -> list[Item]:
             position = by_name.get(statement.name.text, -1)
             if position < 0:
                 if statement.name.text not in program.lost:
-                    collector.add("unknown-name", statement.name.span, what="statement", unknown=statement.name.text,
-                                  hint=nearest(statement.name.text, by_name))  # fmt: skip
+                    collector.add(
+                        "unknown-name",
+                        statement.name.span,
+                        what="statement",
+                        unknown=statement.name.text,
+                        hint=nearest(statement.name.text, by_name),
+                    )
             else:
                 gone.add(position)
             continue
@@ -295,6 +323,7 @@ def case_items(program: Program, case: str, collector: Collector) -> list[Item]:
         if existing is None:
             added.append(Item(statement, under_test))
         else:
-            items[existing] = replace(items[existing], statement=statement,
-                                      under_test=under_test or items[existing].under_test)  # fmt: skip
+            items[existing] = replace(
+                items[existing], statement=statement, under_test=under_test or items[existing].under_test
+            )
     return [item for position, item in enumerate(items) if position not in gone] + added

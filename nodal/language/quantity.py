@@ -57,7 +57,9 @@ def number(nominal: float, dimension: Dimension = units.NONE) -> Quantity:
 PI = number(math.pi)
 
 
-def operate(operator: str, operands: Sequence[Quantity], dimension: Dimension, *, points: bool = False) -> Quantity:
+def operate(
+    operator: str, operands: Sequence[Quantity], dimension: Dimension, *, points: bool = False
+) -> Quantity:
     """One operation of a `Formula`; the caller has checked the dimensions. The nominal may not be finite."""
     if all(operand.value.formula is None for operand in operands):
         return Quantity(Value(_nominal(operator, operands)), dimension, points)

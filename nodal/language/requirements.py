@@ -84,7 +84,9 @@ def form_of(row: FigureName) -> str:
     return f"{row.name}({', '.join(row.required)}{''.join(f'[, {kind}]' for kind in row.optional)})"
 
 
-def _kind(expression: syntax.Expression, kinds: list[ArgumentKind], network: Network, frame: Frame) -> ArgumentKind:
+def _kind(
+    expression: syntax.Expression, kinds: list[ArgumentKind], network: Network, frame: Frame
+) -> ArgumentKind:
     """A contact is told from a frequency by being a name that no value bears."""
     if not isinstance(expression, syntax.Name):
         return "frequency"
@@ -95,10 +97,12 @@ def _kind(expression: syntax.Expression, kinds: list[ArgumentKind], network: Net
 
 def _argument(
     expression: syntax.Expression, kind: ArgumentKind, network: Network, frame: Frame
-) -> tuple[str | float, str]:  # fmt: skip
+) -> tuple[str | float, str]:
     evaluator = frame.evaluator
     if kind == "frequency":
-        hertz = evaluator.positive(expression, frame.scope, units.HERTZ, "a reference frequency", zero=True).nominal
+        hertz = evaluator.positive(
+            expression, frame.scope, units.HERTZ, "a reference frequency", zero=True
+        ).nominal
         return hertz, units.show(hertz, "Hz", 12)
     if kind == "band":
         band = evaluator.positive(expression, frame.scope, units.NONE, "a band").nominal
@@ -132,7 +136,7 @@ def _drive(statement: syntax.Require, row: FigureName, network: Network, evaluat
 
 def _range(
     statement: syntax.Require, row: FigureName, frame: Frame
-) -> tuple[float | None, tuple[float, float] | None]:  # fmt: skip
+) -> tuple[float | None, tuple[float, float] | None]:
     evaluator = frame.evaluator
     at = span = None
     if statement.at is not None:
@@ -141,12 +145,20 @@ def _range(
         at = evaluator.positive(statement.at, frame.scope, units.HERTZ, "a frequency", zero=True).nominal
     if statement.span_from is not None and statement.span_to is not None:
         if row.domain == "edge":
-            evaluator.reject("figure-range", statement.span_from.span, figure=row.name, form=_RANGES[row.domain])
-        low = evaluator.positive(statement.span_from, frame.scope, units.HERTZ, "a frequency", zero=True).nominal
+            evaluator.reject(
+                "figure-range", statement.span_from.span, figure=row.name, form=_RANGES[row.domain]
+            )
+        low = evaluator.positive(
+            statement.span_from, frame.scope, units.HERTZ, "a frequency", zero=True
+        ).nominal
         high = evaluator.positive(statement.span_to, frame.scope, units.HERTZ, "a frequency").nominal
         if high <= low:
-            evaluator.reject("range-reversed", statement.span_to.span, low=units.show(low, "Hz"),
-                             high=units.show(high, "Hz"))  # fmt: skip
+            evaluator.reject(
+                "range-reversed",
+                statement.span_to.span,
+                low=units.show(low, "Hz"),
+                high=units.show(high, "Hz"),
+            )
         span = (low, high)
     if row.domain == "point" and at is None and span is None:
         evaluator.reject("figure-range", statement.figure.span, figure=row.name, form=_RANGES["point"])
@@ -161,7 +173,9 @@ _RANGES = {
 
 
 def _unit(figure: FigureCall, row: FigureName, network: Network, drive: str | None) -> str:
-    reading = next((r for r in network.readings if row.required[0] == "reading" and r.name == figure.arguments[0]), None)
+    reading = next(
+        (r for r in network.readings if row.required[0] == "reading" and r.name == figure.arguments[0]), None
+    )
     name = drive or network.default_drive
     drive_unit = next((d.unit for d in network.drives if d.name == name), "V")
     contacts = {contact.name for contact in network.contacts}
@@ -173,5 +187,7 @@ def _unit(figure: FigureCall, row: FigureName, network: Network, drive: str | No
 
 def _text(statement: syntax.Require, evaluator: Evaluator) -> str:
     """The requirement as written, on one line."""
-    text = evaluator.collector.sources.get(statement.span.path, "")[statement.figure.span.start : statement.span.end]
+    text = evaluator.collector.sources.get(statement.span.path, "")[
+        statement.figure.span.start : statement.span.end
+    ]
     return " ".join(re.sub(r"#[^\n]*", "", text).split())

@@ -1,6 +1,7 @@
 """Names for values: lets, the arguments of an assembly, and where each is evaluated.
 
-A scope settles its lets in order of dependence before anything uses them, so that a chain of thousands of lets needs
+A scope settles its lets in order of dependence before anything uses them, so that a chain of thousands of
+lets needs
 no deep recursion and a circle is found and named. What failed once is remembered and not reported again.
 """
 
@@ -65,7 +66,9 @@ class Scope:
             yield from scope.lets
             scope = scope.parent
 
-    def settle(self, evaluate: Callable[[Binding, Scope], Quantity], circle: Callable[[list[Binding]], None]) -> None:
+    def settle(
+        self, evaluate: Callable[[Binding, Scope], Quantity], circle: Callable[[list[Binding]], None]
+    ) -> None:
         """Work out every let. `evaluate` raises Rejected for a wrong one; `circle` is told of each circle
         once."""
         uses = {name: names_in(binding.expression) for name, binding in self.lets.items()}
@@ -135,13 +138,19 @@ def children(node: object) -> Iterable[object]:
 def nearest(name: str, known: Iterable[str]) -> str:
     """What a message adds after an unknown name: the nearest known one, else what there is to choose from."""
     choices = sorted(set(known))
-    close = difflib.get_close_matches(name, choices, 1, 0.6)
-    if not close:
-        close = [choice for choice in choices if choice.lower() == name.lower()]
-    if close:
-        return f"did you mean {close[0]}?"
     if not choices:
         return "there are none"
+    close = [choice for choice in choices if choice.lower() == name.lower()]
+    if not close:
+        # Comparing is slow; with many names only those of about the same length are looked at.
+        likely = [c for c in choices if abs(len(c) - len(name)) <= 3] if len(choices) > MANY else choices
+        close = difflib.get_close_matches(name, likely[:MANY], 1, 0.6)
+    if close:
+        return f"did you mean {close[0]}?"
     if len(choices) <= 8:
         return "known: " + ", ".join(choices)
     return "check the spelling; names are case-sensitive"
+
+
+MANY = 1000
+"""Names that are compared with an unknown one, at most."""

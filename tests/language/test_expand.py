@@ -109,8 +109,10 @@ def test_wire_in_a_branch_is_an_inductor() -> None:
 
 
 def test_qualifiers() -> None:
-    text = ("branch t: a to b = 9 pF ± 2 % with k = 2 trim 5 pF to 45 pF rated 500 V rms and 250 mW "
-            "drift 25 ppm/K and -0.5 ppm/V loss 0.001 as head")  # fmt: skip
+    text = (
+        "branch t: a to b = 9 pF ± 2 % with k = 2 trim 5 pF to 45 pF rated 500 V rms and 250 mW "
+        "drift 25 ppm/K and -0.5 ppm/V loss 0.001 as head"
+    )
     (part,) = network(text).parts
     assert isinstance(part, Capacitor)
     assert part.name == "t.head"
@@ -200,9 +202,9 @@ def test_every_wrong_member_of_a_network_is_reported() -> None:
 
 def test_source_networks_and_sides() -> None:
     n = network("source s: a to ground = 5 V behind 2 Ω -- 40 nH\nbranch t: a to ground = 1 MΩ")
-    r, l, source, t = n.parts
+    r, inductor, source, t = n.parts
     assert [p.side for p in n.parts] == ["test", "test", "test", "chain"]
-    assert [[n.nodes[i] for i in p.nodes] for p in (r, l, source)] == [
+    assert [[n.nodes[i] for i in p.nodes] for p in (r, inductor, source)] == [
         ["a", "s.1"],
         ["s.1", "s.emf"],
         ["s.emf", "ground"],
@@ -220,8 +222,10 @@ def test_current_source_is_shunted() -> None:
 
 
 def test_under_test_splits() -> None:
-    n = network("under test { source s: a to ground = 1 V behind 1 Ω; branch p: a to ground = 1 pF }\n"
-                "contact touch: a to ground\nbranch q: a to ground = 1 MΩ")  # fmt: skip
+    n = network(
+        "under test { source s: a to ground = 1 V behind 1 Ω; branch p: a to ground = 1 pF }\n"
+        "contact touch: a to ground\nbranch q: a to ground = 1 MΩ"
+    )
     assert {p.name: p.side for p in n.parts} == {"s": "test", "s.R": "test", "p.C": "test", "q.R": "chain"}
     assert [c.name for c in n.contacts] == ["touch"]
     assert codes("under test { branch p: a to ground = 1 pF }\n" + SOURCE) == [("source-outside", "s")]
@@ -283,7 +287,8 @@ def test_impedance_and_velocity() -> None:
 def test_attenuation_gives_the_skin_effect() -> None:
     # The telegraph equations: γ² = Z' Y'; 0.12 dB/m at 100 MHz, dielectric loss and resistance counted.
     part = cable(
-        "impedance 50 Ω; velocity 0.66; resistance 30 mΩ/m; conductance 1 nS/m; attenuation 0.12 dB/m at 100 MHz"
+        "impedance 50 Ω; velocity 0.66; resistance 30 mΩ/m; conductance 1 nS/m; "
+        "attenuation 0.12 dB/m at 100 MHz"
     )
     assert part.skin is not None
     rk, fk = part.skin
@@ -306,8 +311,10 @@ def test_attenuation_with_a_lossy_dielectric() -> None:
 
 
 def test_a_toleranced_field_is_one_random_quantity_in_every_cable() -> None:
-    n = network("stock k { impedance 50 Ω ± 2 %; velocity 0.66 }\n"
-                "cable c: a, ground to b, ground = 2 m of k\ncable d: b, ground to e, ground = 1 m of k")  # fmt: skip
+    n = network(
+        "stock k { impedance 50 Ω ± 2 %; velocity 0.66 }\n"
+        "cable c: a, ground to b, ground = 2 m of k\ncable d: b, ground to e, ground = 1 m of k"
+    )
     for part in n.parts:
         assert isinstance(part, Cable)
         assert part.capacitance.formula is not None
@@ -319,8 +326,10 @@ def test_a_toleranced_field_is_one_random_quantity_in_every_cable() -> None:
 
 
 def test_every_wrong_field_is_reported() -> None:
-    found = codes("stock k { capcitance 1 pF/m; resistance 1 Ω/m; resistance 1 Ω/m; loss 1 s; velocity 2 }\n"
-                  "cable c: a, ground to b, ground = 1 m of k")  # fmt: skip
+    found = codes(
+        "stock k { capcitance 1 pF/m; resistance 1 Ω/m; resistance 1 Ω/m; loss 1 s; velocity 2 }\n"
+        "cable c: a, ground to b, ground = 1 m of k"
+    )
     assert [code for code, _ in found] == ["unknown-name", "field-twice", "wrong-dimension", "beyond-one"]
 
 
@@ -328,8 +337,10 @@ def test_every_wrong_field_is_reported() -> None:
 
 
 def test_amplifier_networks_are_noiseless_parts() -> None:
-    n = network("amplifier u: a, b to c, ground { gain 2; poles 3 GHz, 5 GHz q 0.6; zeros 1 GHz; input 1 MΩ ∥ 1 pF; "
-                "output 50 Ω -- 1 nH; noise 4 nV/√Hz; common_mode 80 dB at 1 kHz }\nbranch t: a to b = 1 Ω")  # fmt: skip
+    n = network(
+        "amplifier u: a, b to c, ground { gain 2; poles 3 GHz, 5 GHz q 0.6; zeros 1 GHz; input 1 MΩ ∥ 1 pF; "
+        "output 50 Ω -- 1 nH; noise 4 nV/√Hz; common_mode 80 dB at 1 kHz }\nbranch t: a to b = 1 Ω"
+    )
     u = n.part("u")
     assert isinstance(u, Amplifier)
     assert u.poles == ((3e9, None), (5e9, 0.6))
@@ -365,12 +376,14 @@ def test_sweep_edge_temperature() -> None:
 
 
 def test_requirements() -> None:
-    n = network(SOURCE + "reading m: a to ground\nlet top = 3 %\n"
-                "require a1: gain(m, s) at 0 Hz = 1 ± 1.5 %\n"
-                "require a2: flatness(m, 10 kHz) from 1 Hz to 2 MHz <= top   # ripple\n"
-                "require a3: gain(m) at 1 MHz >= -3 dB\n"
-                "require a4: settling(m, 2 %) <= 4 ns\n"
-                "require a5: phase(m) with s at 1 kHz = 0 ° ± 5 °")  # fmt: skip
+    n = network(
+        SOURCE + "reading m: a to ground\nlet top = 3 %\n"
+        "require a1: gain(m, s) at 0 Hz = 1 ± 1.5 %\n"
+        "require a2: flatness(m, 10 kHz) from 1 Hz to 2 MHz <= top   # ripple\n"
+        "require a3: gain(m) at 1 MHz >= -3 dB\n"
+        "require a4: settling(m, 2 %) <= 4 ns\n"
+        "require a5: phase(m) with s at 1 kHz = 0 ° ± 5 °"
+    )
     a1, a2, a3, a4, a5 = n.requirements
     assert (a1.figure.text, a1.at, a1.relation, a1.limit, a1.tolerance, a1.unit) == (
         "gain(m, s)",
@@ -420,7 +433,8 @@ def test_a_gain_in_amperes_per_volt() -> None:
 
 def test_the_order_of_lines_changes_nothing_but_numbers_of_nodes() -> None:
     lines = ["let r = 2 * q", "let q = 1 kΩ ± 1 %", SOURCE.strip(), "branch t: a to b = r -- 1 nH",
-             "branch u: b to ground = 2 nH", "coupling k: t with u = 0.5", "reading m: t.1 to ground"]  # fmt: skip
+             "branch u: b to ground = 2 nH", "coupling k: t with u = 0.5", "reading m: t.1 to ground",
+             ]  # fmt: skip
 
     def described(n: Network) -> set[object]:
         return {(p.name, p.kind, tuple(n.nodes[i] for i in p.nodes), p.side) for p in n.parts}

@@ -55,7 +55,9 @@ def described(n: Network, renamed: tuple[str, str] = ("", "")) -> set[tuple[obje
 
 def test_a_place_equals_its_statements_written_out() -> None:
     used = network(SECTION + SOURCE + "place p: section(tip to low with ground; r = 5 MΩ)")
-    written = network(SOURCE + "branch body: tip to low = 5 MΩ ∥ 2 nF\nbranch leak: low to ground = 0.75 pF -- 1 Ω")
+    written = network(
+        SOURCE + "branch body: tip to low = 5 MΩ ∥ 2 nF\nbranch leak: low to ground = 0.75 pF -- 1 Ω"
+    )
     assert described(used, ("p.", "")) == described(written)
 
 
@@ -66,9 +68,13 @@ def test_a_chain_of_one_equals_a_place() -> None:
 
 
 def test_sections_join_right_to_left() -> None:
-    n = network(SECTION + SOURCE + "chain c: 3 of section(tip to low with ground; r = 5 MΩ)\n"
-                "reading m: c.2.bottom to c.3.top\nreading q: c.3.bottom to ground")  # fmt: skip
-    ends = {p.name: [n.nodes[i] for i in p.nodes] for p in n.parts if ".body." in p.name and p.kind == "resistor"}
+    n = network(
+        SECTION + SOURCE + "chain c: 3 of section(tip to low with ground; r = 5 MΩ)\n"
+        "reading m: c.2.bottom to c.3.top\nreading q: c.3.bottom to ground"
+    )
+    ends = {
+        p.name: [n.nodes[i] for i in p.nodes] for p in n.parts if ".body." in p.name and p.kind == "resistor"
+    }
     assert ends == {
         "c.1.body.R": ["tip", "c.1.bottom"],
         "c.2.body.R": ["c.1.bottom", "c.2.bottom"],
@@ -100,7 +106,8 @@ def test_a_toleranced_argument_is_drawn_once_per_section() -> None:
 def test_nested_assemblies_see_the_file_and_not_their_user() -> None:
     text = """let r = 7 Ω
     assembly inner(p to q) { branch b: p to q = r }
-    assembly outer(p to q; r) { place i: inner(p to mid); branch b: mid to q = r; let twice = 2 * r; branch d: p to q = twice }
+    assembly outer(p to q; r) { place i: inner(p to mid); branch b: mid to q = r; let twice = 2 * r
+      branch d: p to q = twice }
     place o: outer(a to ground; r = 1 Ω)
     """
     n = network(text)
@@ -141,7 +148,9 @@ require r1: gain(m) at 1 Hz <= 1
 
 
 def test_a_case_equals_the_file_edited_by_hand() -> None:
-    case = BASE + """case x {
+    case = (
+        BASE
+        + """case x {
       let l = 12 mm
       branch tip: a to b = 2 MΩ ∥ 1 pF
       source s: a to ground = 1 V
@@ -150,6 +159,7 @@ def test_a_case_equals_the_file_edited_by_hand() -> None:
       sweep 1 Hz to 2 Hz, 3 per decade
       require r1: gain(m) at 1 Hz <= 2
     }"""
+    )
     edited = """let l = 12 mm
     under test { source s: a to ground = 1 V }
     branch tip: a to b = 2 MΩ ∥ 1 pF
@@ -174,11 +184,15 @@ def test_case_nominal_holds_requirements_for_itself() -> None:
 
 
 def test_arguments_of_places_in_a_case() -> None:
-    text = SECTION + SOURCE + """place p: section(tip to low with ground; r = 5 MΩ)
+    text = (
+        SECTION
+        + SOURCE
+        + """place p: section(tip to low with ground; r = 5 MΩ)
     chain c: 2 of section(tip to low with ground; r = 5 MΩ)
     case x { let p.r = 6 MΩ ± 1 %; let c.2.stray = 1 pF; let c.c = 3 nF }
     case wrong { let p.rr = 6 MΩ }
     """
+    )
     n = network(text, "x")
     assert n.part("p.body.R").value.nominal == 6e6  # type: ignore[attr-defined]
     assert set(n.part("p.body.R").value.formula.randoms()) == {"p.r"}  # type: ignore[attr-defined]
@@ -201,7 +215,10 @@ def test_values_from_outside() -> None:
     [
         (BASE + "case x { omit led }", "unknown-name"),
         (BASE + "case x { let l = 10 mm; let l = 20 mm }", "duplicate-name"),
-        (BASE + "case x { sweep 1 Hz to 2 Hz, 3 per decade; sweep 1 Hz to 3 Hz, 3 per decade }", "given-twice"),
+        (
+            BASE + "case x { sweep 1 Hz to 2 Hz, 3 per decade; sweep 1 Hz to 3 Hz, 3 per decade }",
+            "given-twice",
+        ),
         (SECTION + "place p: section(a to b; r = 1 Ω)", "wrong-nodes-of-use"),
         (SECTION + "place p: section(a to b with ground)", "argument-missing"),
         (SECTION + "place p: section(a to b with ground; r = 1 Ω, q = 2)", "unknown-name"),
@@ -226,7 +243,10 @@ def test_mistakes(text: str, code: str) -> None:
         "assembly x(p to q) { branch b: p to q = 1 Ω }\nassembly y(p to q; n) { chain c: n of x(p to q) }\n"
         "chain c: 1000 of y(a to ground; n = 1000)",
         "assembly x0(p to q) { }\n"
-        + "".join(f"assembly x{i}(p to q) {{ place u: x{i - 1}(p to q); place v: x{i - 1}(p to q) }}\n" for i in range(1, 40))
+        + "".join(
+            f"assembly x{i}(p to q) {{ place u: x{i - 1}(p to q); place v: x{i - 1}(p to q) }}\n"
+            for i in range(1, 40)
+        )
         + "place p: x39(a to ground)",
     ],
 )
@@ -241,7 +261,8 @@ def test_recursion_of_assemblies() -> None:
 
 def test_a_thousand_flat_sections() -> None:
     text = SOURCE + "".join(
-        f"branch a{i}: n{i} to m{i} = 10 Ω\nbranch b{i}: m{i} to n{i + 1} = 2 nH ± 1 %\nbranch c{i}: n{i + 1} to ground = 1 pF\n"
+        f"branch a{i}: n{i} to m{i} = 10 Ω\nbranch b{i}: m{i} to n{i + 1} = 2 nH ± 1 %\n"
+        f"branch c{i}: n{i + 1} to ground = 1 pF\n"
         f"branch d{i}: n{i + 1} to ground = 1 GΩ rated 5 V\nbranch e{i}: n{i} to n{i + 1} = 1 fF\n"
         for i in range(1000)
     )
@@ -253,7 +274,9 @@ def test_a_thousand_flat_sections() -> None:
 
 def test_includes_share_definitions(tmp_path: Path) -> None:
     (tmp_path / "parts").mkdir()
-    (tmp_path / "parts" / "shared.nodal").write_text('nodal 1\ntitle "Shared"\ninclude "more.nodal"\n' + SECTION)
+    (tmp_path / "parts" / "shared.nodal").write_text(
+        'nodal 1\ntitle "Shared"\ninclude "more.nodal"\n' + SECTION
+    )
     (tmp_path / "parts" / "more.nodal").write_text("nodal 1\nlet r_all = 5 MΩ\n")
     text = 'include "parts/shared.nodal"\ninclude "parts/more.nodal"\n' + SOURCE
     text += "place p: section(tip to ground with ground; r = r_all)"
@@ -285,4 +308,3 @@ def test_include_loops(tmp_path: Path) -> None:
     (tmp_path / "b.nodal").write_text('nodal 1\ninclude "a.nodal"\n')
     assert codes('include "a.nodal"', path=str(tmp_path / "main.nodal")) == ["include-loop"]
     assert codes('include "main.nodal"', path=str(tmp_path / "main.nodal")) == ["include-loop"]
-

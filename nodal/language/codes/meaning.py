@@ -12,9 +12,9 @@ MEANING: tuple[Code, ...] = (
         "error",
         "there is no {what} \"{unknown}\"",
         "{hint}",
-        "A name is used that nothing declares. Names are case-sensitive; nodes are one namespace, "
-        "everything declared is another. Inside an assembly only its own names, its parameters and "
-        "the values of the file are known.",
+        "A name is used that nothing declares. Names are case-sensitive; nodes "
+        "are one namespace, everything declared is another. Inside an assembly "
+        "only its own names, its parameters and the values of the file are known.",
         (
             _FRAME + "branch t: a to ground = r_tip",
             _FRAME + "cable c: a, ground to b, ground = 1 m of coax",
@@ -30,9 +30,10 @@ MEANING: tuple[Code, ...] = (
         "error",
         "the name \"{duplicate}\" is declared twice",
         "choose another name for one of them",
-        "Everything that is declared shares one namespace: values, sources, branches, stocks, "
-        "cables, readings and so on. In a case a statement that bears an existing name replaces it, "
-        "once a case. Parts of one branch need different names too.",
+        "Everything that is declared shares one namespace: values, sources, "
+        "branches, stocks, cables, readings and so on. In a case a statement that "
+        "bears an existing name replaces it, once a case. Parts of one branch "
+        "need different names too.",
         (
             _FRAME + "let x = 1 Ω\nbranch x: a to ground = x",
             _FRAME + "branch t: a to ground = 1 Ω as top ∥ 2 Ω as top",
@@ -43,7 +44,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "this value refers to itself: {names}",
         "give one of them a value that does not depend on the others",
-        "A `let` may use other lets in any order, but not itself, directly or through others.",
+        "A `let` may use other lets in any order, but not itself, directly or "
+        "through others.",
         (
             _FRAME + "let p = 2 * q\nlet q = p\nbranch t: a to ground = p * 1 Ω",
         ),
@@ -52,9 +54,10 @@ MEANING: tuple[Code, ...] = (
         "dotted-let",
         "error",
         "\"{name_}\" has a dot: arguments of a place are set in a case",
-        "write `case NAME {{ let {name_} = VALUE }}`, or give the argument where the assembly is used",
-        "`let place.argument = VALUE` overrides an argument that was given where the assembly is "
-        "used, in one case.",
+        "write `case NAME {{ let {name_} = VALUE }}`, or give the argument where "
+        "the assembly is used",
+        "`let place.argument = VALUE` overrides an argument that was given where "
+        "the assembly is used, in one case.",
         (
             _FRAME + "let n.skew = 1 %",
         ),
@@ -64,9 +67,10 @@ MEANING: tuple[Code, ...] = (
         "error",
         "expected {expected}, found {found}",
         "",
-        "Arithmetic and every place of a value are checked for dimensions: only like quantities "
-        "add, a branch takes resistances (Ω), conductances (S), capacitances (F) and inductances "
-        "(H). A percentage is a plain number, and a plain number has no unit.",
+        "Arithmetic and every place of a value are checked for dimensions: only "
+        "like quantities add, a branch takes resistances (Ω), conductances (S), "
+        "capacitances (F) and inductances (H). A percentage is a plain number, "
+        "and a plain number has no unit.",
         (
             _FRAME + "branch t: a to ground = 1 kΩ + 1 pF",
             _FRAME + "branch t: a to ground = 3 V",
@@ -80,8 +84,9 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{unit} takes no part in arithmetic",
         "write the number itself, or a ratio or kelvins in place of it",
-        "Decibels and degrees Celsius are scales, not amounts: adding or multiplying them means "
-        "different things to different people, so the language does neither.",
+        "Decibels and degrees Celsius are scales, not amounts: adding or "
+        "multiplying them means different things to different people, so the "
+        "language does neither.",
         (
             _FRAME + "temperature 20 °C + 3 °C",
             _FRAME + "let g = 2 * 3 dB\nbranch t: a to ground = g * 1 Ω",
@@ -119,12 +124,23 @@ MEANING: tuple[Code, ...] = (
         ),
     ),
     Code(
+        "underflow",
+        "error",
+        "this number is too small to compute with",
+        "write 0 if that is meant",
+        "The number is not zero but below the smallest floating-point number, "
+        "about 5e-324 in SI units.",
+        (
+            _FRAME + "branch t: a to ground = 1e-400 Ω",
+        ),
+    ),
+    Code(
         "formula-too-long",
         "error",
         "written out, this value takes more than {limit} operations on toleranced values",
         "remove tolerances from values that only repeat others",
-        "Lets that each use another several times grow without bound when they are written out, as "
-        "they have to be where tolerances take part.",
+        "Lets that each use another several times grow without bound when they "
+        "are written out, as they have to be where tolerances take part.",
         (
             _FRAME + "let x0 = 1 Ω ± 1 %\n"
             + "".join(f"let x{i} = x{i - 1} + x{i - 1}\n" for i in range(1, 20))
@@ -136,8 +152,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{what} is {value}; it has to be {bound}",
         "",
-        "Values of parts, lengths, times and the like are not negative: a passive part below zero "
-        "ohm, farad or henry is a mistake here.",
+        "Values of parts, lengths, times and the like are not negative: a passive "
+        "part below zero ohm, farad or henry is a mistake here.",
         (
             _FRAME + "branch t: a to ground = -1 Ω",
             _FRAME + "branch t: a to ground = 1 pF - 2 pF",
@@ -150,9 +166,11 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{what} is above 1",
         "write a fraction between 0 and 1",
-        "The velocity of a cable is a fraction of that of light; the shield's coupling is 1 at most.",
+        "The velocity of a cable is a fraction of that of light; the shield's "
+        "coupling is 1 at most.",
         (
-            _FRAME + "stock k { impedance 50 Ω; velocity 1.2 }\ncable c: a, ground to b, ground = 1 m of k",
+            _FRAME + "stock k { impedance 50 Ω; velocity 1.2 }\ncable c: a, ground to b, "
+            "ground = 1 m of k",
         ),
     ),
     Code(
@@ -160,8 +178,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{sign} joins parts, and cannot stand inside arithmetic or a value",
         "multiply the values of the parts instead",
-        "`∥` and `--` make networks of parts. A network is no quantity: it cannot be multiplied, "
-        "added, named by `let` or given to a function.",
+        "`∥` and `--` make networks of parts. A network is no quantity: it cannot "
+        "be multiplied, added, named by `let` or given to a function.",
         (
             _FRAME + "branch t: a to ground = 2 * (4 MΩ -- 1 pF)",
             _FRAME + "let z = 1 Ω ∥ 1 pF\nbranch t: a to ground = z",
@@ -172,8 +190,9 @@ MEANING: tuple[Code, ...] = (
         "error",
         "`{word}` qualifies a whole value and cannot stand inside arithmetic",
         "give the qualified value a name with `let`, and use the name",
-        "Tolerance, trim, ratings, drift, loss and names belong to a value as it stands at its "
-        "place. A toleranced `let` can take part in arithmetic: its spread goes along.",
+        "Tolerance, trim, ratings, drift, loss and names belong to a value as it "
+        "stands at its place. A toleranced `let` can take part in arithmetic: its "
+        "spread goes along.",
         (
             _FRAME + "branch t: a to ground = 2 * (1 Ω ± 1 %)",
         ),
@@ -183,8 +202,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "arithmetic would lose what \"{text}\" is qualified by besides ±",
         "qualify the result instead",
-        "A `let` with trim, ratings, drift or loss keeps them where its name stands alone. What "
-        "they would be after arithmetic is not defined.",
+        "A `let` with trim, ratings, drift or loss keeps them where its name "
+        "stands alone. What they would be after arithmetic is not defined.",
         (
             _FRAME + "let x = 1 Ω rated 5 V\nbranch t: a to ground = 2 * x",
         ),
@@ -205,9 +224,10 @@ MEANING: tuple[Code, ...] = (
         "error",
         "`{word}` cannot qualify this value",
         "",
-        "Which qualifiers a value takes depends on where it stands: a part takes all, `loss` only a "
-        "capacitor, a `let` all but `as`; lengths, fields, arguments and amplitudes take `±`, and a "
-        "sweep or a limit none (`=` in a requirement takes `±`).",
+        "Which qualifiers a value takes depends on where it stands: a part takes "
+        "all, `loss` only a capacitor, a `let` all but `as`; lengths, fields, "
+        "arguments and amplitudes take `±`, and a sweep or a limit none (`=` in a "
+        "requirement takes `±`).",
         (
             _FRAME + "branch t: a to ground = 1 Ω loss 0.1",
             _FRAME + "let x = 1 Ω as top\nbranch t: a to ground = x",
@@ -270,8 +290,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "the {label} is {length}, less than five diameters of the wire ({limit})",
         "the formulas hold for thin wire: write the inductance itself",
-        "The inductance formulas of wire, rectangle and circle assume a wire that is thin against "
-        "its length or the loop.",
+        "The inductance formulas of wire, rectangle and circle assume a wire that "
+        "is thin against its length or the loop.",
         (
             _FRAME + "branch t: a to ground = wire(4 mm, 1 mm)",
         ),
@@ -279,10 +299,12 @@ MEANING: tuple[Code, ...] = (
     Code(
         "inner-node",
         "error",
-        "\"{node}\" is a node inside a branch or an assembly: it can be read, not connected to",
+        "\"{node}\" is a node inside a branch or an assembly: it can be read, not "
+        "connected to",
         "split the branch in two and name the node, or read it with `reading`",
-        "Nodes inside, such as `tip.1` or `column.7.bottom`, are there to be looked at; connecting "
-        "to them would change what the branch or assembly says it is.",
+        "Nodes inside, such as `tip.1` or `column.7.bottom`, are there to be "
+        "looked at; connecting to them would change what the branch or assembly "
+        "says it is.",
         (
             _FRAME + "branch t: a to ground = 1 Ω -- 1 pF\nbranch u: t.1 to ground = 1 Ω",
         ),
@@ -292,8 +314,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "there is no value or argument \"{unknown}\" to set",
         "{hint}",
-        "Values can be set from outside by the names that `let` gives them, and arguments of places "
-        "as place.argument.",
+        "Values can be set from outside by the names that `let` gives them, and "
+        "arguments of places as place.argument.",
     ),
     Code(
         "override-form",
@@ -307,8 +329,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "the source \"{source}\" stands outside `under test`",
         "move it into the braces of `under test`",
-        "Where a file says what is under test, that is the whole circuit before it is touched, its "
-        "sources included.",
+        "Where a file says what is under test, that is the whole circuit before "
+        "it is touched, its sources included.",
         (
             _FRAME + "under test { branch u: a to ground = 1 kΩ }",
         ),
@@ -318,8 +340,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "a source in {unit} stands `{right}` a network, not `{wrong}`",
         "write `{right}`",
-        "A voltage source has its impedance in series (`behind`), a current source in parallel "
-        "(`shunted by`).",
+        "A voltage source has its impedance in series (`behind`), a current "
+        "source in parallel (`shunted by`).",
         (
             _FRAME + "source i: b to ground = 1 A behind 50 Ω",
         ),
@@ -339,8 +361,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "the source \"{source}\" is in {unit}, the others of this drive in {other}",
         "make two drives",
-        "Results are per unit of a drive, so the sources that move together must all be in volts or "
-        "all in amperes.",
+        "Results are per unit of a drive, so the sources that move together must "
+        "all be in volts or all in amperes.",
         (
             _FRAME + "source i: a to ground = 1 A\ndrive d: s by 1, i by 1",
         ),
@@ -350,10 +372,11 @@ MEANING: tuple[Code, ...] = (
         "error",
         "\"{word}\" is no inductor and has none in it",
         "couple inductors: BRANCH.L",
-        "Magnetic coupling is between two inductors, named as parts (`tip.L`) or by a branch that "
-        "holds just one.",
+        "Magnetic coupling is between two inductors, named as parts (`tip.L`) or "
+        "by a branch that holds just one.",
         (
-            _FRAME + "branch t: a to ground = 1 Ω\nbranch u: a to ground = 1 nH\ncoupling k: t with u = 0.1",
+            _FRAME + "branch t: a to ground = 1 Ω\nbranch u: a to ground = 1 nH\ncoupling k: "
+            "t with u = 0.1",
         ),
     ),
     Code(
@@ -363,8 +386,8 @@ MEANING: tuple[Code, ...] = (
         "name the one you mean",
         "A branch can be named in a coupling only if it holds a single inductor.",
         (
-            _FRAME + "branch t: a to ground = 1 nH -- 2 nH\nbranch u: a to ground = 1 nH\ncoupling k: t with u "
-            "= 0.1",
+            _FRAME + "branch t: a to ground = 1 nH -- 2 nH\nbranch u: a to ground = 1 "
+            "nH\ncoupling k: t with u = 0.1",
         ),
     ),
     Code(
@@ -384,8 +407,8 @@ MEANING: tuple[Code, ...] = (
         "keep one of the couplings",
         "Two inductors have one mutual inductance.",
         (
-            _FRAME + "branch t: a to ground = 1 nH\nbranch u: a to ground = 1 nH\ncoupling k: t with u = "
-            "0.1\ncoupling m: u with t = 0.2",
+            _FRAME + "branch t: a to ground = 1 nH\nbranch u: a to ground = 1 nH\ncoupling "
+            "k: t with u = 0.1\ncoupling m: u with t = 0.2",
         ),
     ),
     Code(
@@ -393,10 +416,11 @@ MEANING: tuple[Code, ...] = (
         "error",
         "the coupling is {found}, and cannot be beyond {limit}",
         "",
-        "The mutual inductance of two coils is at most the geometric mean of their inductances: a "
-        "coefficient of 1.",
+        "The mutual inductance of two coils is at most the geometric mean of "
+        "their inductances: a coefficient of 1.",
         (
-            _FRAME + "branch t: a to ground = 1 nH\nbranch u: a to ground = 1 nH\ncoupling k: t with u = 1.1",
+            _FRAME + "branch t: a to ground = 1 nH\nbranch u: a to ground = 1 nH\ncoupling "
+            "k: t with u = 1.1",
         ),
     ),
     Code(
@@ -406,7 +430,8 @@ MEANING: tuple[Code, ...] = (
         "keep one of them",
         "Each field of a stock or an amplifier may be given once.",
         (
-            _FRAME + "stock k { resistance 1 Ω/m; resistance 2 Ω/m }\ncable c: a, ground to b, ground = 1 m of k",
+            _FRAME + "stock k { resistance 1 Ω/m; resistance 2 Ω/m }\ncable c: a, ground to "
+            "b, ground = 1 m of k",
         ),
     ),
     Code(
@@ -414,11 +439,12 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{first} and {second} cannot both be given",
         "keep one of them",
-        "Impedance and velocity give the inductance and the capacitance; an attenuation gives the "
-        "skin effect; an amplifier has a gain or a transconductance.",
+        "Impedance and velocity give the inductance and the capacitance; an "
+        "attenuation gives the skin effect; an amplifier has a gain or a "
+        "transconductance.",
         (
-            _FRAME + "stock k { impedance 50 Ω; velocity 0.7; inductance 250 nH/m }\ncable c: a, ground to b, "
-            "ground = 1 m of k",
+            _FRAME + "stock k { impedance 50 Ω; velocity 0.7; inductance 250 nH/m }\ncable "
+            "c: a, ground to b, ground = 1 m of k",
         ),
     ),
     Code(
@@ -426,7 +452,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{given} needs {missing}",
         "",
-        "Impedance and velocity belong together; an amplifier needs a gain or a transconductance.",
+        "Impedance and velocity belong together; an amplifier needs a gain or a "
+        "transconductance.",
         (
             _FRAME + "stock k { impedance 50 Ω }\ncable c: a, ground to b, ground = 1 m of k",
             _FRAME + "amplifier u: a, ground to b, ground { delay 1 ns }",
@@ -437,8 +464,9 @@ MEANING: tuple[Code, ...] = (
         "error",
         "this field is not written as it should be",
         "write {form}",
-        "Most fields have one value; skin, attenuation and common_mode have a value and the "
-        "frequency it holds at, poles and zeros a list of frequencies, each with `q` for a pair.",
+        "Most fields have one value; skin, attenuation and common_mode have a "
+        "value and the frequency it holds at, poles and zeros a list of "
+        "frequencies, each with `q` for a pair.",
         (
             _FRAME + "stock k { skin 1 Ω/m }\ncable c: a, ground to b, ground = 1 m of k",
         ),
@@ -448,23 +476,26 @@ MEANING: tuple[Code, ...] = (
         "error",
         "the other losses alone attenuate by {least} at this frequency",
         "give a larger attenuation, or less resistance, conductance or loss",
-        "The skin effect is worked out such that the whole attenuation at the frequency is the one "
-        "given; it can only add to the other losses.",
+        "The skin effect is worked out such that the whole attenuation at the "
+        "frequency is the one given; it can only add to the other losses.",
         (
-            _FRAME + "stock k { impedance 50 Ω; velocity 0.7; resistance 10 Ω/m; attenuation 0.1 dB/m at 1 "
-            "MHz }\ncable c: a, ground to b, ground = 1 m of k",
+            _FRAME + "stock k { impedance 50 Ω; velocity 0.7; resistance 10 Ω/m; "
+            "attenuation 0.1 dB/m at 1 MHz }\ncable c: a, ground to b, ground = 1 "
+            "m of k",
         ),
     ),
     Code(
         "shield-without-fields",
         "error",
-        "the shield ends on different nodes, {near} and {far}, but the stock \"{stock}\" says nothing "
-        "about a shield",
-        "give the stock shield_resistance or shield_inductance, or end the shield on one node",
-        "A cable whose shield joins two nodes is a conductor between them. Without its resistance "
-        "or inductance it would be a short.",
+        "the shield ends on different nodes, {near} and {far}, but the stock "
+        "\"{stock}\" says nothing about a shield",
+        "give the stock shield_resistance or shield_inductance, or end the shield "
+        "on one node",
+        "A cable whose shield joins two nodes is a conductor between them. "
+        "Without its resistance or inductance it would be a short.",
         (
-            _FRAME + "stock k { capacitance 1 pF/m; resistance 1 Ω/m }\ncable c: a, ground to b, e = 1 m of k",
+            _FRAME + "stock k { capacitance 1 pF/m; resistance 1 Ω/m }\ncable c: a, ground "
+            "to b, e = 1 m of k",
         ),
     ),
     Code(
@@ -472,7 +503,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "more zeros than poles",
         "give as many poles as zeros",
-        "The gain of an amplifier cannot grow without bound with frequency. A pair counts as two.",
+        "The gain of an amplifier cannot grow without bound with frequency. A "
+        "pair counts as two.",
         (
             _FRAME + "amplifier u: a, ground to b, ground { gain 1; zeros 1 MHz }",
         ),
@@ -482,9 +514,10 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{kind} cannot stand {where}",
         "{fix}",
-        "Under test stand the parts of the circuit; in an assembly parts, values and uses of other "
-        "assemblies; in a case all but cases, includes and the title; `omit` only in a case; in "
-        "`case nominal` requirements only, because it is the file as it is.",
+        "Under test stand the parts of the circuit; in an assembly parts, values "
+        "and uses of other assemblies; in a case all but cases, includes and the "
+        "title; `omit` only in a case; in `case nominal` requirements only, "
+        "because it is the file as it is.",
         (
             _FRAME + "omit s",
             _FRAME + "assembly x(p to q) { reading m: p to q }",
@@ -497,8 +530,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "`{kind}` is given twice",
         "keep one of them",
-        "A design has one title, one sweep, one edge or step, and one temperature; a case may have "
-        "its own.",
+        "A design has one title, one sweep, one edge or step, and one "
+        "temperature; a case may have its own.",
         (
             _FRAME + "sweep 1 Hz to 2 Hz, 3 per decade\nsweep 1 Hz to 3 Hz, 3 per decade",
         ),
@@ -538,10 +571,11 @@ MEANING: tuple[Code, ...] = (
         "error",
         "the design has more than {limit} parts",
         "",
-        "The number of parts, places and sections of chains is limited. It is counted before "
-        "anything is built.",
+        "The number of parts, places and sections of chains is limited. It is "
+        "counted before anything is built.",
         (
-            _FRAME + "assembly x(p to q) { branch r: p to q = 1 Ω }\nchain c: 1000000000 of x(a to ground)",
+            _FRAME + "assembly x(p to q) { branch r: p to q = 1 Ω }\nchain c: 1000000000 of "
+            "x(a to ground)",
         ),
     ),
     Code(
@@ -559,8 +593,9 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{figure} is not asked about in this way",
         "write {form}",
-        "Each figure takes certain arguments, in this order; what stands in brackets may be left "
-        "out. `nodal explain` of a figure's name is in the reference.",
+        "Each figure takes certain arguments, in this order; what stands in "
+        "brackets may be left out. `nodal explain` of a figure's name is in the "
+        "reference.",
         (
             _FRAME + "reading m: a to ground\nrequire w: gain() at 1 Hz >= 1",
         ),
@@ -580,8 +615,9 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{figure} takes {form}",
         "",
-        "Figures of one frequency need `at` or a range, over which their extreme counts; figures of "
-        "a range take one or the whole sweep; figures of an edge take neither.",
+        "Figures of one frequency need `at` or a range, over which their extreme "
+        "counts; figures of a range take one or the whole sweep; figures of an "
+        "edge take neither.",
         (
             _FRAME + "reading m: a to ground\nrequire w: gain(m) >= 1",
             _FRAME + "reading m: a to ground\nrequire w: bandwidth(m) at 1 Hz >= 1 Hz",
@@ -592,8 +628,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{figure} takes no drive",
         "leave `with` out",
-        "The impedance seen at a contact and the noise of a reading do not depend on which source "
-        "moves; rejection names its drives itself.",
+        "The impedance seen at a contact and the noise of a reading do not depend "
+        "on which source moves; rejection names its drives itself.",
         (
             _FRAME + "require w: impedance(s) with s at 1 Hz >= 1 Ω",
         ),
@@ -603,10 +639,11 @@ MEANING: tuple[Code, ...] = (
         "error",
         "several sources stand in the file, and nothing says which of them moves",
         "write `with DRIVE`, or declare a drive; there are: {names}",
-        "With several sources the first `drive` is the default; without any drive each requirement "
-        "says which one it is about.",
+        "With several sources the first `drive` is the default; without any drive "
+        "each requirement says which one it is about.",
         (
-            _FRAME + "source t: b to ground = 1 V\nreading m: a to ground\nrequire w: gain(m) at 1 Hz >= 1",
+            _FRAME + "source t: b to ground = 1 V\nreading m: a to ground\nrequire w: "
+            "gain(m) at 1 Hz >= 1",
         ),
     ),
     Code(
@@ -614,7 +651,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "\"{node}\" cannot be a node of an assembly's own",
         "write a plain name; ground is the same everywhere",
-        "The nodes in an assembly's parentheses are its own names for what it is connected to.",
+        "The nodes in an assembly's parentheses are its own names for what it is "
+        "connected to.",
         (
             _FRAME + "assembly x(ground to q) { branch r: ground to q = 1 Ω }",
         ),
@@ -624,8 +662,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{assembly} has {wanted} {where}; here are {found}",
         "",
-        "An assembly is used with as many nodes before `to`, after `to` and after `with` as it "
-        "declares.",
+        "An assembly is used with as many nodes before `to`, after `to` and after "
+        "`with` as it declares.",
         (
             _FRAME + "assembly x(p to q) { branch r: p to q = 1 Ω }\nplace u: x(a, b to ground)",
         ),
@@ -637,7 +675,8 @@ MEANING: tuple[Code, ...] = (
         "keep one of them",
         "Each parameter of an assembly takes one value.",
         (
-            _FRAME + "assembly x(p to q; v) { branch r: p to q = v }\nplace u: x(a to ground; v = 1 Ω, v = 2 Ω)",
+            _FRAME + "assembly x(p to q; v) { branch r: p to q = v }\nplace u: x(a to "
+            "ground; v = 1 Ω, v = 2 Ω)",
         ),
     ),
     Code(
@@ -687,11 +726,11 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{assembly} has {left} before `to` and {right} after it, and cannot be chained",
         "",
-        "In a chain the nodes after `to` are joined with those before `to` of the next section, so "
-        "there must be as many.",
+        "In a chain the nodes after `to` are joined with those before `to` of the "
+        "next section, so there must be as many.",
         (
-            _FRAME + "assembly x(p, q to r) { branch u: p to r = 1 Ω; branch v: q to r = 1 Ω }\nchain c: 2 of "
-            "x(a, b to ground)",
+            _FRAME + "assembly x(p, q to r) { branch u: p to r = 1 Ω; branch v: q to r = 1 "
+            "Ω }\nchain c: 2 of x(a, b to ground)",
         ),
     ),
     Code(
@@ -699,8 +738,9 @@ MEANING: tuple[Code, ...] = (
         "error",
         "\"{target}\" is outside {root}",
         "",
-        "Included files stay inside the repository, or the folder of the first file where that is "
-        "in none; symbolic links are followed before this is checked.",
+        "Included files stay inside the repository, or the folder of the first "
+        "file where that is in none; symbolic links are followed before this is "
+        "checked.",
         (
             _FRAME + "include \"../../../../../../../../../../../../../../../../../../etc/x.nodal\"",
         ),
