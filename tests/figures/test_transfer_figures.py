@@ -7,7 +7,7 @@ import math
 import mpmath
 import numpy as np
 import pytest
-from analytic import Analytic, call, close
+from support.analytic import Analytic, call, close
 
 from nodal.figures import evaluate, extreme
 from nodal.network import SweepGrid
