@@ -86,6 +86,11 @@ class Kernel:
             self._partial_backward[key] = chosen
         return self._partial_backward[key]
 
+    def backward_rest(self, unknowns: Iterable[int]) -> Backward:
+        """What `backward_to` leaves out; may run after it."""
+        done = {item[0] for item in self.backward_to(unknowns)}
+        return [item for item in self._backward if item[0] not in done]
+
     def solve(
         self, w: Sequence[Any], y: Sequence[Any], spare: Any, forward: Forward | None = None,
         backward: Backward | None = None,

@@ -80,9 +80,9 @@ class Pattern:
         outputs = _evaluate(self.system, s, NumpyArithmetic())
         return {term: outputs[f] for term, f in self.functions.items()}
 
-    def matrix(self, s: Complexes, values: dict[int, Any]) -> Complexes:
+    def matrix(self, s: Complexes, values: dict[int, Any], out: Complexes | None = None) -> Complexes:
         """Matrix entries, (n_entries, n_points), from s and the `function_values` there."""
-        entries: Complexes = np.empty((len(self.rows), len(s)), dtype=complex)
+        entries: Complexes = np.empty((len(self.rows), len(s)), dtype=complex) if out is None else out
         entries.real = self.entry_g[:, None]
         if s.real.any():
             entries.real += np.multiply.outer(self.entry_c, s.real)
@@ -136,21 +136,22 @@ class Pattern:
 
 
 class Giving:
-    """A x from every term's drop (cols·x), one product by s an equation, each summand off by up to eight roundings.
+    """A x from every term's drop (cols·x), one product by s an equation, each summand off by up to three roundings.
 
     They are off on purpose, each by its own number. Currents that cancel in an equation leave a remainder that is
     rounded, and sums like to come out as zero just where the remainder decides about the solution: a correction
-    computed from them would say that all is well. With these the correction shows what roundings can do.
+    computed from them would say that all is well. With these the correction shows what roundings can do. A second
+    correction needs numbers of another `stride` (2 or 3): with the same it would settle on the spoilt system.
     """
 
-    def __init__(self, pattern: Pattern, shares: Shares) -> None:
+    def __init__(self, pattern: Pattern, shares: Shares, stride: int) -> None:
         shape = pattern.size, len(pattern.g)
         g, c = pattern.g.tolist(), pattern.c.tolist()
-        start = np.random.default_rng(1).integers(0, 17, len(g)).tolist()
+        start = np.random.default_rng(stride).integers(0, 7, len(g)).tolist()
         met = [0] * len(g)
         spoilt: Shares = []
         for k, t, w in shares:
-            spoilt.append((k, t, w * (1 + ((start[t] + 5 * met[t]) % 17 - 8) * _EPSILON)))
+            spoilt.append((k, t, w * (1 + ((start[t] + stride * met[t]) % 7 - 3) * _EPSILON)))
             met[t] += 1
         self._constant = compressed([(k, t, w * g[t]) for k, t, w in spoilt if g[t]], shape)
         self._linear = compressed([(k, t, w * c[t]) for k, t, w in spoilt if c[t]], shape)

@@ -56,8 +56,13 @@ class Plan:
 
     @cached_property
     def giving(self) -> Giving:
-        """Sums for the quick check, equations where the kernel keeps right-hand sides."""
-        return Giving(self.pattern, self.pattern.shares_by(self.order.place))
+        """Sums for the first correction, equations where the kernel keeps right-hand sides."""
+        return Giving(self.pattern, self.pattern.shares_by(self.order.place), 3)
+
+    @cached_property
+    def giving_again(self) -> Giving:
+        """Sums for the second correction."""
+        return Giving(self.pattern, self.pattern.shares_by(self.order.place), 2)
 
     @cached_property
     def balance(self) -> Balance:

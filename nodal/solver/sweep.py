@@ -17,7 +17,7 @@ from numpy.typing import ArrayLike, NDArray
 from nodal.solver.arithmetic import MpArithmetic
 from nodal.solver.exact import Exact
 from nodal.solver.matrix import System
-from nodal.solver.pattern import Complexes, Floats, product
+from nodal.solver.pattern import Complexes, Floats, Giving, product
 from nodal.solver.plan import Plan, Singular, exact_order, generic, make_plan
 
 Source = Mapping[int, Any]
@@ -141,16 +141,19 @@ class _Run:
         rows = order.slots + len(pattern.g) + 4 * order.size
         per_block = int(np.clip(_BLOCK_BYTES // (16 * rows), *_BLOCK_POINTS))
         blocks = -(-len(points) // per_block)
+        scratch = _Scratch()
         # Divisions by zero and overflow end as infinite estimates, which send the point further down the ladder.
         with np.errstate(all="ignore"):
             for chosen in np.array_split(points, blocks):
-                block = _Block(plan, self.s[chosen])
+                block = _Block(plan, self.s[chosen], scratch)
                 for k, source in enumerate(self.sources):
                     at = self._source(source, chosen)
                     if careful:
                         results = block.careful(block.right_side(at), self.outputs, self.slopes)
                     else:
-                        results = [block.quick(at, self.outputs)]
+                        *result, first = block.quick(at, self.outputs)
+                        self.refined[chosen] |= (first > TOLERANCE).any(axis=0)
+                        results = [(result[0], result[1])]
                     for which, (values, error) in enumerate(results):
                         self._keep(which, k, chosen, values, error)
 
@@ -213,37 +216,68 @@ def _rounded(values: list[Any], errors: list[float], before: Complexes) -> tuple
     return result, errors
 
 
+class _Scratch:
+    """Arrays used again from block to block: fresh memory costs more than the arithmetic in it."""
+
+    def __init__(self) -> None:
+        self._kept: dict[str, Complexes] = {}
+
+    def take(self, name: str, rows: int, points: int) -> Complexes:
+        kept = self._kept.get(name)
+        if kept is None or kept.size < rows * points:
+            kept = self._kept[name] = np.empty(rows * points, dtype=complex)
+        return kept[: rows * points].reshape(rows, points)
+
+
 class _Block:
     """A(s) factored at a block of points."""
 
-    def __init__(self, plan: Plan, s: Complexes) -> None:
+    def __init__(self, plan: Plan, s: Complexes, scratch: _Scratch) -> None:
         self.plan, self.s = plan, s
         self.functions = plan.pattern.function_values(s)
-        entries = plan.pattern.matrix(s, self.functions)
-        fill = np.zeros((plan.order.slots - len(entries), len(s)), dtype=complex)
-        self.w = [*entries, *fill]
-        self.spare: Complexes = np.empty(len(s), dtype=complex)
+        self.scratch = scratch
+        slots = scratch.take("slots", plan.order.slots, len(s))
+        entries = len(plan.pattern.rows)
+        plan.pattern.matrix(s, self.functions, slots[:entries])
+        slots[entries:] = 0
+        self.w = list(slots)
+        self.spare = scratch.take("spare", 1, len(s))[0]
         plan.kernel.factor(self.w, self.spare)
 
-    def quick(self, source: Source, outputs: Sequence[Output]) -> tuple[Complexes, Floats]:
-        """One solution and one correction, the latter for the outputs only."""
+    def quick(self, source: Source, outputs: Sequence[Output]) -> tuple[Complexes, Floats, Floats]:
+        """One solution and one correction, the latter for the outputs only, one more where that does not settle them.
+
+        Returns (values, error, error of the first step).
+        """
         kernel, order = self.plan.kernel, self.plan.order
         places = {int(order.place[k]): v for k, v in source.items()}
-        x = np.zeros((order.size, len(self.s)), dtype=complex)
+        wanted = frozenset(k for o in outputs for k in o)
+        x = self.scratch.take("x", order.size, len(self.s))
+        x[:] = 0
         for place, value in places.items():
             x[place] = value
         kernel.solve(self.w, list(x), self.spare, kernel.forward_from(places))
-        drops = product(self.plan.pattern.taking, x)
-        correction = self.plan.giving.current(drops, self.s, self.functions)
-        np.negative(correction, correction)
-        for place, value in places.items():
-            correction[place] += value
-        kernel.solve(
-            self.w, list(correction), self.spare, backward=kernel.backward_to(k for o in outputs for k in o)
-        )
-        change = self._outputs(outputs, correction)
+        first = self._correction(self.plan.giving, places, product(self.plan.pattern.taking, x))
+        kernel.solve(self.w, list(first), self.spare, backward=kernel.backward_to(wanted))
+        change = self._outputs(outputs, first)
         values = self._outputs(outputs, x) + change
-        return values, _ratio(change, values)
+        error = _ratio(change, values)
+        if not (error > TOLERANCE).any():
+            return values, error, error
+        kernel.solve(self.w, list(first), self.spare, [], kernel.backward_rest(wanted))
+        second = self._correction(self.plan.giving_again, places, self._drops(x, first))
+        kernel.solve(self.w, list(second), self.spare, backward=kernel.backward_to(wanted))
+        change = self._outputs(outputs, second)
+        values = values + change
+        return values, _ratio(change, values), error
+
+    def _correction(self, giving: Giving, places: Mapping[int, Any], drops: Complexes) -> Complexes:
+        """Right-hand side less A x, from every term's drop."""
+        result = giving.current(drops, self.s, self.functions)
+        np.negative(result, result)
+        for place, value in places.items():
+            result[place] += value
+        return result
 
     def right_side(self, source: Source) -> Complexes:
         """Ordered as the kernel wants it."""
