@@ -28,6 +28,7 @@ if TYPE_CHECKING:
     from nodal.language.diagnostics import Diagnostic
     from nodal.report.terminal import Page
 
+FAILED = 1
 WRONG = 2
 INTERRUPTED = 130
 BROKEN_PIPE = 141
@@ -102,14 +103,23 @@ class Options:
         return "json" if self.as_json else self.format
 
 
+_COLOR = click.option(
+    "--color", type=click.Choice(["auto", "always", "never"]), default="auto", show_default=True,
+    help="Color text; auto heeds NO_COLOR.",
+)  # fmt: skip
 _OUTPUT = [
     click.option("--format", type=click.Choice(["text", "json", "csv"]), default="text", show_default=True,
                  help="How to print the answer."),
     click.option("--json", "as_json", is_flag=True, help="Short for --format json."),
     click.option("-o", "--output", metavar="FILE", help="Write the answer to FILE, whole or not at all."),
     click.option("-q", "--quiet", is_flag=True, help="Show no warnings and notes."),
-    click.option("--color", type=click.Choice(["auto", "always", "never"]), default="auto", show_default=True,
-                 help="Color text; auto heeds NO_COLOR."),
+    _COLOR,
+]
+_TIDY = [
+    click.option("--check", is_flag=True, help="Write nothing; name the files that are not tidy."),
+    click.option("--diff", is_flag=True, help="Write nothing; show what would change."),
+    click.option("-q", "--quiet", is_flag=True, help="Do not name files."),
+    _COLOR,
 ]
 _DESIGN = [
     click.option("--case", multiple=True, metavar="CASE", help="A case of the file; may be repeated."),
@@ -271,6 +281,53 @@ def explain(options: Options, code: str | None) -> None:
         listing.explanation(page, rows[0])
         text = page.text()
     _write(text, options)
+
+
+@main.command()
+@click.argument("paths", nargs=-1, required=True, metavar="PATH...")
+@_options(_TIDY)
+def tidy(options: Options, paths: tuple[str, ...], check: bool, diff: bool) -> None:
+    """Write files in their canonical form; what they say stays.
+
+    Each PATH is a file, a folder whose .nodal files are meant, or - (standard input to standard output).
+    A file with errors is left alone. With --check or --diff the status is 1 where a file is not tidy.
+    """
+    from nodal.language.diagnostics import Collector, DesignError, visible
+    from nodal.paths import STANDARD_INPUT, find
+    from nodal.tidying import tidied
+
+    collector = Collector()
+    untidy = False
+    for path in find(paths, collector):
+        try:
+            file = tidied(path)
+            named = f"{'not tidy' if check else 'tidied'}: {visible(file.label)}\n"
+            if diff:
+                _write(_painted(file.difference(), options.color), options)
+            elif path == STANDARD_INPUT and not check:
+                _write_bytes(file.after.encode())
+                continue
+            elif file.changes and not check:
+                _replace(path, file.after)
+            untidy = untidy or file.changes
+            if file.changes and not (diff or options.quiet):
+                _write(named, options)
+        except DesignError as error:
+            collector.found += error.diagnostics
+            collector.sources |= error.sources
+    if collector.failed:
+        raise DesignError(collector.found, collector.sources)
+    if untidy and (check or diff):
+        raise click.exceptions.Exit(FAILED)
+
+
+def _painted(difference: str, color: str) -> str:
+    """A unified diff, in colors where they are wanted."""
+    if not _colored(sys.stdout, color):
+        return difference
+    shades = {"+": "green", "-": "red", "@": "cyan"}
+    lines = difference.split("\n")
+    return "\n".join(click.style(line, fg=shades[line[0]]) if line[:1] in shades else line for line in lines)
 
 
 # What the commands share
@@ -484,12 +541,24 @@ def _write(text: str, options: Options) -> None:
         # In pieces: one large write to a pipe whose reader leaves can end short and silent.
         for start in range(0, len(text), _PIECE):
             sys.stdout.write(text[start : start + _PIECE])
-        return
+    else:
+        _replace(options.output, text)
+
+
+def _write_bytes(data: bytes) -> None:
+    """A text for other programs: UTF-8 whatever the terminal is set to."""
+    stream = sys.stdout.buffer
+    for start in range(0, len(data), _PIECE):
+        stream.write(data[start : start + _PIECE])
+    stream.flush()
+
+
+def _replace(path: str, text: str) -> None:
     try:
-        replace_file(options.output, text)
+        replace_file(path, text)
     except OSError as error:
         reason = error.strerror or str(error)
-        _fail("cannot-write", path=options.output, reason=reason[:1].lower() + reason[1:], hint="")
+        _fail("cannot-write", path=path, reason=reason[:1].lower() + reason[1:], hint="")
 
 
 def replace_file(path: str, text: str) -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import random
+import re
 from itertools import pairwise
 from pathlib import Path
 
@@ -144,6 +145,15 @@ class TestComments:
     def test_a_comment_may_go_on_in_its_column(self) -> None:
         text = "let  a = 1 # one that is\n           # long\n# not this\nlet b = 2\n"
         assert of(text) == "let a = 1  # one that is\n           # long\n# not this\nlet b = 2\n"
+
+
+def test_the_example_of_the_reference() -> None:
+    reference = (ROOT / "grammar" / "LANGUAGE.md").read_text(encoding="utf-8")
+    example = re.search(
+        r"Written like this:\n\n```nodal\n(.*?)```\n\nit becomes:\n\n```nodal\n(.*?)```", reference, re.S
+    )
+    assert example
+    assert tidy(example[1]) == example[2]
 
 
 def test_line_ends_and_marks() -> None:

@@ -92,9 +92,16 @@ CALL: tuple[Code, ...] = (
         "error",
         "cannot write {path}: {reason}",
         "{hint}",
-        "The file named with -o could not be written. Nothing was changed: results go to a temporary "
-        "file beside it "
-        "first, which takes its place when complete.",
+        "The file could not be written. Nothing in it was changed: what is written goes to a temporary "
+        "file beside it first, which takes its place when complete.",
+    ),
+    Code(
+        "no-designs",
+        "error",
+        "there is no design in {path}",
+        "a design is a file that ends in .nodal",
+        "A folder was named, and neither it nor a folder in it holds a file that ends in .nodal. Folders "
+        "whose names begin with a point are not searched.",
     ),
     Code(
         "unknown-code",
