@@ -84,6 +84,7 @@ def eliminate(
     part, not with `size` squared.
     """
     values = list(values)
+    sizes: dict[int, list[Any]] = {}  # magnitudes of slots that were looked at
     by_row: list[dict[int, int]] = [{} for _ in range(size)]
     by_col: list[dict[int, int]] = [{} for _ in range(size)]
     for slot, (i, j) in enumerate(zip(rows, cols, strict=True)):
@@ -103,7 +104,7 @@ def eliminate(
         return Order(size, len(values), *arrays)
 
     for _ in range(size):
-        found = _choose(heap, lines, open_lines, values)
+        found = _choose(heap, lines, open_lines, values, sizes)
         if found is None:
             raise NoPivot(order(), *([k for k in range(size) if open_lines[kind][k]] for kind in (0, 1)))
         p, q = found
@@ -136,6 +137,7 @@ def eliminate(
                     if flush:
                         new = [n if abs(n) > flush * abs(v) else n * 0 for n, v in zip(new, old, strict=True)]
                     values[at] = new
+                    sizes.pop(at, None)
                 target.append(at)
                 left.append(left_slot)
                 top.append(top_slot)
@@ -151,7 +153,7 @@ def eliminate(
 
 def _choose(
     heap: list[tuple[int, int, int]], lines: tuple[list[dict[int, int]], list[dict[int, int]]],
-    open_lines: tuple[list[bool], list[bool]], values: Sequence[list[Any]],
+    open_lines: tuple[list[bool], list[bool]], values: Sequence[list[Any]], sizes: dict[int, list[Any]],
 ) -> tuple[int, int] | None:
     """The next pivot (row, col): cheapest of the acceptable, else the numerically best; None where all is zero."""
     best: tuple[int, float, int, int] | None = None
@@ -167,16 +169,20 @@ def _choose(
             break
         looked_at.append(item)
         line = lines[kind][k]
-        sizes = [[abs(v) for v in values[slot]] for slot in line.values()]
-        peaks = [max(at_sample) for at_sample in zip(*sizes, strict=True)]
-        for other, magnitudes in zip(line, sizes, strict=True):
-            share = min(float(m / p) if p else 0.0 for m, p in zip(magnitudes, peaks, strict=True))
+        magnitudes = []
+        for slot in line.values():
+            if slot not in sizes:
+                sizes[slot] = [abs(v) for v in values[slot]]
+            magnitudes.append(sizes[slot])
+        peaks = [max(at_sample) for at_sample in zip(*magnitudes, strict=True)]
+        for other, at_samples in zip(line, magnitudes, strict=True):
+            share = min([m / p if p else 0.0 for m, p in zip(at_samples, peaks, strict=True)])
             i, j = (k, other) if kind == 0 else (other, k)
             if share >= THRESHOLD:
                 cost = (len(lines[0][i]) - 1) * (len(lines[1][j]) - 1)
                 if best is None or (cost, -share) < best[:2]:
                     best = (cost, -share, i, j)
-            elif any(magnitudes) and (fallback is None or share > fallback[0]):
+            elif any(at_samples) and (fallback is None or share > fallback[0]):
                 fallback = (share, i, j)
     for item in looked_at:
         heapq.heappush(heap, item)

@@ -52,13 +52,12 @@ class Pattern:
             raise ValueError("a coefficient of a term is not finite")
         self.functions = {k: t.f for k, t in enumerate(system.terms) if t.f is not None}
         """Output of the system's functions by the term that has one."""
-        shares = np.array(self.shares, dtype=float).reshape(-1, 3)
-        entry_of, term_of = shares[:, 0].astype(np.intp), shares[:, 1].astype(np.intp)
-        self.entry_g = np.bincount(entry_of, shares[:, 2] * self.g[term_of], minlength=len(index))
-        self.entry_c = np.bincount(entry_of, shares[:, 2] * self.c[term_of], minlength=len(index))
-        self.function_shares = [share for share in self.shares if share[1] in self.functions]
-        self.taking = compressed(
-            [(t, k, w) for t, weights in enumerate(self.term_cols) for k, w in weights], (len(self.g), self.size))
+        entry_of, term_of, weight_of = _columns(self.shares)
+        self.entry_g = np.bincount(entry_of, weight_of * self.g[term_of], minlength=len(index))
+        self.entry_c = np.bincount(entry_of, weight_of * self.c[term_of], minlength=len(index))
+        self.function_shares = [x for x in self.shares if x[1] in self.functions] if self.functions else []
+        taken = [(t, k, w) for t, weights in enumerate(self.term_cols) for k, w in weights]
+        self.taking = compressed(*_columns(taken), (len(self.g), self.size))
 
     def shares_by(self, place: Ints) -> Shares:
         """(place[equation], term, weight) for everything that terms give to equations."""
@@ -146,16 +145,17 @@ class Giving:
 
     def __init__(self, pattern: Pattern, shares: Shares, stride: int) -> None:
         shape = pattern.size, len(pattern.g)
-        g, c = pattern.g.tolist(), pattern.c.tolist()
-        start = np.random.default_rng(stride).integers(0, 7, len(g)).tolist()
-        met = [0] * len(g)
-        spoilt: Shares = []
-        for k, t, w in shares:
-            spoilt.append((k, t, w * (1 + ((start[t] + stride * met[t]) % 7 - 3) * _EPSILON)))
-            met[t] += 1
-        self._constant = compressed([(k, t, w * g[t]) for k, t, w in spoilt if g[t]], shape)
-        self._linear = compressed([(k, t, w * c[t]) for k, t, w in spoilt if c[t]], shape)
-        self._function = [share for share in spoilt if share[1] in pattern.functions]
+        rows, terms, weights = _columns(shares)
+        start = np.random.default_rng(stride).integers(0, 7, len(pattern.g))
+        offset = (start[terms] + stride * _occurrence(terms)) % 7 - 3
+        weights = weights * (1 + offset * _EPSILON)
+        self._constant = compressed(rows, terms, weights * pattern.g[terms], shape)
+        self._linear = compressed(rows, terms, weights * pattern.c[terms], shape)
+        self._function = [
+            (row, term, weight)
+            for row, term, weight in zip(rows.tolist(), terms.tolist(), weights.tolist(), strict=True)
+            if term in pattern.functions
+        ] if pattern.functions else []
 
     def current(self, drops: Complexes, s: Complexes, values: dict[int, Any]) -> Complexes:
         """A x, (size, n_points)."""
@@ -217,19 +217,33 @@ def _evaluate(system: System, s: Any, arithmetic: Arithmetic) -> list[Any]:
 
 def _merged(weights: Iterable[tuple[int, float]], size: int) -> Weights:
     """One weight per index, those that cancel left out."""
+    pairs = tuple(weights)
     total: dict[int, float] = {}
-    for index, weight in weights:
+    for index, weight in pairs:
         if not 0 <= index < size:
             raise IndexError(f"index {index} in a system of size {size}")
         total[index] = total.get(index, 0.0) + weight
+    if len(total) == len(pairs) and all(total.values()):
+        return pairs
     return tuple((index, weight) for index, weight in total.items() if weight != 0.0)
 
 
-def compressed(shares: Shares, shape: tuple[int, int]) -> Any:
-    """A sparse real matrix from (row, column, value), no position twice."""
-    triples = np.array(shares, dtype=float).reshape(-1, 3)
-    rows = triples[:, 0].astype(np.int32)
-    by_row = np.argsort(rows, kind="stable")
+def compressed(rows: Ints, cols: Ints, values: Floats, shape: tuple[int, int]) -> Any:
+    """A sparse real matrix from parallel arrays, no position twice; zeros are left out."""
+    kept = np.nonzero(values)[0]
+    order = kept[np.argsort(rows[kept], kind="stable")]
     starts = np.zeros(shape[0] + 1, dtype=np.int32)
-    np.cumsum(np.bincount(rows, minlength=shape[0]), out=starts[1:])
-    return sparse.csr_matrix((triples[by_row, 2], triples[by_row, 1].astype(np.int32), starts), shape=shape)
+    np.cumsum(np.bincount(rows[kept], minlength=shape[0]), out=starts[1:])
+    return sparse.csr_matrix((values[order], cols[order].astype(np.int32), starts), shape=shape)
+
+
+def _columns(shares: Shares) -> tuple[Ints, Ints, Floats]:
+    table = np.array(shares, dtype=float).reshape(-1, 3)
+    return table[:, 0].astype(np.intp), table[:, 1].astype(np.intp), table[:, 2]
+
+
+def _occurrence(terms: Ints) -> Ints:
+    """How often each term came before, for terms in ascending order."""
+    first = np.searchsorted(terms, terms)
+    result: Ints = np.arange(len(terms)) - first
+    return result

@@ -29,8 +29,9 @@ TOLERANCE = 1e-11
 """Largest relative correction of an output that is taken as settled."""
 
 _STEPS = 8
-_BLOCK_BYTES = 1 << 22
-_BLOCK_POINTS = (192, 512)
+_SAMPLES = 3
+_BLOCK_BYTES = 1 << 21
+_BLOCK_POINTS = (192, 1024)
 _DIGITS = (50, 100, 200)
 
 
@@ -76,10 +77,9 @@ def derivative(
 def plan_for(system: System, s: ArrayLike) -> Plan:
     """A plan from samples spread over the points s."""
     points = _points(s)
-    magnitudes = np.abs(points)
-    low, high = magnitudes.min(), magnitudes.max()
-    levels = np.geomspace(low, high, 4) if high > low else [low]
-    nearest = {int(np.argmin(np.abs(np.log(magnitudes) - np.log(level)))) for level in levels}
+    levels = np.log(np.abs(points))
+    wanted = np.linspace(levels.min(), levels.max(), _SAMPLES)
+    nearest = {int(np.argmin(np.abs(levels - level))) for level in wanted}
     return make_plan(system, points[sorted(nearest)])
 
 
