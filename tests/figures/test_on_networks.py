@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 
 import pytest
+import scipy.constants
 from support.analytic import call, close
 
 import nodal
@@ -56,20 +57,23 @@ def test_bandwidth_of_one_pole_in_a_network(response):
     assert found.value == close(1 / (2 * math.pi * time), rel=1e-11)
 
 
-def test_a_long_line_shows_every_half_wave():
+def test_every_resonance_of_a_long_line_is_found():
     """|V| = 1/|cos βl + j (Rs/Z0) sin βl| at the open end of a lossless line behind Rs: textbook.
 
-    Behind 5 Ω on 50 Ω that is 1 at every half wave and 10 at every odd quarter wave; it never falls below 1.
+    Behind 500 Ω on 50 Ω that is 1 at every half wave and passes 1/√2 where sin² βl = 1/99. The sweep alone,
+    with 20 points a decade, would see few of the 60 resonances.
     """
     text = """nodal 1
 stock line50 { impedance 50 Ω; velocity 0.66 }
-source s: a to ground = 1 V behind 5 Ω
+source s: a to ground = 1 V behind 500 Ω
 cable far: a, ground to b, ground = 20 m of line50
 reading m: b to ground
-sweep 1 kHz to 300 MHz, 10 per decade
+sweep 1 kHz to 300 MHz, 20 per decade
 """
-    response = nodal.loads(text).network().response
-    peak = evaluate(call("peaking", "m"), response)
-    assert peak.value == close(9.0, rel=1e-6)
-    flat = evaluate(call("bandwidth", "m"), response)
-    assert flat.reason == "not-reached"
+    found = evaluate(call("bandwidth", "m", 0.0), nodal.loads(text).network().response)
+    time = 20 / (0.66 * scipy.constants.c)
+    offset = math.asin(1 / math.sqrt(99))
+    expected = [offset, *(k * math.pi + side * offset for k in range(1, 61) for side in (-1, 1))]
+    frequencies = [x / (2 * math.pi * time) for x in expected]
+    assert [c.frequency for c in found.crossings] == close(frequencies, rel=1e-10)
+    assert [c.direction for c in found.crossings] == ["down", *["up", "down"] * 60]
