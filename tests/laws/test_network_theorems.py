@@ -17,7 +17,7 @@ from nodal.parts.inductor import Inductor
 from nodal.parts.resistor import Resistor
 from nodal.parts.source import CurrentSource
 from nodal.response import Response
-from nodal.strategies import LUMPED, PASSIVE, frequencies, networks, rescaled
+from nodal.strategies import EVERY, LUMPED, PASSIVE, frequencies, networks, rescaled
 
 TAU = 2 * math.pi
 SAME = 1e-9
@@ -42,6 +42,13 @@ def test_reciprocity(network: Network, frequency: float) -> None:
     z = impedances(network, frequency, 3)
     own = np.sqrt(np.abs(np.outer(z.diagonal(), z.diagonal())))
     assert np.all(np.abs(z - z.T) <= SAME * np.abs(z) + 1e-12 * own)
+
+
+@given(networks(EVERY), frequencies())
+def test_real_signals(network: Network, frequency: float) -> None:
+    """H(-jω) = conj H(jω): what is real in time stays so."""
+    h = Response(network).reading([frequency, -frequency], "out").values
+    assert abs(h[1] - np.conj(h[0])) <= 1e-10 * abs(h[0])
 
 
 @given(networks(PASSIVE, source="current", ports=3), frequencies())

@@ -55,14 +55,14 @@ def first_moment(body: str) -> float:
     return float((-slope.values[0] / value.values[0]).real)
 
 
-@pytest.mark.parametrize("n", [1, 2, 5, 20, 60])
+@pytest.mark.parametrize("n", [2, 5, 20, 60])
 def test_response_time_of_a_lumped_resistor_column(n: int) -> None:
     """N equal lumps with Cₑ/N at the N - 1 joints: τ(N² - 1)/(6N²) (derived: Σ of the joints' Elmore
     times), here with a low arm a trillionth of the column."""
     r, earth = 1e8, 40e-12
     body = column(n, f"{r / n!r} Ω", f"{earth / n!r} F", "100 µΩ")
     tau = r * earth
-    assert_allclose(first_moment(body), tau * (n * n - 1) / (6 * n * n), rtol=1e-9, atol=1e-14 * tau)
+    assert_allclose(first_moment(body), tau * (n * n - 1) / (6 * n * n), rtol=1e-9)
 
 
 def test_response_time_of_a_continuous_resistor_column() -> None:

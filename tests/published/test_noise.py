@@ -97,7 +97,7 @@ def test_noise_of_a_lossy_capacitor() -> None:
     """
     g = 0.02 * TAU * 1e6 * 1e-9
     resistance = g / (g**2 + (TAU * 1e6 * 1e-9) ** 2)
-    assert_allclose(density(body, [1e6]), math.sqrt(4 * boltzmann * 296.15 * resistance), rtol=4e-4)
+    assert_allclose(density(body, [1e6]), math.sqrt(4 * boltzmann * 296.15 * resistance), rtol=1e-9)
 
 
 def test_noise_of_a_matched_attenuating_line() -> None:
