@@ -8,17 +8,17 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from nodal.solver.fronts import MOST, Fronts, delay_of
+from nodal.solver.fronts import Fronts
 from nodal.solver.inversion import Inversion, NotInverted, invert
 from nodal.solver.matrix import System
 from nodal.solver.pattern import Complexes, Floats
-from nodal.solver.realise import NotRealised, Realisation, at_infinity, realise
-from nodal.solver.sweep import Output
+from nodal.solver.realise import AGREEMENT, NotRealised, Realisation, at_infinity, realise
+from nodal.solver.sweep import Output, solve
 
 POLES, INVERSION = "poles and residues", "inversion"
 
@@ -28,6 +28,16 @@ _ULPS = 8 * float(np.finfo(float).eps)
 _TRUST = 10.0
 """A difference of H everywhere on the axis makes at most about this much in a step's response: ∫dω/(πω) over what
 decades there are."""
+
+
+_FOLLOWED = (16, 64, 256, 1024)
+"""Fronts that are followed one by one, more where the rest is still sharp."""
+
+_BLUNT = 1e-13
+"""Of the largest |H|: what of the rest does not matter."""
+
+_RESOLVED = 2000.0
+"""Radians that the longest delay may turn through over what is left of the rest."""
 
 
 class Impulse(Exception):
@@ -88,12 +98,11 @@ class Edges:
 
 def respond(
     system: System, source: Mapping[int, float], outputs: Sequence[Output], *, ramp: float, window: float,
-    frequencies: ArrayLike = (), most: int = MOST,
+    frequencies: ArrayLike = (),
 ) -> Edges:
     """Prepare the responses of outputs of A(s) x = source to an edge.
 
-    `frequencies` (Hz) are where a realisation is checked besides its own grid; `most` fronts are followed one by one.
-    Raises Impulse, NotInverted (no response that could be trusted) or Singular.
+    `frequencies` (Hz) are where a realisation is checked besides its own grid. Raises Impulse, NotInverted (no response that could be trusted) or Singular.
     """
     count = len(outputs)
     found: Realisation | None = None
@@ -116,13 +125,41 @@ def respond(
     rest = np.flatnonzero(~accepted)
     if not len(rest):
         return Edges(ramp, window, methods, error, np.zeros(1), jumps, found, None, rest, np.zeros(1))
-    fronts = Fronts(system, source, [outputs[k] for k in rest], window, most)
+    fronts = _followed(system, source, [outputs[int(k)] for k in rest], window)
     inversion = _inverted(fronts, window, rest)
     shape = len(fronts.starts), len(rest)
     error[rest] = inversion.error.reshape(shape).sum(axis=0)
     jumps = np.hstack([jumps, np.zeros((count, len(fronts.starts) - 1))])
     jumps[rest] = inversion.jump.reshape(shape).T
     return Edges(ramp, window, methods, error, fronts.starts, jumps, found, inversion, rest, fronts.starts)
+
+
+def _followed(
+    system: System, source: Mapping[int, float], outputs: Sequence[Output], window: float
+) -> Fronts:
+    """As many fronts one by one as it takes for the others to be too blunt to matter."""
+    probes = np.asarray(1 / window + 1j * 10.0 ** np.arange(-1.0, 30.0, 0.25) / window)
+    for most in _FOLLOWED:
+        fronts = Fronts(system, source, outputs, window, most)
+        if fronts.rest is None:
+            break
+        size = np.abs(fronts.evaluate(probes))
+        sharp = (size[-1] > _BLUNT * size.max(axis=(0, 2))[:, None]).any(axis=0)
+        if not sharp.any() or probes[sharp][-1].imag * fronts.longest < _RESOLVED:
+            break
+    _check(fronts, window)
+    return fronts
+
+
+def _check(fronts: Fronts, window: float) -> None:
+    """The fronts together are the transfer function, where what comes after the window has died out."""
+    s = np.asarray(40 / window * (1 + 1j * 10.0 ** np.arange(-1.0, 3.0, 0.1)))
+    together = (fronts.evaluate(s) * np.exp(-s * fronts.starts[:, None, None])).sum(axis=0)
+    expected = solve(fronts.system, s, [fronts.source], fronts.outputs).values[0]
+    scale = np.abs(expected).max(axis=1, keepdims=True)
+    off = np.abs(together - expected)
+    if not (off <= AGREEMENT * np.maximum(scale, np.abs(together).max(axis=1, keepdims=True))).all():
+        raise NotInverted("the fronts do not add up to the transfer function")
 
 
 def _inverted(fronts: Fronts, window: float, outputs: NDArray[np.intp]) -> Inversion:
@@ -139,73 +176,58 @@ def _inverted(fronts: Fronts, window: float, outputs: NDArray[np.intp]) -> Inver
 
 
 def sampled(edges: Edges, points: int, over: float | None = None) -> Floats:
-    """Times for a table or a plot of `points` samples up to `over` (the window if left out), chosen by the responses.
+    """Times, at most `points`, for a table or a plot up to `over` (the window if left out), by the responses.
 
-    Every jump has a sample just before it and one at it. Intervals are halved where a straight line misses the curve
-    most, so that fronts are dense, tails are sparse and decades get their share.
+    The larger jumps have a sample just before them and one at them. Intervals are halved where a straight line
+    misses a curve most, so that fronts are dense, tails are sparse and decades get their share.
     """
     end = edges.window if over is None else over
-    knots = _knots(edges, end)
-    t = np.unique(np.concatenate([knots, *(_after(a, b) for a, b in zip(knots[:-1], knots[1:], strict=True))]))
-    t = t[t <= end]
-    if len(t) >= points:
-        return _thinned(t, knots, points)
+    knots = _knots(edges, end, points // 6)
+    t = np.unique(np.concatenate([knots, *_first_guesses(knots, points // 2)]))
+    if len(t) > points:
+        return t[np.linspace(0, len(t) - 1, max(points, 0)).astype(int)]
     values = edges(t)
-    swing = np.maximum(np.ptp(values, axis=1, keepdims=True), 1e-300)
-    missed = np.full(len(t) - 1, np.inf)
-    """Of every interval: how far the straight line is off in its middle; infinite where not looked at."""
-    inner: dict[float, Any] = {}
+    missed = np.full(len(t) - 1, np.inf)  # of every interval: what a straight line leaves out; inf: not known yet
+    inner = np.zeros((len(values), len(t) - 1))
     while len(t) < points:
+        swing = np.maximum(np.ptp(values, axis=1, keepdims=True), 1e-300)
         middle = t[:-1] + np.diff(t) / 2
-        unknown = [k for k in np.flatnonzero(np.isinf(missed)) if middle[k] not in inner]
-        if unknown:
-            fresh = edges(middle[unknown])
-            inner.update(zip(middle[unknown].tolist(), fresh.T, strict=True))
-        for k in np.flatnonzero(np.isinf(missed)):
-            off = np.abs(inner[float(middle[k])] - (values[:, k] + values[:, k + 1]) / 2)
-            missed[k] = float((off / swing[:, 0]).max())
-            if not t[k] < middle[k] < t[k + 1] or _touching(t[k], t[k + 1]):
-                missed[k] = -1.0
+        unknown = np.isinf(missed)
+        inner[:, unknown] = edges(middle[unknown])
+        off = np.abs(inner - (values[:, :-1] + values[:, 1:]) / 2) / swing
+        missed = np.where(np.diff(t) > _TOUCHING * t[1:], off.max(axis=0), -1.0)
         share = min(points - len(t), max(1, len(t) // 3))
         chosen = np.sort(np.argsort(missed, kind="stable")[::-1][:share])
-        chosen = chosen[missed[chosen] > 0] if (missed[chosen] > 0).any() else chosen[missed[chosen] == 0]
+        chosen = chosen[missed[chosen] >= 0]
         if not len(chosen):
             break
         t = np.insert(t, chosen + 1, middle[chosen])
-        values = np.insert(values, chosen + 1, np.array([inner[float(middle[k])] for k in chosen]).T, axis=1)
+        values = np.insert(values, chosen + 1, inner[:, chosen], axis=1)
         missed[chosen] = np.inf
-        missed = np.insert(missed, chosen + 1, np.inf)
+        missed, inner = np.insert(missed, chosen + 1, np.inf), np.insert(inner, chosen + 1, 0.0, axis=1)
     return t
 
 
-def _touching(a: float, b: float) -> bool:
-    return b - a <= 4 * np.finfo(float).eps * b
+_TOUCHING = 64 * float(np.finfo(float).eps)
 
 
-def _knots(edges: Edges, end: float) -> Floats:
-    """Where responses jump or bend, both sides of each."""
-    bends = edges.arrivals if edges.ramp <= 0 else np.concatenate([edges.arrivals, edges.arrivals + edges.ramp])
-    bends = np.unique(bends[(bends > 0) & (bends < end)])
-    before = np.nextafter(bends * (1 - 2 * _ULPS), 0) if edges.ramp <= 0 else bends
-    return np.unique(np.concatenate([[0.0, end], bends, before]))
+def _knots(edges: Edges, end: float, most: int) -> Floats:
+    """Beginning and end, and where responses jump or bend: both sides of the largest jumps."""
+    size = np.abs(edges.jumps).max(axis=0)
+    notable = np.flatnonzero(size > 1e-6 * size.max()) if size.max() else np.zeros(0, dtype=np.intp)
+    largest = edges.arrivals[notable[np.argsort(size[notable], kind="stable")[::-1][:most]]]
+    first = edges.arrivals[:4]
+    if edges.ramp > 0:
+        bends = np.concatenate([first, largest, first + edges.ramp, largest + edges.ramp])
+        sides = np.zeros(0)
+    else:
+        bends, sides = np.concatenate([first, largest]), largest * (1 - 2 * _ULPS)
+    inside = np.concatenate([bends, sides])
+    return np.unique(np.concatenate([[0.0, end], inside[(inside > 0) & (inside < end)]]))
 
 
-def _after(a: float, b: float) -> Floats:
-    """First guesses between two knots: a decade in two, counted from the first."""
-    if _touching(a, b):
-        return np.zeros(0)
-    return np.asarray(a + (b - a) * 10.0 ** -np.arange(0.5, 6.5, 0.5))
-
-
-def _thinned(t: Floats, knots: Floats, points: int) -> Floats:
-    """No more than `points`, the knots kept as far as they fit in."""
-    others = np.setdiff1d(t, knots)
-    room = max(points - len(knots), 0)
-    kept = others[np.linspace(0, len(others) - 1, room).astype(int)] if room and len(others) else np.zeros(0)
-    chosen = np.unique(np.concatenate([knots, kept]))
-    return chosen if len(chosen) <= points else chosen[np.linspace(0, len(chosen) - 1, points).astype(int)]
-
-
-def has_delay(system: System) -> bool:
-    """Whether fronts arrive later than the edge."""
-    return any(delay_of(f) for f in system.functions)
+def _first_guesses(knots: Floats, most: int) -> list[Floats]:
+    """Between knots, two a decade counted from the first of the two; `most` in all."""
+    gaps = [(a, b) for a, b in pairwise(knots) if b - a > _TOUCHING * b]
+    per_gap = max(1, min(14, most // max(len(gaps), 1)))
+    return [a + (b - a) * 10.0 ** -np.arange(0.5, 0.5 * per_gap + 0.5, 0.5) for a, b in gaps]

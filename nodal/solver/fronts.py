@@ -27,9 +27,6 @@ from nodal.solver.pattern import Complexes, Floats, Pattern
 from nodal.solver.plan import Plan
 from nodal.solver.sweep import Output, plan_for
 
-MOST = 200
-"""Fronts that are followed one by one."""
-
 _SAME = 1e-12
 """Delays this close, relatively, are one."""
 
@@ -56,6 +53,21 @@ class Still:
         return self.function.split(s, arithmetic)[0]
 
 
+@dataclass(frozen=True, slots=True)
+class Whole:
+    """A function put together from its parts, in the same equations as `Still` has them."""
+
+    function: Delayed
+
+    @property
+    def count(self) -> int:
+        return self.function.count
+
+    def evaluate(self, s: Any, arithmetic: Arithmetic) -> Sequence[Any]:
+        turned = arithmetic.exp(-s * self.function.delay)
+        return [a + b * turned for a, b in zip(*self.function.split(s, arithmetic), strict=True)]
+
+
 def delay_of(function: Function) -> float:
     """Seconds; 0 for a function without a delay to take out."""
     return float(getattr(function, "delay", 0.0))
@@ -66,12 +78,13 @@ class Fronts:
 
     def __init__(
         self, system: System, source: Mapping[int, float], outputs: Sequence[Output], window: float,
-        most: int = MOST,
+        most: int,
     ) -> None:
         self.system, self.source, self.outputs = system, source, outputs
         still = [Still(cast(Delayed, f)) if delay_of(f) else f for f in system.functions]
+        whole = [Whole(cast(Delayed, f)) if delay_of(f) else f for f in system.functions]
         self._base = _Planned(System(system.size, system.terms, tuple(still)))
-        self._whole = _Planned(system)
+        self._whole = _Planned(System(system.size, system.terms, tuple(whole)))
         self._delays, self._groups = _by_delay(system)
         self._terms = [self._terms_of(group) for group in self._groups]
         arrivals, self._before, self._leaving = _lattice(self._delays, window, most)
@@ -79,6 +92,11 @@ class Fronts:
         """(n,) s, in order: the fronts that are followed."""
         self.rest: float | None = min((time for time, _ in self._leaving), default=None)
         """When what is not followed one by one sets in; None where that is after the window."""
+
+    @property
+    def longest(self) -> float:
+        """The longest delay, s; 0 where there is none."""
+        return max(self._delays, default=0.0)
 
     @property
     def starts(self) -> Floats:

@@ -17,6 +17,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -55,7 +56,7 @@ _TO_LEGENDRE: Floats = (
     np.polynomial.legendre.legvander(_POINTS, NODES - 1).T * _WEIGHTS * (np.arange(NODES) + 0.5)[:, None]
 )
 """Coefficients from values at the Gauss points."""
-_TURNS: Complexes = 1j ** np.arange(NODES)
+_TURNS: Complexes = np.asarray(1j ** np.arange(NODES), dtype=np.complex128)
 
 
 class NotInverted(Exception):
@@ -90,7 +91,16 @@ class Inversion:
         on = t >= 0
         if on.any():
             level = np.minimum(t[on] / ramp, 1.0) if ramp > 0 else np.ones(int(on.sum()))
-            result[:, on] = np.multiply.outer(self.jump[which], level) + self.smooth(t[on], ramp, which)
+            result[:, on] = np.multiply.outer(self.jump[which], level)
+            if not self._quiet[which].all():
+                result[:, on] += self.smooth(t[on], ramp, which)
+        return result
+
+    @cached_property
+    def _quiet(self) -> NDArray[np.bool_]:
+        """(n,): those that are nothing but their jump."""
+        most = (np.abs(self.values).max(axis=-1) * self.half).sum(axis=-1)
+        result: NDArray[np.bool_] = most < 1e-15 * self.largest
         return result
 
     def smooth(self, t: Floats, ramp: float, which: slice | NDArray[np.intp] = slice(None)) -> Floats:
@@ -175,7 +185,7 @@ def _panels(
     centre, half = (edges[1:] + edges[:-1]) / 2, np.diff(edges) / 2
     count = 0
     while len(centre):
-        s = shift + 1j * (centre[:, None] + half[:, None] * _POINTS)
+        s = np.asarray(shift + 1j * (centre[:, None] + half[:, None] * _POINTS), dtype=np.complex128)
         h = transfer(s.ravel())
         if not np.isfinite(h).all():
             raise NotInverted("the transfer function is not finite everywhere")
