@@ -6,6 +6,7 @@ from pathlib import Path
 
 import pytest
 
+from nodal.language.builder import NetworkBuilder
 from nodal.language.diagnostics import Collector, Diagnostic
 from nodal.language.expand import Override, expand
 from nodal.language.parse import parse, read
@@ -250,8 +251,12 @@ def test_mistakes(text: str, code: str) -> None:
         + "place p: x39(a to ground)",
     ],
 )
-def test_too_many_parts(text: str) -> None:
+def test_too_many_parts(text: str, monkeypatch: pytest.MonkeyPatch) -> None:
+    added = []
+    add = NetworkBuilder.add
+    monkeypatch.setattr(NetworkBuilder, "add", lambda *arguments: (added.append(1), add(*arguments)))
     assert codes(text) == ["too-many-parts"]
+    assert len(added) <= 1000  # one section of the outer chain at most
 
 
 def test_recursion_of_assemblies() -> None:

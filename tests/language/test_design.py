@@ -1,0 +1,89 @@
+"""The facade: everything wrong is said at once; cases, values from outside and curves from Python."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+
+import nodal
+from nodal.language.codes.meaning import MEANING
+
+DIVIDER = """nodal 1
+title "Divider"
+let top = 9 MΩ
+source s: tip to ground = 1 V
+branch upper: tip to plug = top
+branch lower: plug to ground = 1 MΩ
+reading m: plug to ground times 10
+case half { let top = 1 MΩ }
+"""
+
+
+def codes(text: str, **lets: float | str) -> list[str]:
+    with pytest.raises(nodal.DesignError) as caught:
+        nodal.loads(text).network(**lets)
+    return [finding.code for finding in caught.value.diagnostics]
+
+
+@pytest.mark.parametrize(
+    ("code", "text"),
+    [(row.code, text) for row in MEANING for text in row.examples],
+    ids=[f"{row.code}-{number}" for row in MEANING for number, _ in enumerate(row.examples)],
+)
+def test_every_example_of_the_table_raises_its_code(code: str, text: str) -> None:
+    try:
+        found = nodal.loads(text).diagnostics
+    except nodal.DesignError as error:
+        found = error.diagnostics
+    assert code in [finding.code for finding in found]
+
+
+def test_divider_by_hand() -> None:
+    design = nodal.loads(DIVIDER)
+    assert design.title == "Divider"
+    assert design.cases == ("nominal", "half")
+    assert design.diagnostics == []
+    frequencies = np.array([0.0, 1e3])
+    # 1/(9 + 1) and 1/(1 + 1), times 10: Ohm's law.
+    np.testing.assert_allclose(design.network().sweep(frequencies).reading("m"), 1.0, rtol=1e-12)
+    np.testing.assert_allclose(design.network("half").sweep(frequencies).reading("m"), 5.0, rtol=1e-12)
+    np.testing.assert_allclose(design.network().sweep(frequencies).impedance("s"), 10e6, rtol=1e-12)
+
+
+def test_values_from_outside_win_over_file_and_case() -> None:
+    design = nodal.loads(DIVIDER)
+    for given in (4e6, "4 MΩ", "4e3 kohm"):
+        model = design.network("half", top=given)
+        np.testing.assert_allclose(model.sweep([1.0]).reading("m"), 10 / 5, rtol=1e-12)
+    assert codes(DIVIDER, top="4 pF") == ["wrong-dimension"]
+    assert codes(DIVIDER, top="4 MΩ\nbranch x: tip to ground = 1 Ω") == ["override-form"]
+    assert codes(DIVIDER, top=float("nan")) == ["override-form"]
+    assert codes(DIVIDER, tpo=1.0) == ["unknown-let"]
+
+
+def test_mistakes_of_every_case_and_of_the_text_are_said_together_and_once() -> None:
+    text = DIVIDER + "case a { branch upper: tip to plug = 1 V }\n"
+    text += "branch w: tip to plug = 1 pF + 1 Ω\nbrnach x\n"
+    found = codes(text)
+    assert sorted(found) == ["unknown-statement", "wrong-dimension", "wrong-dimension"]
+
+
+def test_what_nothing_uses_is_warned_of_and_can_be_allowed() -> None:
+    idle = DIVIDER + "let spare = 3\nstock k { capacitance 1 pF/m }\ncase x { let topp = 3 MΩ }\n"
+    assert [(f.code, f.name) for f in nodal.loads(idle).diagnostics] == [
+        ("unused-let", "spare"),
+        ("unused-stock", "k"),
+        ("unused-let", "topp"),
+    ]
+    allowed = idle + "allow unused-let: spare\nallow unused-stock: k\n"
+    assert [f.name for f in nodal.loads(allowed).diagnostics] == ["topp"]
+
+
+def test_unknown_cases_and_drives() -> None:
+    design = nodal.loads(DIVIDER + "source t: tap to ground = 1 V\nbranch u: tap to plug = 1 MΩ\n")
+    with pytest.raises(KeyError, match="half"):
+        design.network("hlaf")
+    with pytest.raises(ValueError, match="s, t"):
+        design.network().sweep([1.0])
+    with pytest.raises(KeyError, match="drive"):
+        design.network().sweep([1.0], drive="q")
