@@ -20,8 +20,9 @@ from numpy.typing import ArrayLike, NDArray
 from nodal.language import syntax
 from nodal.language.diagnostics import Collector, DesignError, Diagnostic
 from nodal.language.expand import Expanded, Override, expand
+from nodal.language.files import Disk, Files
 from nodal.language.parse import parse, read
-from nodal.language.program import NOMINAL, Program, Reader, gather
+from nodal.language.program import NOMINAL, Program, gather
 from nodal.language.scope import names_in_statements, nearest
 from nodal.language.syntax import Span
 from nodal.network import Network
@@ -44,16 +45,15 @@ def load(path: str) -> Design:
     return loads(text, "<standard input>" if path == "-" else path)
 
 
-def loads(text: str, path: str = "<text>", *, read_include: Reader | None = None) -> Design:
+def loads(text: str, path: str = "<text>", *, files: Files | None = None) -> Design:
     """The design in a text; `path` stands in messages, and includes are looked for beside it.
 
-    `read_include(path, collector)` gives the text of an included file where it is not on disk. Raises
-    DesignError
-    with all errors: of the text, of the meaning and connections of every case.
+    `files` is where they come from if not from the disk. Raises DesignError with all errors: of the text, of
+    the meaning and connections of every case.
     """
     collector = Collector(sources={path: text})
     file = parse(text, path, collector)
-    program = gather(file, collector, parse, read_include or read)
+    program = gather(file, collector, parse, files or Disk(path))
     design = Design(path, program, collector.sources)
     design.check(collector)
     return design

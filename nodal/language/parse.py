@@ -89,6 +89,11 @@ def read(path: str, collector: Collector) -> str | None:
         reason = os.strerror(error.errno) if isinstance(error, OSError) and error.errno else str(error)
         collector.add("unreadable", None, path=path, reason=reason)
         return None
+    return decode(data, path, collector)
+
+
+def decode(data: bytes, path: str, collector: Collector) -> str | None:
+    """The text of a file's bytes; None where they are none, with the reason in `collector`."""
     if len(data) > MAX_BYTES:
         collector.add("too-long", None, path=path)
         return None

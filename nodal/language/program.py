@@ -5,17 +5,16 @@ from __future__ import annotations
 import os
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field, replace
-from pathlib import Path
 
 from nodal.language import syntax
 from nodal.language.diagnostics import Collector
+from nodal.language.files import Files, Outside, Unusable
 from nodal.language.scope import nearest
 from nodal.language.syntax import Span
 
 NOMINAL = "nominal"
 
 Parser = Callable[[str, str, Collector], syntax.File]
-Reader = Callable[[str, Collector], "str | None"]
 
 _NAMED = (
     syntax.Let, syntax.Source, syntax.Branch, syntax.Coupling, syntax.Stock, syntax.Cable, syntax.Amplifier,
@@ -85,19 +84,18 @@ class Program:
         return ""
 
 
-def gather(file: syntax.File, collector: Collector, parse: Parser, read: Reader) -> Program:
-    """All statements of a design. `read(path, collector)` gives the text of an included file, None if it
-    cannot."""
-    return _Gathering(file, collector, parse, read).program
+def gather(file: syntax.File, collector: Collector, parse: Parser, files: Files) -> Program:
+    """All statements of a design, includes found in `files`."""
+    return _Gathering(file, collector, parse, files).program
 
 
 class _Gathering:
-    def __init__(self, file: syntax.File, collector: Collector, parse: Parser, read: Reader) -> None:
-        self.collector, self.parse, self.read = collector, parse, read
+    def __init__(self, file: syntax.File, collector: Collector, parse: Parser, files: Files) -> None:
+        self.collector, self.parse, self.files = collector, parse, files
         self.program = Program(file.path, lost=file.lost)
-        self.root, self.shown_root = _root_of(file.path)
-        self.open: list[Path] = [_resolved(file.path)]
-        self.seen: set[Path] = set(self.open)
+        self.open: list[str] = [files.key(file.path)]
+        """Keys of the files around what is being read."""
+        self.seen: set[str] = set(self.open)
         self.declared: dict[str, syntax.Word] = {}
         self.once: dict[type, syntax.Statement] = {}
         self.file(file, main=True)
@@ -210,29 +208,25 @@ class _Gathering:
 
     def include(self, include: syntax.Include) -> None:
         target = include.target
-        shown = os.path.normpath(os.path.join(os.path.dirname(include.span.path), target))
         try:
-            path = _resolved(shown)
-        except (
-            OSError,
-            RuntimeError,
-            ValueError,
-        ):  # a circle of symbolic links, a character no path may hold
-            self.collector.add(
-                "include-unreadable", include.span, target=target, reason="it is no usable path"
-            )
+            shown = self.files.beside(include.span.path, target)
+            key = self.files.key(shown)
+        except Outside:
+            self.collector.add("include-outside", include.span, target=target, root=self.files.root)
             return
-        if os.path.isabs(target) or not path.is_relative_to(self.root):
-            self.collector.add("include-outside", include.span, target=target, root=self.shown_root)
-        elif path in self.open:
-            names = " -> ".join(step.name for step in [*self.open[self.open.index(path) :], path])
+        except Unusable as why:
+            self.collector.add("include-unreadable", include.span, target=target, reason=str(why))
+            return
+        if key in self.open:
+            circle = [*self.open[self.open.index(key) :], key]
+            names = " -> ".join(os.path.basename(step) for step in circle)
             self.collector.add("include-loop", include.span, names=names)
         elif len(self.open) > 100:
             self.collector.add("include-too-deep", include.span)
-        elif path not in self.seen:
-            self.seen.add(path)
+        elif key not in self.seen:
+            self.seen.add(key)
             problems = Collector()
-            text = self.read(shown, problems)
+            text = self.files.read(shown, problems)
             if text is None:
                 reason = problems.found[0].message if problems.found else "it cannot be read"
                 self.collector.add("include-unreadable", include.span, target=target, reason=reason)
@@ -240,7 +234,7 @@ class _Gathering:
             self.collector.sources[shown] = text
             file = self.parse(text, shown, self.collector)
             self.program.lost |= file.lost
-            self.open.append(path)
+            self.open.append(key)
             self.file(file, main=False)
             self.open.pop()
 
@@ -269,21 +263,6 @@ def _head(statement: syntax.Statement) -> Span:
     span, word = statement.span, name_of(statement)
     end = word.span.end if word is not None else span.start + len(kind_of(statement))
     return Span(span.path, span.start, max(span.start, min(end, span.end)))
-
-
-def _resolved(path: str) -> Path:
-    """A path with symbolic links followed; the text of standard input or of a string stands in the working
-    folder."""
-    return Path(path).resolve()
-
-
-def _root_of(path: str) -> tuple[Path, str]:
-    """The folder that includes may not leave: the repository's, or that of the first file outside one."""
-    folder = Path(path).resolve().parent
-    for above in (folder, *folder.parents):
-        if (above / ".git").exists():
-            return above, "the repository"
-    return folder, "the folder of the first file"
 
 
 def case_items(program: Program, case: str, collector: Collector) -> list[Item]:

@@ -10,7 +10,8 @@ import pytest
 
 from nodal.language.diagnostics import Collector
 from nodal.language.expand import expand
-from nodal.language.parse import parse, read
+from nodal.language.files import Disk
+from nodal.language.parse import parse
 from nodal.language.program import gather
 from nodal.network import Network
 from nodal.parts.amplifier import Amplifier
@@ -25,7 +26,7 @@ SOURCE = "source s: a to ground = 1 V behind 50 Ω\n"
 
 def network(text: str, case: str = "nominal") -> Network:
     collector = Collector()
-    program = gather(parse("nodal 1\n" + text, "t.nodal", collector), collector, parse, read)
+    program = gather(parse("nodal 1\n" + text, "t.nodal", collector), collector, parse, Disk("t.nodal"))
     expanded = expand(program, case, collector)
     assert [f"{f.code}: {f.message}" for f in collector.found] == []
     assert expanded.network is not None
@@ -36,7 +37,7 @@ def codes(text: str, case: str = "nominal") -> list[tuple[str, str]]:
     """(code, the characters it points at) of every finding."""
     collector = Collector()
     text = "nodal 1\n" + text
-    program = gather(parse(text, "t.nodal", collector), collector, parse, read)
+    program = gather(parse(text, "t.nodal", collector), collector, parse, Disk("t.nodal"))
     expand(program, case, collector)
     return [(f.code, text[f.span.start : f.span.end] if f.span else "") for f in collector.found]
 

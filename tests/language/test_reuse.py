@@ -9,7 +9,8 @@ import pytest
 from nodal.language.builder import NetworkBuilder
 from nodal.language.diagnostics import Collector, Diagnostic
 from nodal.language.expand import Override, expand
-from nodal.language.parse import parse, read
+from nodal.language.files import Disk
+from nodal.language.parse import parse
 from nodal.language.program import gather
 from nodal.network import Network
 
@@ -26,7 +27,7 @@ def run(
 ) -> tuple[Network | None, list[Diagnostic], str]:
     collector = Collector()
     text = "nodal 1\n" + text
-    program = gather(parse(text, path, collector), collector, parse, read)
+    program = gather(parse(text, path, collector), collector, parse, Disk(path))
     return expand(program, case, collector, overrides).network, collector.found, text
 
 
