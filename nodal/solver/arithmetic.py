@@ -36,7 +36,7 @@ class NumpyArithmetic:
 
 
 class MpArithmetic:
-    """Single numbers with `digits` decimal digits, in a context of its own (mpmath's global precision is untouched)."""
+    """Single numbers with `digits` decimal digits; mpmath's global precision is left alone."""
 
     def __init__(self, digits: int) -> None:
         self.context: Any = mpmath.mp.clone()
@@ -47,7 +47,7 @@ class MpArithmetic:
         return int(self.context.dps)
 
     def number(self, x: Any) -> Any:
-        """A Python or numpy number, or a number of another precision, as one of this context; real stays real."""
+        """A Python, numpy or mpmath number as one of this precision; real stays real."""
         if isinstance(x, np.generic):
             x = x.item()
         if isinstance(x, complex):
@@ -163,7 +163,8 @@ class JetArithmetic:
             return self.base.select(condition, then, otherwise)
         a = then if isinstance(then, Jet) else Jet(then, 0.0)
         b = otherwise if isinstance(otherwise, Jet) else Jet(otherwise, 0.0)
-        return Jet(self.base.select(condition, a.value, b.value), self.base.select(condition, a.slope, b.slope))
+        select = self.base.select
+        return Jet(select(condition, a.value, b.value), select(condition, a.slope, b.slope))
 
     def real(self, x: Any) -> Any:
         return self.base.real(x.value if isinstance(x, Jet) else x)

@@ -38,7 +38,7 @@ class Exact:
                 return
             except ZeroDivisionError:
                 pass  # a pivot that is zero at this very point: choose others
-        self._factor(exact_elimination(self.pattern, entries, arithmetic.digits), entries)
+        self._factor(exact_elimination(self.pattern, entries, arithmetic), entries)
 
     def _factor(self, order: Order, entries: Sequence[Any]) -> None:
         self.order = order
@@ -53,7 +53,7 @@ class Exact:
         return self._w[slot][0]
 
     def solve(self, source: Mapping[int, Any]) -> tuple[list[Any], list[Any]]:
-        """(x, correction): the solution for a right-hand side {equation: number}, and what its last step changed."""
+        """(x, correction): the solution for {equation: number}, and what its last step changed."""
         zero = self.arithmetic.number(0)
         b = [zero] * self.pattern.size
         for equation, value in source.items():

@@ -45,7 +45,7 @@ class Kernel:
         self._partial_backward: dict[frozenset[int], Backward] = {}
 
     def factor(self, w: Sequence[Any], spare: Any) -> None:
-        """LU in place; `w` holds one array per slot, fill zero at the start. Pivots are left as their reciprocals."""
+        """LU in place; `w`: one array per slot, fill zero at the start. Pivots end as their reciprocals."""
         multiply, subtract, divide = np.multiply, np.subtract, np.divide
         for pivot, lower, updates in self._steps:
             p = w[pivot]

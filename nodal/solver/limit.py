@@ -1,7 +1,8 @@
 """Zero frequency as a limit: charge and flux balance come out by themselves, no leak is ever added.
 
-The system is solved with many hundred digits at two tiny real s. How an output changes between them gives the power
-of s that it goes with: a positive one is exactly zero, a negative one is infinite, else the value itself is the limit.
+The system is solved with many hundred digits at two tiny real s. How an output changes between them gives the
+power of s that it goes with: a positive one is exactly zero, a negative one is infinite, else the value
+itself is the limit.
 """
 
 from __future__ import annotations
@@ -33,10 +34,10 @@ def limit(
 ) -> tuple[Floats, Floats]:
     """Limits of outputs as s goes to zero through positive real numbers.
 
-    Returns (values, orders), each of shape (n_sources, n_outputs): the value, 0.0 exactly where its order in s is
-    positive, infinite with its sign where it is negative; orders are multiples of 1/2, infinite for an output that
-    is zero at every s. Raises Singular where the system has no unique solution near s = 0, ArithmeticError where
-    2400 digits do not tell.
+    Returns (values, orders), each of shape (n_sources, n_outputs): the value, 0.0 exactly where its order in
+    s is positive, infinite with its sign where it is negative; orders are multiples of 1/2, infinite for an
+    output that is zero at every s. Raises Singular where the system has no unique solution near s = 0,
+    ArithmeticError where 2400 digits do not tell.
     """
     pattern = Pattern(system)
 

@@ -1,8 +1,8 @@
 """A(s) = G + s C + F(s) as a list of terms, and the functions of s that F is made of.
 
-A term is outer(rows, cols) * (g + s c + F_f(s)): it keeps together what belongs to one part's one equation, so that a
-residual can be formed part by part (a branch's current from the difference of its node voltages) and never through a
-summed diagonal. The solver knows unknowns and equations by index only.
+A term is outer(rows, cols) * (g + s c + F_f(s)): it keeps together what belongs to one part's one equation,
+so that a residual can be formed part by part (a branch's current from the difference of its node voltages)
+and never through a summed diagonal. The solver knows unknowns and equations by index only.
 """
 
 from __future__ import annotations
@@ -13,7 +13,8 @@ from typing import Any, Protocol
 
 
 class Arithmetic(Protocol):
-    """The mathematics a Function may use, so that one formula serves arrays, 40-digit numbers and derivatives.
+    """The mathematics a Function may use, so that one formula serves arrays, 40-digit numbers and
+    derivatives.
 
     Operands support + - * / and unary minus among themselves and with Python numbers.
     """
@@ -42,7 +43,10 @@ class Arithmetic(Protocol):
 
 
 class Function(Protocol):
-    """Values of s that are no polynomial in s. Analytic for Re s > 0 and on the imaginary axis but at 0; real for real s."""
+    """Values of s that are no polynomial in s.
+
+    Analytic for Re s > 0 and on the imaginary axis but at 0; real for real s.
+    """
 
     @property
     def count(self) -> int:
@@ -53,7 +57,8 @@ class Function(Protocol):
 
 
 class Delayed(Function, Protocol):
-    """A Function with a pure delay in it: outputs = still + front * exp(-s delay), neither with a delay left in it.
+    """A Function with a pure delay in it: outputs = still + front * exp(-s delay), neither with a delay left
+    in it.
 
     Both parts stay bounded for Re s > 0 where the outputs do, so that edges can be followed front by front.
     """
@@ -90,4 +95,5 @@ class System:
 
     def transposed(self) -> System:
         """Aᵀ(s): adjoint solves, noise and sensitivities use it."""
-        return System(self.size, tuple(Term(t.cols, t.rows, t.g, t.c, t.f) for t in self.terms), self.functions)
+        terms = tuple(Term(t.cols, t.rows, t.g, t.c, t.f) for t in self.terms)
+        return System(self.size, terms, self.functions)

@@ -26,12 +26,13 @@ class NotLumped(Exception):
 def poles(system: System, ignoring_functions: bool = False) -> Complexes:
     """Finite s (rad/s, shape (n_poles,), complex) at which G + s C is singular, in order of magnitude.
 
-    The scaled pencil is reduced by orthogonal transformations until its C is regular (the algebraic equations, with
-    their infinite eigenvalues, drop out), then solved by QR; each simple pole is polished by Newton steps on the
-    pencil itself. Poles many decades below the fastest one keep few digits: for search grids, and to start from.
+    The scaled pencil is reduced by orthogonal transformations until its C is regular (the algebraic
+    equations, with their infinite eigenvalues, drop out), then solved by QR; each simple pole is polished by
+    Newton steps on the pencil itself. Poles many decades below the fastest one keep few digits: for search
+    grids, and to start from.
 
-    Raises NotLumped for a system with functions of s unless `ignoring_functions`, which leaves those terms out;
-    ValueError above LARGEST unknowns.
+    Raises NotLumped for a system with functions of s unless `ignoring_functions`, which leaves those terms
+    out; ValueError above LARGEST unknowns.
     """
     if system.size > LARGEST:
         raise ValueError(f"{system.size} unknowns; poles are found for at most {LARGEST}")
@@ -55,7 +56,8 @@ def poles(system: System, ignoring_functions: bool = False) -> Complexes:
 def _scaled(pattern: Pattern) -> tuple[Floats, Floats, float]:
     """(G, C, scale): rows and columns brought near 1, s = scale * s of the scaled pencil.
 
-    Powers of two that bring the logarithms of all entries of both near 0 in the mean (after Curtis and Reid 1972).
+    Powers of two that bring the logarithms of all entries of both near 0 in the mean (after Curtis and Reid
+    1972).
     """
     size = pattern.size
     g, c = np.zeros((size, size)), np.zeros((size, size))
@@ -94,7 +96,7 @@ def _reduce(g: Floats, c: Floats) -> tuple[Floats, Floats] | None:
 
 
 def _polished(g: Floats, c: Floats, found: Complexes) -> Complexes:
-    """Newton steps on 1 / (row (G + s C)⁻¹ column), taken where they are small against the distance to others."""
+    """Newton steps on 1 / (row (G + s C)⁻¹ column), where small against the gap to others."""
     if len(found) == 0 or len(g) > 200:
         return found
     random = np.random.default_rng(2)
@@ -131,6 +133,6 @@ def _polish(
 
 
 def lightly_damped(found: NDArray[np.complex128], ratio: float = 0.5) -> Floats:
-    """Natural frequencies |p| (rad/s) of the conjugate pairs whose damping ratio -Re p/|p| is below `ratio`."""
+    """|p| (rad/s) of the conjugate pairs whose damping ratio -Re p/|p| is below `ratio`."""
     upper = found[found.imag > 0]
     return np.unique(np.abs(upper[-upper.real < ratio * np.abs(upper)]))

@@ -1,7 +1,7 @@
 """The elimination order: chosen by numbers at a few frequencies, kept as flat integer arrays.
 
-Pivots are chosen for little fill (Markowitz 1957) among those that pass a threshold test at every sample. Matrix
-entries are slots; the slots of L and U are those of the entries they replace, fill takes new ones.
+Pivots are chosen for little fill (Markowitz 1957) among those that pass a threshold test at every sample.
+Matrix entries are slots; the slots of L and U are those of the entries they replace, fill takes new ones.
 """
 
 from __future__ import annotations
@@ -39,10 +39,11 @@ class NoPivot(Exception):
 
 @dataclass(frozen=True)
 class Order:
-    """Flat arrays of one elimination. Step k pivots on slot `pivot[k]`, at equation `row[k]` and unknown `col[k]`.
+    """Flat arrays of one elimination. Step k pivots on slot `pivot[k]`, at equation `row[k]` and unknown
+    `col[k]`.
 
-    Step k divides the slots `lower[lower_start[k]:lower_start[k+1]]` (equations `lower_row`) by the pivot, has the
-    slots `upper[...]` (unknowns `upper_col`) to its right, and updates
+    Step k divides the slots `lower[lower_start[k]:lower_start[k+1]]` (equations `lower_row`) by the pivot,
+    has the slots `upper[...]` (unknowns `upper_col`) to its right, and updates
     slot `target` -= slot `left` * slot `top` for `update_start[k]` to `update_start[k+1]`.
     """
 
@@ -76,12 +77,12 @@ class Order:
 
 
 def eliminate(
-    size: int, rows: Sequence[int], cols: Sequence[int], values: Sequence[list[Any]], flush: float = 0.0
+    size: int, rows: Sequence[int], cols: Sequence[int], values: Sequence[list[Any]], flush: Any = 0.0
 ) -> Order:
     """Choose the order from `values[entry]`, the entry's numbers at each sample (complex, or of many digits).
 
-    What cancels to below `flush` of itself counts as zero. Raises NoPivot. Work grows with the entries that take
-    part, not with `size` squared.
+    What cancels to below `flush` of itself counts as zero. Raises NoPivot. Work grows with the entries that
+    take part, not with `size` squared.
     """
     values = list(values)
     sizes: dict[int, list[Any]] = {}  # magnitudes of slots that were looked at
@@ -100,7 +101,9 @@ def eliminate(
 
     def order() -> Order:
         arrays = [np.array(a, dtype=np.int32) for a in (
-            pivot, row, col, starts[0], lower, lower_row, starts[1], upper, upper_col, starts[2], target, left, top)]
+            pivot, row, col, starts[0], lower, lower_row, starts[1], upper, upper_col, starts[2], target, left,
+            top,
+        )]
         return Order(size, len(values), *arrays)
 
     for _ in range(size):
@@ -155,7 +158,7 @@ def _choose(
     heap: list[tuple[int, int, int]], lines: tuple[list[dict[int, int]], list[dict[int, int]]],
     open_lines: tuple[list[bool], list[bool]], values: Sequence[list[Any]], sizes: dict[int, list[Any]],
 ) -> tuple[int, int] | None:
-    """The next pivot (row, col): cheapest of the acceptable, else the numerically best; None where all is zero."""
+    """The next pivot (row, col): the cheapest acceptable, else the largest; None where all is zero."""
     best: tuple[int, float, int, int] | None = None
     fallback: tuple[float, int, int] | None = None
     looked_at: list[tuple[int, int, int]] = []

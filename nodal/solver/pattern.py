@@ -1,4 +1,4 @@
-"""Terms of a System as arrays: the matrix entries they make, and what a residual is formed from, term by term."""
+"""Terms of a System as arrays: the matrix entries they make, and the sums that residuals are made of."""
 
 from __future__ import annotations
 
@@ -27,7 +27,8 @@ class Pattern:
     """Index arrays of one System, made once.
 
     `rows`, `cols`: position of every matrix entry (entries that cancel in the sum are kept). `taking`
-    (n_terms x size) forms cols·x of every term: a branch's current comes from the difference of its node voltages.
+    (n_terms x size) forms cols·x of every term: a branch's current comes from the difference of its node
+    voltages.
     """
 
     def __init__(self, system: System) -> None:
@@ -135,12 +136,14 @@ class Pattern:
 
 
 class Giving:
-    """A x from every term's drop (cols·x), one product by s an equation, each summand off by up to three roundings.
+    """A x from every term's drop (cols·x), one product by s an equation, each summand off by up to three
+    roundings.
 
-    They are off on purpose, each by its own number. Currents that cancel in an equation leave a remainder that is
-    rounded, and sums like to come out as zero just where the remainder decides about the solution: a correction
-    computed from them would say that all is well. With these the correction shows what roundings can do. A second
-    correction needs numbers of another `stride` (2 or 3): with the same it would settle on the spoilt system.
+    They are off on purpose, each by its own number. Currents that cancel in an equation leave a remainder
+    that is rounded, and sums like to come out as zero just where the remainder decides about the solution: a
+    correction computed from them would say that all is well. With these the correction shows what roundings
+    can do. A second correction needs numbers of another `stride` (2 or 3): with the same it would settle on
+    the spoilt system.
     """
 
     def __init__(self, pattern: Pattern, shares: Shares, stride: int) -> None:

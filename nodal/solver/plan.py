@@ -8,7 +8,7 @@ from functools import cached_property
 from typing import Any
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 
 from nodal.solver.arithmetic import MpArithmetic
 from nodal.solver.kernel import Kernel
@@ -27,7 +27,7 @@ class Singular(Exception):
 
 @dataclass(frozen=True)
 class Plan:
-    """An elimination order for one System. Reusable at other frequencies and for other values of the parts."""
+    """An elimination order for one System, for use at other frequencies and for other values of the parts."""
 
     pattern: Pattern
     order: Order
@@ -79,18 +79,18 @@ def make_plan(system: System, s_samples: ArrayLike, pattern: Pattern | None = No
         pattern = Pattern(system)
     s = np.atleast_1d(np.asarray(s_samples, dtype=complex))
     entries = pattern.matrix(s, pattern.function_values(s))
-    # Pivots are judged on the scaled matrix. The run needs no scaling: powers of two would change no rounding.
+    # Pivots are judged on the scaled matrix. The run needs no scaling: powers of two change no rounding.
     entries *= _equilibration(pattern, np.abs(entries))[:, None]
     try:
         order = eliminate(pattern.size, pattern.rows.tolist(), pattern.cols.tolist(), entries.tolist())
     except NoPivot:
-        # Cancellation in double precision proves nothing: many digits decide, and give the order if there is one.
+        # Cancellation in double precision proves nothing: many digits decide, and may find an order.
         order = exact_order(pattern, generic(s[0]))
     return Plan(pattern, order)
 
 
 def generic(s: Any) -> complex:
-    """A complex frequency near s with nothing special about it: a system singular there is singular everywhere."""
+    """A frequency near s with nothing special about it: what is singular there is singular everywhere."""
     return complex(abs(s)) * (0.6180339887 + 0.4142135624j)
 
 
@@ -99,15 +99,16 @@ def exact_order(pattern: Pattern, s: Any, digits: int = 100) -> Order:
     arithmetic = MpArithmetic(digits)
     s = arithmetic.number(s)
     entries = pattern.exact_entries(pattern.exact_coefficients(s, arithmetic), arithmetic)
-    return exact_elimination(pattern, entries, digits)
+    return exact_elimination(pattern, entries, arithmetic)
 
 
-def exact_elimination(pattern: Pattern, entries: Sequence[Any], digits: int) -> Order:
+def exact_elimination(pattern: Pattern, entries: Sequence[Any], arithmetic: MpArithmetic) -> Order:
     """The order for `exact_entries`; raises Singular with the unknowns that a null vector moves."""
     try:
-        return eliminate(
-            pattern.size, pattern.rows.tolist(), pattern.cols.tolist(), [[e] for e in entries], 10.0 ** (-digits * 0.6)
-        )
+        rows, cols = pattern.rows.tolist(), pattern.cols.tolist()
+        # What cancels to below three fifths of the digits is zero and has left rounding behind.
+        floor = arithmetic.context.mpf(10) ** (-3 * arithmetic.digits // 5)
+        return eliminate(pattern.size, rows, cols, [[e] for e in entries], floor)
     except NoPivot as stopped:
         raise Singular(_null_support(stopped, pattern, entries)) from None
 

@@ -1,8 +1,9 @@
 """Solve A(s) x = b at many points, for chosen outputs, with an error estimate for each.
 
-After every block the residual is formed term by term and the correction solved with the same factors: the relative
-correction of an output is its error estimate. A point that stays above TOLERANCE is refined further, planned again
-at its own frequency, solved with many digits; what is still above is reported with its estimate.
+After every block the residual is formed term by term and the correction solved with the same factors: the
+relative correction of an output is its error estimate. A point that stays above TOLERANCE is refined further,
+planned again at its own frequency, solved with many digits; what is still above is reported with its
+estimate.
 """
 
 from __future__ import annotations
@@ -28,10 +29,14 @@ Output = Mapping[int, float]
 TOLERANCE = 1e-11
 """Largest relative correction of an output that is taken as settled."""
 
+# Once an allocation of this size was freed, the C library serves blocks from a heap that it keeps, not from pages
+# that must be cleared anew each time; the pages of this one are never touched.
+np.empty(1 << 24, dtype=np.uint8)
+
 _STEPS = 8
 _SAMPLES = 3
-_BLOCK_BYTES = 1 << 21
-_BLOCK_POINTS = (192, 1024)
+_BLOCK_BYTES = 1 << 22
+_BLOCK_POINTS = (192, 512)
 _DIGITS = (50, 100, 200)
 
 
@@ -39,9 +44,9 @@ _DIGITS = (50, 100, 200)
 class Solution:
     """`values` and `error`: (n_sources, n_outputs, n_points), complex and the estimated relative error.
 
-    `error` is 0 for an output that is exactly zero and infinite where there is no value. `refined`: (n_points,), true
-    where one correction step was not enough; `replanned`, `extended`: how many points were planned again, and how
-    many were solved with many digits.
+    `error` is 0 for an output that is exactly zero and infinite where there is no value. `refined`:
+    (n_points,), true where one correction step was not enough; `replanned`, `extended`: how many points were
+    planned again, and how many were solved with many digits.
     """
 
     values: Complexes
@@ -52,19 +57,22 @@ class Solution:
 
 
 def solve(
-    system: System, s: ArrayLike, sources: Sequence[Source], outputs: Sequence[Output], plan: Plan | None = None
+    system: System, s: ArrayLike, sources: Sequence[Source], outputs: Sequence[Output],
+    plan: Plan | None = None,
 ) -> Solution:
     """Outputs of A(s) x = b for every source at the points s (rad/s, complex, nonzero, shape (n_points,)).
 
     Memory is bounded whatever the number of points: only the outputs are kept. `plan` may come from other
-    frequencies or other values of the same structure (ValueError if not). Raises Singular where the system has no
-    unique solution at any frequency; where only one point is without, its values and errors are infinite.
+    frequencies or other values of the same structure (ValueError if not). Raises Singular where the system
+    has no unique solution at any frequency; where only one point is without, its values and errors are
+    infinite.
     """
     return _Run(system, _points(s), sources, outputs, plan, slopes=False).solution(0)
 
 
 def derivative(
-    system: System, s: ArrayLike, sources: Sequence[Source], outputs: Sequence[Output], plan: Plan | None = None
+    system: System, s: ArrayLike, sources: Sequence[Source], outputs: Sequence[Output],
+    plan: Plan | None = None,
 ) -> tuple[Solution, Solution]:
     """(values, d/ds of the values) as `solve`, from dx/ds = -A⁻¹ (dA/ds) x; sources do not depend on s.
 
@@ -96,8 +104,8 @@ class _Run:
     """One call of `solve` or `derivative`: its results, and the ladder of means that fills them."""
 
     def __init__(
-        self, system: System, s: Complexes, sources: Sequence[Source], outputs: Sequence[Output], plan: Plan | None,
-        slopes: bool,
+        self, system: System, s: Complexes, sources: Sequence[Source], outputs: Sequence[Output],
+        plan: Plan | None, slopes: bool,
     ) -> None:
         self.s, self.sources, self.outputs, self.slopes = s, sources, outputs, slopes
         shape = (2 if slopes else 1, len(sources), len(outputs), len(s))
@@ -142,7 +150,7 @@ class _Run:
         per_block = int(np.clip(_BLOCK_BYTES // (16 * rows), *_BLOCK_POINTS))
         blocks = -(-len(points) // per_block)
         scratch = _Scratch()
-        # Divisions by zero and overflow end as infinite estimates, which send the point further down the ladder.
+        # Divisions by zero and overflow end as infinite estimates, which send the point down the ladder.
         with np.errstate(all="ignore"):
             for chosen in np.array_split(points, blocks):
                 block = _Block(plan, self.s[chosen], scratch)
@@ -151,23 +159,27 @@ class _Run:
                     if careful:
                         results = block.careful(block.right_side(at), self.outputs, self.slopes)
                     else:
-                        *result, first = block.quick(at, self.outputs)
+                        values, error, first = block.quick(at, self.outputs)
                         self.refined[chosen] |= (first > TOLERANCE).any(axis=0)
-                        results = [(result[0], result[1])]
+                        results = [(values, error)]
                     for which, (values, error) in enumerate(results):
                         self._keep(which, k, chosen, values, error)
 
-    def _keep(self, which: int, source: int, points: NDArray[np.intp], values: Complexes, error: Floats) -> None:
+    def _keep(
+        self, which: int, source: int, points: NDArray[np.intp], values: Complexes, error: Floats
+    ) -> None:
         error = np.where(np.isfinite(values) & np.isfinite(error), error, np.inf)
         old = self.error[which, source][:, points]
         better = (error < old) | np.isinf(old)
-        self.values[which, source][:, points] = np.where(better, values, self.values[which, source][:, points])
+        kept = self.values[which, source]
+        kept[:, points] = np.where(better, values, kept[:, points])
         self.error[which, source][:, points] = np.where(better, error, old)
 
     def _extend(self, plan: Plan, point: int) -> None:
         for attempt, digits in enumerate(_DIGITS):
             try:
-                exact = Exact(plan.pattern, complex(self.s[point]), MpArithmetic(digits), None if attempt else plan.order)
+                order = None if attempt else plan.order
+                exact = Exact(plan.pattern, complex(self.s[point]), MpArithmetic(digits), order)
             except Singular:
                 exact_order(plan.pattern, generic(self.s[point]))  # raises where no frequency has a solution
                 self.values[:, :, :, point] = np.inf
@@ -175,17 +187,22 @@ class _Run:
                 return
             before = self.values[..., point].copy()
             for k, source in enumerate(self.sources):
-                for which, (values, error) in enumerate(self._exact_results(exact, self._source(source, point), before[:, k])):
+                results = self._exact_results(exact, self._source(source, point), before[:, k])
+                for which, (values, error) in enumerate(results):
                     self.values[which, k, :, point] = values
                     self.error[which, k, :, point] = error
             if (self.error[..., point] <= TOLERANCE).all():
                 return
 
-    def _exact_results(self, exact: Exact, source: Source, before: Complexes) -> list[tuple[list[complex], list[float]]]:
-        """(values, errors) of all outputs for one source, and those of the slopes where they are asked for."""
+    def _exact_results(
+        self, exact: Exact, source: Source, before: Complexes
+    ) -> list[tuple[list[complex], list[float]]]:
+        """(values, errors) of all outputs for one source, and those of the slopes where asked for."""
         x, correction = exact.solve(source)
         values = [exact.output(o, x) for o in self.outputs]
-        errors = [_relative(exact.output(o, correction), v, v) for o, v in zip(self.outputs, values, strict=True)]
+        errors = [
+            _relative(exact.output(o, correction), v, v) for o, v in zip(self.outputs, values, strict=True)
+        ]
         results = [_rounded(values, errors, before[0])]
         if self.slopes:
             slopes = exact.pattern.exact_slopes(exact.s, exact.arithmetic)
@@ -245,7 +262,8 @@ class _Block:
         plan.kernel.factor(self.w, self.spare)
 
     def quick(self, source: Source, outputs: Sequence[Output]) -> tuple[Complexes, Floats, Floats]:
-        """One solution and one correction, the latter for the outputs only, one more where that does not settle them.
+        """One solution and one correction, the latter for the outputs only, one more where that does not
+        settle them.
 
         Returns (values, error, error of the first step).
         """
@@ -307,7 +325,7 @@ class _Block:
     def _refine(
         self, b: Complexes, outputs: Sequence[Output], floor: Floats | None
     ) -> tuple[Complexes, Complexes, Complexes, Complexes]:
-        """(x, small, outputs, their last change); x + small, unevaluated, holds differences of nearly equal unknowns."""
+        """(x, small, outputs, their last change); x + small is kept apart for the sake of small differences."""
         kernel = self.plan.kernel
         coefficients = self.plan.pattern.coefficients(self.s, self.functions)
         x = b.copy()
@@ -323,7 +341,8 @@ class _Block:
             x = total
             change = self._outputs(outputs, correction)
             values = self._outputs(outputs, x) + self._outputs(outputs, small)
-            last, error = error, _ratio(change, values if floor is None else np.maximum(np.abs(values), floor))
+            scale = values if floor is None else np.maximum(np.abs(values), floor)
+            last, error = error, _ratio(change, scale)
             waiting = error > TOLERANCE
             if not waiting.any() or (last is not None and not (error[waiting] < 0.25 * last[waiting]).any()):
                 break

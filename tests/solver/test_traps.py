@@ -1,6 +1,7 @@
 """Networks in which an ordinary solution of the nodal equations is wrong, each against 80-digit dense LU.
 
-The list is the project's own (common practice, no source); the reference shares nothing with the solver but the terms.
+The list is the project's own (common practice, no source); the reference shares nothing with the solver but
+the terms.
 """
 
 from __future__ import annotations
@@ -123,7 +124,8 @@ def test_line_at_zero_frequency():
     net.resistor(2, 0, 50.0)
     values, orders = limit(net.system(), [{0: 1.0}], [{0: 1.0}, {1: 1.0}])
     gamma, wave = 2 * math.sqrt(0.5e-6), math.sqrt(0.5 / 1e-6)
-    expected = wave * (50 + wave * math.tanh(gamma)) / (wave + 50 * math.tanh(gamma))  # Pozar, Microwave Engineering
+    # Pozar, Microwave Engineering, chapter 2
+    expected = wave * (50 + wave * math.tanh(gamma)) / (wave + 50 * math.tanh(gamma))
     assert values[0, 0] == pytest.approx(expected, rel=1e-13)
     assert orders[0, 0] == 0
 

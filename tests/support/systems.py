@@ -52,7 +52,8 @@ class Sketch:
         return self.current(a, b)
 
     def line(self, a: int, b: int, series: Any, shunt: Any) -> None:
-        """A two-conductor line over ground: series impedance and shunt admittance of the whole line, functions of
+        """A two-conductor line over ground: series impedance and shunt admittance of the whole line,
+        functions of
         (s, arithmetic); the design's two sets of line equations."""
         first, second = self.current_only(a), self.current_only(b)
         base = sum(f.count for f in self.functions)
@@ -60,7 +61,7 @@ class Sketch:
         va, vb = self.ends(a, 0), self.ends(b, 0)
         one, two = ((first, 1.0),), ((second, 1.0),)
         minus = [(k, -w) for k, w in vb]
-        difference, total = tuple([*va, *minus]), tuple([*va, *vb])
+        difference, total = (*va, *minus), (*va, *vb)
         currents, sum_of_currents = ((first, 1.0), (second, -1.0)), ((first, 1.0), (second, 1.0))
         self.terms += [
             Term(one, difference, f=base),
@@ -152,7 +153,10 @@ def reference(
     floors = [max(abs(x[k] * w) for k, w in output.items()) for output in outputs]
     largest = max(abs(v) for v in x)
     cut = context.mpf(10) ** (-0.75 * digits)
-    return [r if abs(r) > cut * max(f, cut * largest) else context.mpf(0) for r, f in zip(results, floors, strict=True)]
+    return [
+        r if abs(r) > cut * max(f, cut * largest) else context.mpf(0)
+        for r, f in zip(results, floors, strict=True)
+    ]
 
 
 def worst_error(values: np.ndarray[Any, Any], expected: Sequence[Any]) -> float:
