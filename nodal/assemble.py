@@ -10,7 +10,9 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field
 
-from networkx.utils import UnionFind
+import numpy as np
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
 
 from nodal.network import GROUND, Network
 from nodal.parts import Coupling, Inductor, Part
@@ -34,7 +36,8 @@ class Assembly:
     """Of every unknown, for messages: `node core`, `current of lead.L`."""
     excitations: dict[str, Functional] = field(default_factory=dict)
     """Right-hand side of each source's unit excitation."""
-    merged: UnionFind = field(default_factory=UnionFind)
+    merged: list[int] = field(default_factory=list)
+    """A number for every node, the same for nodes that shorts make one."""
     _handles: dict[int, int] = field(default_factory=dict)
     _extras: dict[tuple[str, str], int] = field(default_factory=dict)
     _coupled: frozenset[str] = frozenset()
@@ -51,7 +54,7 @@ class Assembly:
 
     def same(self, a: int, b: int) -> bool:
         """Whether shorts make two nodes one."""
-        return bool(self.merged[a] == self.merged[b])
+        return self.merged[a] == self.merged[b]
 
     def has(self, node: int) -> bool:
         """Whether the node takes part: touched by a part, or one with ground."""
@@ -130,8 +133,7 @@ def assemble(
     """
     parts = network.parts if parts is None else parts
     build = Assembly(lumped)
-    for pair in (*(pair for part in parts for pair in part.shorts()), *merge):
-        build.merged.union(*pair)
+    build.merged = joined(network, (*(pair for part in parts for pair in part.shorts()), *merge))
     build._handles[build.merged[GROUND]] = DROPPED
     for node in (*(node for part in parts for node in part.nodes), *force):
         root = build.merged[node]
@@ -182,19 +184,21 @@ def cross_couplings(network: Network) -> list[Coupling]:
     ]
 
 
-def held_together(parts: Iterable[Part]) -> UnionFind:
-    """Nodes whose voltages against each other the parts settle, at frequencies above zero."""
-    joined = UnionFind()
-    joined[GROUND]
-    for part in parts:
-        for node in part.nodes:
-            joined[node]
-        for pair in part.holds():
-            joined.union(*pair)
-    return joined
+def joined(network: Network, pairs: Iterable[tuple[int, int]]) -> list[int]:
+    """A number for every node, the same for nodes that `pairs` join, directly or through others."""
+    count = len(network.nodes)
+    ends = np.array([*pairs], dtype=np.intp).reshape(-1, 2)
+    graph = coo_array((np.ones(len(ends), dtype=bool), (ends[:, 0], ends[:, 1])), shape=(count, count))
+    labels: list[int] = connected_components(graph, directed=False)[1].tolist()
+    return labels
 
 
-def references(network: Network, parts: Sequence[Part], held: UnionFind) -> list[tuple[int, int]]:
+def held_together(network: Network, parts: Iterable[Part]) -> list[int]:
+    """Numbers as of `joined`, the same for nodes that parts hold together above zero frequency."""
+    return joined(network, (pair for part in parts for pair in part.holds()))
+
+
+def references(network: Network, parts: Sequence[Part], held: Sequence[int]) -> list[tuple[int, int]]:
     """Pairs to merge so that every floating piece of one side has a reference (design §2.6).
 
     That is the second node of a contact where it has one, which counts as ground; a piece that a contact

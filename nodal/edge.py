@@ -142,7 +142,7 @@ def edge_response(
     undisturbed: dict[str, Trace] = {}
     if before:
         parts = side_parts(network, "test")
-        alone = assemble(network, parts, merge=references(network, parts, held_together(parts)))
+        alone = assemble(network, parts, merge=references(network, parts, held_together(network, parts)))
         outputs = [alone.across(c.a, c.b) for c in before]
         names = [f'the undisturbed voltage at contact "{c.name}"' for c in before]
         edges, found = _traces(network, alone, weights, outputs, names, stimulus)

@@ -25,6 +25,7 @@ from nodal.assemble import (
     excitation,
     forced,
     held_together,
+    joined,
     references,
     shared_nodes,
     side_parts,
@@ -257,8 +258,8 @@ class Response:
         return {side: side_parts(self.network, side) for side in ("test", "chain")}
 
     @cached_property
-    def _held(self) -> dict[str, Any]:
-        return {side: held_together(parts) for side, parts in self._sides.items()}
+    def _held(self) -> dict[str, list[int]]:
+        return {side: held_together(self.network, parts) for side, parts in self._sides.items()}
 
     @cached_property
     def _shared(self) -> list[int]:
@@ -483,11 +484,11 @@ class Response:
 
     def _unmoved(self, contact: Contact) -> bool:
         """Whether ideal sources alone set the voltage at the contact, or no chain is there."""
-        joined = assemble(self.network, self._sides["test"]).merged
+        pairs: list[tuple[int, int]] = []
         for part in self._sides["test"]:
-            if isinstance(part, VoltageSource):
-                joined.union(part.a, part.b)
-        return joined[contact.a] == joined[contact.b] or not self._sides["chain"]
+            pairs += part.forces() if isinstance(part, VoltageSource) else part.shorts()
+        fixed = joined(self.network, pairs)
+        return fixed[contact.a] == fixed[contact.b] or not self._sides["chain"]
 
     def _no_undisturbed(self, contact: Contact) -> str:
         """Why a contact has no undisturbed voltage; empty where it has."""
@@ -522,7 +523,7 @@ class Response:
     def _open(self, contact: Contact) -> bool:
         """Whether no part of the chain could carry a current from one node of the contact to the other."""
         held = self._held["chain"]
-        return bool(held[contact.a] != held[contact.b])
+        return held[contact.a] != held[contact.b]
 
     def _impedances(self, run: Run, contacts: Sequence[Contact]) -> list[Estimated]:
         ports = [self._chain.across(c.a, c.b) for c in contacts]

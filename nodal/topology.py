@@ -14,7 +14,7 @@ from typing import Any, Literal
 
 import networkx as nx
 
-from nodal.assemble import assemble, cross_couplings, held_together
+from nodal.assemble import assemble, cross_couplings, held_together, joined
 from nodal.network import GROUND, Network
 from nodal.parts import (
     Amplifier,
@@ -115,14 +115,14 @@ def open_current_source(network: Network) -> Iterator[Finding]:
 
 def _islands(network: Network) -> list[list[int]]:
     """Nodes that no part holds against ground, by piece, in order."""
-    return _pieces(held_together(network.parts), network)
+    return _pieces(held_together(network, network.parts), network)
 
 
-def _pieces(joined: Any, network: Network) -> list[list[int]]:
+def _pieces(labels: Sequence[int], network: Network) -> list[list[int]]:
     pieces: dict[int, list[int]] = defaultdict(list)
     for node in sorted({node for part in network.parts for node in part.nodes}):
-        if joined[node] != joined[GROUND]:
-            pieces[joined[node]].append(node)
+        if labels[node] != labels[GROUND]:
+            pieces[labels[node]].append(node)
     return list(pieces.values())
 
 
@@ -241,7 +241,7 @@ def dangling_nodes(network: Network) -> Iterator[Finding]:
 
 def shorted_parts(network: Network) -> Iterator[Finding]:
     """A part whose connections short-circuit it."""
-    joined = _joined(network)
+    merged = _merged(network)
     coupled = {n for part in network.parts if isinstance(part, Coupling) for n in (part.first, part.second)}
     for part in network.parts:
         if part.shorts() or part.name in coupled:
@@ -253,28 +253,24 @@ def shorted_parts(network: Network) -> Iterator[Finding]:
                 ends = (part.in_, part.ref)
             case _:
                 continue
-        if joined[ends[0]] == joined[ends[1]]:
+        if merged[ends[0]] == merged[ends[1]]:
             what = f"the input of {part.name}" if isinstance(part, Amplifier) else part.name
             yield Finding("shorted-part", "warning", (part.name,), {"part": what}, part.place)
 
 
 def shorted_sources(network: Network) -> Iterator[Finding]:
     """A source whose terminals are one node. (For an ideal voltage source see `source_loops`.)"""
-    joined = _joined(network)
+    merged = _merged(network)
     for part in network.parts:
         if isinstance(part, VoltageSource | CurrentSource):
             a, b = part.terminals or (part.a, part.b)
-            loop = isinstance(part, VoltageSource) and joined[part.a] == joined[part.b]
-            if joined[a] == joined[b] and not loop:
+            loop = isinstance(part, VoltageSource) and merged[part.a] == merged[part.b]
+            if merged[a] == merged[b] and not loop:
                 yield Finding("source-shorted", "warning", (part.name,), {"source": part.name}, part.place)
 
 
-def _joined(network: Network) -> Any:
-    joined = nx.utils.UnionFind(range(len(network.nodes)))
-    for part in network.parts:
-        for a, b in part.shorts():
-            joined.union(a, b)
-    return joined
+def _merged(network: Network) -> list[int]:
+    return joined(network, (pair for part in network.parts for pair in part.shorts()))
 
 
 def crossing_couplings(network: Network) -> Iterator[Finding]:
@@ -288,11 +284,8 @@ def crossing_couplings(network: Network) -> Iterator[Finding]:
 
 def capacitive_nodes(network: Network) -> Iterator[Finding]:
     """Nodes held by capacitors alone: their value at 0 Hz is a capacitive limit."""
-    conducting = nx.utils.UnionFind(range(len(network.nodes)))
-    for part in network.parts:
-        for a, b in part.conducts():
-            conducting.union(a, b)
-    held = held_together(network.parts)
+    conducting = joined(network, (pair for part in network.parts for pair in part.conducts()))
+    held = held_together(network, network.parts)
     for piece in _pieces(conducting, network):
         if held[piece[0]] == held[GROUND]:
             arguments = {"nodes": _quoted(network, piece), "verb": "is" if len(piece) == 1 else "are"}

@@ -147,6 +147,15 @@ SHIELDED = {
     "resistive": {"inductance": 250e-9, "capacitance": 100e-12, "resistance": 3.0, "shield_resistance": 1.0},
     "no loop impedance": {"capacitance": 100e-12, "shield_inductance": 1e-6},
     "no dielectric": {"inductance": 250e-9, "resistance": 3.0, "shield_resistance": 1.0},
+    "many nepers": {
+        "resistance": 400.0,
+        "inductance": 250e-9,
+        "conductance": 0.1,
+        "capacitance": 100e-12,
+        "shield_resistance": 5.0,
+        "shield_inductance": 1e-6,
+        "shield_coupling": 0.9,
+    },
     "skin and loss": {
         "inductance": 250e-9,
         "capacitance": 100e-12,

@@ -176,6 +176,18 @@ CASES: dict[str, tuple[type, Make]] = {
             shield_coupling=0.7,
         ),
     ),
+    "attenuating shielded cable": (
+        Cable,
+        cable(
+            inductance=250e-9,
+            capacitance=10e-12,
+            resistance=1e3,
+            conductance=2e-3,
+            shield_resistance=20.0,
+            shield_inductance=1e-7,
+            shield_coupling=0.7,
+        ),
+    ),
     "cable with skin and loss": (Cable, lossy_cable),
     "amplifier": (Amplifier, amplifier),
     "transconductor": (Amplifier, transconductor),

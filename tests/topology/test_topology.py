@@ -178,7 +178,8 @@ def test_amplifier_loops() -> None:
     two = (
         FRAME
         + "amplifier m: b, ground to c, ground { gain 2 }\namplifier n: c, ground to b, ground { gain 0.5 }\n"
-        "amplifier o: a, ground to d, ground { gain 2 }\nbranch r: b to d = 1 Ω"
+        "amplifier o: a, ground to d, ground { gain 2 }\nbranch r: b to d = 1 Ω\n"
+        "amplifier p: c, ground to e, ground { gain 2 }\nbranch q: e to ground = 1 Ω"
     )
     ((_, message),) = found(two, "amplifier-loop")
     assert message == "m and n are in a loop that has no solution"
