@@ -101,8 +101,8 @@ def eliminate(
 
     def order() -> Order:
         arrays = [np.array(a, dtype=np.int32) for a in (
-            pivot, row, col, starts[0], lower, lower_row, starts[1], upper, upper_col, starts[2], target, left,
-            top,
+            pivot, row, col, starts[0], lower, lower_row, starts[1], upper, upper_col, starts[2],
+            target, left, top,
         )]
         return Order(size, len(values), *arrays)
 

@@ -29,8 +29,8 @@ Output = Mapping[int, float]
 TOLERANCE = 1e-11
 """Largest relative correction of an output that is taken as settled."""
 
-# Once an allocation of this size was freed, the C library serves blocks from a heap that it keeps, not from pages
-# that must be cleared anew each time; the pages of this one are never touched.
+# Once an allocation of this size was freed, the C library serves blocks from a heap that it keeps, not from
+# pages that must be cleared anew each time; the pages of this one are never touched.
 np.empty(1 << 24, dtype=np.uint8)
 
 _STEPS = 8
@@ -325,7 +325,7 @@ class _Block:
     def _refine(
         self, b: Complexes, outputs: Sequence[Output], floor: Floats | None
     ) -> tuple[Complexes, Complexes, Complexes, Complexes]:
-        """(x, small, outputs, their last change); x + small is kept apart for the sake of small differences."""
+        """(x, small, outputs, their last change); x and small are kept apart for small differences."""
         kernel = self.plan.kernel
         coefficients = self.plan.pattern.coefficients(self.s, self.functions)
         x = b.copy()
