@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from hypothesis import HealthCheck, settings
+from hypothesis import HealthCheck, Phase, settings
 
 settings.register_profile(
     "repeatable",
@@ -14,4 +14,6 @@ settings.register_profile(
     suppress_health_check=[HealthCheck.too_slow, HealthCheck.data_too_large, HealthCheck.filter_too_much],
 )
 settings.register_profile("search", settings.get_profile("repeatable"), derandomize=False, max_examples=2000)
+# For trying out whether a law notices a fault put in on purpose: the first failure, not the smallest.
+settings.register_profile("first", settings.get_profile("repeatable"), phases=[Phase.generate])
 settings.load_profile("repeatable")
