@@ -29,6 +29,7 @@ from nodal.network import Network
 from nodal.place import Place
 
 if TYPE_CHECKING:
+    from nodal.language.quantity import Quantity
     from nodal.response import Response
     from nodal.topology import Finding
 
@@ -69,6 +70,7 @@ class Design:
     """Text of every file read, by path."""
     diagnostics: list[Diagnostic] = field(default_factory=list)
     _networks: dict[str, Network] = field(default_factory=dict, repr=False)
+    _lets: dict[str, dict[str, Quantity]] = field(default_factory=dict, repr=False)
 
     @property
     def title(self) -> str:
@@ -102,6 +104,10 @@ class Design:
             raise DesignError(distinct(collector.found), collector.sources)
         return Model(network, case)
 
+    def lets(self, case: str = NOMINAL) -> Mapping[str, Quantity]:
+        """What each `let` comes to in a case, by name."""
+        return self._lets[case]
+
     def check(self, collector: Collector) -> None:
         """Expands and checks every case; raises DesignError with all errors, else keeps networks and
         warnings."""
@@ -112,6 +118,7 @@ class Design:
             used |= expanded.used
             if expanded.network is not None:
                 self._networks[case] = expanded.network
+                self._lets[case] = expanded.lets
                 if readable:
                     topology(expanded.network, collector)
         self._unused(used, collector)

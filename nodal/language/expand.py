@@ -45,10 +45,11 @@ Override = float | syntax.Expression
 
 @dataclass(slots=True)
 class Expanded:
-    """A case's network, None where it has errors, and which names it made use of."""
+    """A case's network, None where it has errors, which names it made use of, and what its lets come to."""
 
     network: Network | None
     used: set[str] = field(default_factory=set)
+    lets: dict[str, Quantity] = field(default_factory=dict)
 
 
 def expand(
@@ -104,7 +105,8 @@ class _Expansion:
         except TooLarge:
             network = None
         failed = any(finding.severity == "error" for finding in self.collector.found[self.before :])
-        return Expanded(None if failed else network, self.used_names | self.scope.used)
+        lets = {name: let.value for name, let in self.scope.lets.items() if let.value is not None}
+        return Expanded(None if failed else network, self.used_names | self.scope.used, lets)
 
     def each(self, *kinds: type) -> Iterable[Item]:
         return [item for item in self.items if isinstance(item.statement, kinds)]

@@ -110,4 +110,42 @@ CALL: tuple[Code, ...] = (
         "{hint}",
         "`nodal explain` without a code lists them all.",
     ),
+    Code(
+        "no-git",
+        "error",
+        "git cannot be run: {reason}",
+        "install git, or name files on disk",
+        "What is named REVISION:path or :path is read through the program git, which was not found.",
+    ),
+    Code(
+        "no-repository",
+        "error",
+        "there is no repository to read a revision from: {reason}",
+        "REVISION:path and :path are looked for in the repository of the working folder",
+        "What is named REVISION:path or :path stands in a git repository: the one that the working folder "
+        "belongs to.",
+    ),
+    Code(
+        "unknown-revision",
+        "error",
+        'there is no revision "{revision}"',
+        "{hint}",
+        "What stands before the colon of REVISION:path is whatever git takes for a revision: a branch, a "
+        "tag, HEAD~1, a commit's name. With nothing before the colon, the index is meant.",
+    ),
+    Code(
+        "not-in-revision",
+        "error",
+        "there is no file {path} in {revision}",
+        "{hint}",
+        "As in git itself, the path behind the colon runs from the top of the repository, from the working "
+        "folder if it begins with ./ or ../",
+    ),
+    Code(
+        "outside-repository",
+        "error",
+        "{path} is outside the repository",
+        "",
+        "A revision holds the files of its repository alone.",
+    ),
 )
