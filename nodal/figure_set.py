@@ -73,7 +73,7 @@ def figures(responses: Mapping[str, Response], drive: str | None, span: Span | N
     spans: dict[str, Span] = {}
     for name, response in responses.items():
         spans[name] = span or default_span(response.network)
-    rows = list(dict.fromkeys(_rows(responses, drive, spans, explicit=span)))
+    rows = list(dict.fromkeys(choose(responses, drive, spans, explicit=span)))
     cases = {
         name: {row.label: row.evaluate(response, drive) for row in rows}
         for name, response in responses.items()
@@ -87,25 +87,28 @@ def figures(responses: Mapping[str, Response], drive: str | None, span: Span | N
     return FiguresAnswer(kept, shown, spans)
 
 
-def _rows(
+def choose(
     responses: Mapping[str, Response], drive: str | None, spans: Mapping[str, Span], explicit: Span | None
 ) -> Iterable[FigureRow]:
+    """The rows of `figures` before anything is left out, some perhaps twice. `spans` holds each case's sweep,
+    `explicit` what stands in for all of them.
+    """
     networks = [(name, response.network) for name, response in responses.items()]
-    required = _required(network for _, network in networks)
+    wanted = required(network for _, network in networks)
     seen: set[str] = set()
     for name, network in networks:
         for reading in network.readings:
             if reading.name not in seen:
                 seen.add(reading.name)
                 rows = list(_reading_rows(responses[name], reading.name, drive, spans[name], explicit))
-                yield from _gathered([*rows, *(row for row in required if row.subject == reading.name)])
+                yield from _gathered([*rows, *(row for row in wanted if row.subject == reading.name)])
     seen.clear()
     for name, network in networks:
         for contact in network.contacts:
             if contact.name not in seen:
                 seen.add(contact.name)
                 rows = list(_contact_rows(contact.name, spans[name]))
-                yield from _gathered([*rows, *(row for row in required if row.subject == contact.name)])
+                yield from _gathered([*rows, *(row for row in wanted if row.subject == contact.name)])
 
 
 def _gathered(rows: Sequence[FigureRow]) -> list[FigureRow]:
@@ -149,7 +152,8 @@ def _contact_rows(name: str, span: Span) -> Iterable[FigureRow]:
     yield from (row("disturbance", at) for at in [0.0, *decades])
 
 
-def _required(networks: Iterable[Network]) -> list[FigureRow]:
+def required(networks: Iterable[Network]) -> list[FigureRow]:
+    """The figures that requirements ask about, each once, those left out that do not exist yet."""
     wanted = (requirement for network in networks for requirement in network.requirements)
     rows = (row for r in wanted if BY_NAME[r.figure.name].available for row in _asked_by(r))
     return list(dict.fromkeys(rows))
@@ -183,7 +187,8 @@ def whole_decades(span: Span) -> list[float]:
 
 
 def _round_down(value: float) -> float:
-    """The largest of 1, 2, 5 times a power of ten that is not above `value`."""
+    """The largest of 1, 2, 5 times a power of ten that is not above `value`, or only by rounding."""
+    value *= 1.0 + 1e-9
     power = math.floor(math.log10(value))
     steps = [float(f"{step}e{n}") for n in (power - 1, power) for step in (1, 2, 5)]
     return max(step for step in steps if step <= value)

@@ -298,4 +298,6 @@ def show(number: float, unit: str = "", digits: int = 6) -> str:
         return f"{number:g} {unit}".strip().replace("inf", "∞")
     if unit.partition("/")[0] not in _PREFIXED:
         return f"{number:.{digits}g} {unit}".strip()
-    return str(Quantity(number, unit).render(prec=digits - 1, strip_zeros=True)).replace("μ", "µ")
+    text = str(Quantity(number, unit).render(prec=digits - 1, strip_zeros=True))
+    size, _, shown = text.partition(" ")
+    return f"{size} µ{unit}" if shown == f"u{unit}" else text

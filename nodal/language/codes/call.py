@@ -1,4 +1,4 @@
-"""Findings about how the tool was called: nothing in a file raises them."""
+"""Findings about how the tool was called, and about records: nothing in a design raises them."""
 
 from __future__ import annotations
 
@@ -102,6 +102,24 @@ CALL: tuple[Code, ...] = (
         "a design is a file that ends in .nodal",
         "A folder was named, and neither it nor a folder in it holds a file that ends in .nodal. Folders "
         "whose names begin with a point are not searched.",
+    ),
+    Code(
+        "record-syntax",
+        "error",
+        "{path} is not TOML: {reason}",
+        "mend the line, or remove the file and write it anew with `nodal record`",
+        "Recorded figures stand in a file beside the design that ends in .figures.toml. It is TOML; what is "
+        "left of a merge (lines of < = >, the same figure twice) has to be settled by hand, or by recording "
+        "anew.",
+    ),
+    Code(
+        "record-form",
+        "error",
+        "{path}: {reason}",
+        'a line of a record reads "bandwidth(screen)" = "167.3 MHz", perhaps "167.3 MHz ± 1 %"',
+        "A record is TOML of one form: `format = 1`, a table [tolerance] and a table [case.NAME] for each "
+        "case, with one figure a line, its value and unit in a string. A tolerance after ± is in %, in ppm "
+        "or in the figure's unit. `nodal record` writes such files and keeps tolerances and comments in them.",
     ),
     Code(
         "unknown-code",
