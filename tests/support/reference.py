@@ -140,7 +140,7 @@ def _nepers(part: Cable, s: Any) -> float:
 def chain_matrix(z: Any, y: Any, length: Any) -> Any:
     """exp of -[[0, z], [y, 0]] length: (V, I) at the near end to (V, I) at the far end, I toward it.
 
-    z and y are symmetric and y has rank one, so that (zy)² = γ² zy with γ² its trace, and the even and odd power
+    z and y are symmetric and y has rank one, so that (zy)² = γ² zy with γ² its trace: the even and odd power
     series of √(zy) sum to a cosh and a sinh of γ.
     """
     n = z.rows
