@@ -234,6 +234,7 @@ class Response:
         self.network = network
         self.quality = Quality()
         self._plans: dict[int, tuple[System, Plan, float, float]] = {}
+        self._rests: dict[tuple[int, Any], _Resting] = {}
 
     # The systems, each made when first needed.
 
@@ -319,7 +320,7 @@ class Response:
 
         def evaluate(arithmetic: MpArithmetic, s: Any) -> tuple[list[Any], list[Any]]:
             nonlocal count
-            found = compute(_Resting(arithmetic, s))
+            found = compute(self._resting(arithmetic, s))
             count = len(found)
             return [arithmetic.number(e.value) for e in found], [arithmetic.number(e.error) for e in found]
 
@@ -330,6 +331,13 @@ class Response:
         except ArithmeticError as error:
             raise SingularNetwork(f"at 0 Hz {error}") from error
         return [Curve(np.array([v], dtype=np.complex128), np.zeros(1)) for v in values]
+
+    def _resting(self, arithmetic: MpArithmetic, s: Any) -> _Resting:
+        """Kept with its factors: most figures ask for some limit, of few systems."""
+        key = arithmetic.digits, s
+        if key not in self._rests:
+            self._rests[key] = _Resting(arithmetic, s)
+        return self._rests[key]
 
     def _drive(self, name: str | None) -> Drive:
         chosen = name if name is not None else self.network.default_drive
@@ -546,7 +554,7 @@ class Response:
 
     def _slope_at_rest(self, compute: Callable[[Run], Estimated]) -> float:
         def evaluate(arithmetic: MpArithmetic, s: Any) -> tuple[list[Any], list[Any]]:
-            near, far = compute(_Resting(arithmetic, s)), compute(_Resting(arithmetic, 2 * s))
+            near, far = compute(self._resting(arithmetic, s)), compute(self._resting(arithmetic, 2 * s))
             slope = (far - near).times(1 / s)
             return [slope.value], [slope.error]
 

@@ -8,6 +8,7 @@ itself is the limit.
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
+from functools import cache
 from typing import Any
 
 import numpy as np
@@ -59,7 +60,7 @@ def limit_of(evaluate: Evaluate) -> tuple[Floats, Floats]:
     """(values, orders) of any numbers computed from one or several `Exact` at the s and arithmetic given."""
     before: list[list[Any]] | None = None
     for digits in _DIGITS:
-        arithmetic = MpArithmetic(digits)
+        arithmetic = _arithmetic(digits)
         pairs = [evaluate(arithmetic, arithmetic.context.mpf(10) ** exponent) for exponent in _EXPONENTS]
         values = [list(pair[0]) for pair in pairs]
         settled = True
@@ -77,6 +78,12 @@ def limit_of(evaluate: Evaluate) -> tuple[Floats, Floats]:
             return _read_off(values[0], values[1])
         before = values
     raise ArithmeticError("the limit at zero frequency cannot be told apart from rounding")
+
+
+@cache
+def _arithmetic(digits: int) -> MpArithmetic:
+    """One for all limits: factors that a caller keeps stay numbers of the same arithmetic."""
+    return MpArithmetic(digits)
 
 
 def _read_off(far: Sequence[Any], near: Sequence[Any]) -> tuple[Floats, Floats]:
