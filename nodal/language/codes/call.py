@@ -119,7 +119,7 @@ CALL: tuple[Code, ...] = (
         'a line of a record reads "bandwidth(screen)" = "167.3 MHz", perhaps "167.3 MHz ± 1 %"',
         "A record is TOML of one form: `format = 1`, a table [tolerance] and a table [case.NAME] for each "
         "case, with one figure a line, its value and unit in a string. A tolerance after ± is in %, in ppm "
-        "or in the figure's unit. `nodal record` writes such files and keeps tolerances and comments in them.",
+        "or in the figure's unit. `nodal record` writes such files; it keeps tolerances and comments.",
     ),
     Code(
         "unknown-code",
