@@ -143,7 +143,7 @@ def _followed(
         fronts = Fronts(system, source, outputs, window, most)
         if fronts.rest is None:
             break
-        size = np.abs(fronts.evaluate(probes))
+        size = np.abs(fronts.evaluate(probes)[0])
         sharp = (size[-1] > _BLUNT * size.max(axis=(0, 2))[:, None]).any(axis=0)
         if not sharp.any() or probes[sharp][-1].imag * fronts.longest < _RESOLVED:
             break
@@ -154,7 +154,7 @@ def _followed(
 def _check(fronts: Fronts, window: float) -> None:
     """The fronts together are the transfer function, where what comes after the window has died out."""
     s = np.asarray(40 / window * (1 + 1j * 10.0 ** np.arange(-1.0, 3.0, 0.1)))
-    together = (fronts.evaluate(s) * np.exp(-s * fronts.starts[:, None, None])).sum(axis=0)
+    together = (fronts.evaluate(s)[0] * np.exp(-s * fronts.starts[:, None, None])).sum(axis=0)
     expected = solve(fronts.system, s, [fronts.source], fronts.outputs).values[0]
     scale = np.abs(expected).max(axis=1, keepdims=True)
     off = np.abs(together - expected)
@@ -163,16 +163,15 @@ def _check(fronts: Fronts, window: float) -> None:
 
 
 def _inverted(fronts: Fronts, window: float, outputs: NDArray[np.intp]) -> Inversion:
-    def transfer(s: Complexes) -> Complexes:
-        values = fronts.evaluate(s)
-        return values.reshape(-1, values.shape[-1])
+    def transfer(s: Complexes) -> tuple[Complexes, Floats]:
+        values, noise = fronts.evaluate(s)
+        return values.reshape(-1, len(s)), noise.reshape(-1, len(s))
 
-    try:
-        return invert(transfer, window, len(outputs))
-    except NotInverted as trouble:
-        if trouble.rows is not None:
-            raise Impulse(sorted({int(outputs[row % len(outputs)]) for row in trouble.rows})) from trouble
-        raise
+    jumps, orders = fronts.at_infinity()
+    hopeless = np.flatnonzero((orders > 0).any(axis=0))
+    if len(hopeless):
+        raise Impulse([int(outputs[k]) for k in hopeless])
+    return invert(transfer, jumps.ravel(), window, len(outputs))
 
 
 def sampled(edges: Edges, points: int, over: float | None = None) -> Floats:

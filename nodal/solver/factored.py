@@ -2,12 +2,41 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
 import numpy as np
 
 from nodal.solver.pattern import Complexes, Floats, product
 from nodal.solver.plan import Plan
+from nodal.solver.sweep import Output
 
-_CORRECTIONS = 2
+_STANDS = 1e-14
+"""Relative change of an output that is not worth another correction."""
+
+_MORE = 5
+
+
+@dataclass(frozen=True, slots=True)
+class Solved:
+    """x + small, unevaluated, holds differences of nearly equal unknowns; `change` is what came last."""
+
+    x: Complexes
+    small: Complexes
+    change: Complexes
+
+    def outputs(self, outputs: Sequence[Output]) -> Complexes:
+        """(n_outputs, n_points)."""
+        return _combined(outputs, self.x) + _combined(outputs, self.small)
+
+
+def _combined(outputs: Sequence[Output], x: Complexes) -> Complexes:
+    result: Complexes = np.zeros((len(outputs), x.shape[1]), dtype=complex)
+    for k, output in enumerate(outputs):
+        summed: Any = sum((x[i] * w for i, w in output.items()), 0.0)
+        result[k] = summed
+    return result
 
 
 class Factored:
@@ -22,32 +51,53 @@ class Factored:
         with np.errstate(all="ignore"):
             plan.kernel.factor(self._w, np.empty(len(s), dtype=complex))
 
-    def solve(self, right: Complexes) -> tuple[Complexes, Complexes]:
-        """x as an unevaluated sum of two, which holds differences of nearly equal unknowns.
+    def solve(self, right: Complexes) -> Solved:
+        """The solution for `right`, (size, n_points), by equation; with one point any number of columns.
 
-        `right` is (size, n_points), by equation; with one point it may have any number of columns. Corrected with
-        residuals formed term by term in twice the precision.
+        Corrected with residuals formed term by term in twice the precision.
         """
+        return self._corrected(right, 2)
+
+    def solve_for(self, right: Complexes, outputs: Sequence[Output]) -> tuple[Solved, Complexes, Floats]:
+        """(solution, outputs, how far they may be off), corrected until the outputs stand."""
+        solved = self._corrected(right, 2)
+        values = solved.outputs(outputs)
+        noise = np.abs(_combined(outputs, solved.change))
+        for _ in range(_MORE):
+            if not (noise > _STANDS * np.abs(values)).any():
+                break
+            solved = self._corrected(right, 1, solved)
+            values = solved.outputs(outputs)
+            last, noise = noise, np.abs(_combined(outputs, solved.change))
+            if not (noise < 0.5 * last)[noise > _STANDS * np.abs(values)].any():
+                break
+        return solved, values, noise
+
+    def _corrected(self, right: Complexes, steps: int, start: Solved | None = None) -> Solved:
         kernel = self.plan.kernel
         spare = np.empty(right.shape[1], dtype=complex)
         b = np.empty(right.shape, dtype=complex)
         b[self.plan.order.place] = right
         with np.errstate(all="ignore"):
-            x = b.copy()
-            kernel.solve(self._w, list(x), spare)
-            small = np.zeros_like(x)
-            for _ in range(_CORRECTIONS):
-                correction = self.plan.balance.remainder(b, self._coefficients * self.drops(x, small))
+            if start is None:
+                x = b.copy()
+                kernel.solve(self._w, list(x), spare)
+                small = np.zeros_like(x)
+            else:
+                x, small = start.x, start.small
+            for _ in range(steps):
+                drops = self.drops(Solved(x, small, small))
+                correction = self.plan.balance.remainder(b, self._coefficients * drops)
                 kernel.solve(self._w, list(correction), spare)
-                small += correction
+                small = small + correction
                 total = x + small
                 small -= total - x
                 x = total
-        return x, small
+        return Solved(x, small, correction)
 
-    def drops(self, x: Complexes, small: Complexes) -> Complexes:
+    def drops(self, solved: Solved) -> Complexes:
         """cols·x of every term."""
-        return product(self.pattern.taking, x) + product(self.pattern.taking, small)
+        return product(self.pattern.taking, solved.x) + product(self.pattern.taking, solved.small)
 
     def log_det(self) -> Floats:
         """log10 |det A| at every point."""

@@ -14,13 +14,15 @@ summed.
 from __future__ import annotations
 
 import heapq
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any, cast
 
 import numpy as np
 
-from nodal.solver.arithmetic import NumpyArithmetic
+from nodal.solver.arithmetic import MpArithmetic, NumpyArithmetic
+from nodal.solver.exact import Exact
 from nodal.solver.factored import Factored
 from nodal.solver.matrix import Arithmetic, Delayed, Function, System
 from nodal.solver.pattern import Complexes, Floats, Pattern
@@ -34,6 +36,11 @@ _DECADES = 4
 """Of |s| that one elimination order serves."""
 
 _POINTS = 512
+
+_FAR = (60, 80)
+"""s = 10 ** these, rad/s, stand for infinity."""
+
+_DIGITS = 600
 
 Step = tuple[int, int]
 """(index of an arrival, index of the delay that takes it further)."""
@@ -103,23 +110,29 @@ class Fronts:
         """When each of what `evaluate` gives sets in, s."""
         return np.append(self.arrivals, [] if self.rest is None else [self.rest])
 
-    def evaluate(self, s: Complexes) -> Complexes:
-        """(n, n_outputs, n_points): the transfer function of each front without its delay, and of the rest."""
+    def evaluate(self, s: Complexes) -> tuple[Complexes, Floats]:
+        """(values, noise), each (n, n_outputs, n_points): transfer functions without their delays, and of the rest.
+
+        `noise` is how far rounding may have put them off, absolutely.
+        """
         shape = len(self.starts), len(self.outputs), len(s)
-        result: Complexes = np.empty(shape, dtype=complex)
+        values: Complexes = np.empty(shape, dtype=complex)
+        noise: Floats = np.empty(shape)
         decade = np.floor(np.log10(np.abs(s)) / _DECADES)
         for level in np.unique(decade):
             chosen = np.flatnonzero(decade == level)
             for part in np.array_split(chosen, -(-len(chosen) // _POINTS)):
                 with np.errstate(all="ignore"):
-                    result[:, :, part] = self._evaluate(s[part])
-        return result
+                    values[:, :, part], noise[:, :, part] = self._evaluate(s[part])
+        return values, noise
 
-    def _evaluate(self, s: Complexes) -> Complexes:
+    def _evaluate(self, s: Complexes) -> tuple[Complexes, Floats]:
         base = self._base.at(s)
-        tables = [self._table(group, terms, s) for group, terms in zip(self._groups, self._terms, strict=True)]
-        result: Complexes = np.empty((len(self.starts), len(self.outputs), len(s)), dtype=complex)
-        sent: list[list[Complexes]] = []
+        fronts = [self._front(group, s, NumpyArithmetic()) for group in self._groups]
+        functions = self._base.pattern.functions
+        shape = len(self.starts), len(self.outputs), len(s)
+        values, noise = np.empty(shape, dtype=complex), np.empty(shape)
+        sent: list[list[list[Any]]] = []
         for index in range(len(self.arrivals)):
             right = np.zeros((self.system.size, len(s)), dtype=complex)
             if index == 0:
@@ -127,52 +140,92 @@ class Fronts:
                     right[equation] = value
             for step in self._before[index]:
                 self._arrive(right, sent, step, 1.0)
-            x, small = base.solve(right)
-            self._read(result[index], x, small)
-            drops = base.drops(x, small)
-            sent.append([drops[terms] * table for terms, table in zip(self._terms, tables, strict=True)])
+            solved, values[index], noise[index] = base.solve_for(right, self.outputs)
+            drops = base.drops(solved)
+            sent.append([
+                [drops[term] * front[functions[term]] for term in terms]
+                for terms, front in zip(self._terms, fronts, strict=True)
+            ])
         if self.rest is not None:
             right = np.zeros((self.system.size, len(s)), dtype=complex)
             for time, step in self._leaving:
                 self._arrive(right, sent, step, np.exp(-s * (time - self.rest)))
-            self._read(result[-1], *self._whole.at(s).solve(right))
+            _, values[-1], noise[-1] = self._whole.at(s).solve_for(right, self.outputs)
+        return values, noise
+
+    def at_infinity(self) -> tuple[Floats, Floats]:
+        """(limits, orders) of what `evaluate` gives for s → ∞, each (n, n_outputs): by how much an edge jumps.
+
+        Orders are multiples of 1/2; positive ones, impulses, have an infinite limit. From two huge s, with many
+        digits.
+        """
+        arithmetic = MpArithmetic(_DIGITS)
+        points = [arithmetic.context.mpf(10) ** exponent for exponent in _FAR]
+        near, far = (self._exactly(s, arithmetic) for s in points)
+        shape = len(self.starts), len(self.outputs)
+        limits, orders = np.zeros(shape), np.full(shape, -np.inf)
+        for place in np.ndindex(*shape):
+            a, b = near[place[0]][place[1]], far[place[0]][place[1]]
+            if a == 0 or b == 0:
+                continue
+            orders[place] = round(2 * float(arithmetic.context.log10(abs(b / a))) / (_FAR[1] - _FAR[0])) / 2
+            if orders[place] >= 0:
+                limits[place] = float(b) if orders[place] == 0 else math.copysign(math.inf, b)
+        return limits, orders
+
+    def _exactly(self, s: Any, arithmetic: MpArithmetic) -> list[list[Any]]:
+        """`evaluate` at one real s with many digits."""
+        base = Exact(self._base.pattern, s, arithmetic)
+        fronts = [self._front(group, s, arithmetic) for group in self._groups]
+        functions = self._base.pattern.functions
+        zero = arithmetic.number(0)
+        result: list[list[Any]] = []
+        sent: list[list[list[Any]]] = []
+        for index in range(len(self.arrivals)):
+            right: Any = [zero] * self.system.size
+            if index == 0:
+                for equation, value in self.source.items():
+                    right[equation] = arithmetic.number(value)
+            for step in self._before[index]:
+                self._arrive(right, sent, step, 1)
+            x, _ = base.solve_all(right)
+            result.append([base.output(o, x) for o in self.outputs])
+            drops = base.drops(x)
+            sent.append([
+                [drops[term] * front[functions[term]] for term in terms]
+                for terms, front in zip(self._terms, fronts, strict=True)
+            ])
+        if self.rest is not None:
+            right = [zero] * self.system.size
+            for time, step in self._leaving:
+                factor = arithmetic.exp(-s * (arithmetic.number(time) - arithmetic.number(self.rest)))
+                self._arrive(right, sent, step, factor)
+            whole = Exact(self._whole.pattern, s, arithmetic)
+            x, _ = whole.solve_all(right)
+            result.append([whole.output(o, x) for o in self.outputs])
         return result
 
-    def _arrive(self, right: Complexes, sent: list[list[Complexes]], step: Step, factor: Any) -> None:
+    def _arrive(self, right: Any, sent: list[list[list[Any]]], step: Step, factor: Any) -> None:
         """Subtract A_k x of a step from the right-hand side."""
         index, delay = step
         for term, amount in zip(self._terms[delay], sent[index][delay], strict=True):
             for row, weight in self._base.pattern.term_rows[term]:
-                right[row] -= amount * factor * weight
-
-    def _read(self, result: Complexes, x: Complexes, small: Complexes) -> None:
-        for k, output in enumerate(self.outputs):
-            big: Any = sum((x[i] * w for i, w in output.items()), 0.0)
-            result[k] = big + sum((small[i] * w for i, w in output.items()), 0.0)
+                right[row] = right[row] - amount * factor * weight
 
     def _terms_of(self, group: Sequence[int]) -> list[int]:
         """The terms that a group of delayed functions sends something through."""
-        probe = np.array([1e9 + 1e9j, 1e6 + 2e6j])
-        front = self._front(group, probe)
+        front = self._front(group, np.array([1e9 + 1e9j, 1e6 + 2e6j]), NumpyArithmetic())
         functions = self._base.pattern.functions
         return [term for term, f in functions.items() if f in front and np.any(front[f] != 0)]
 
-    def _table(self, group: Sequence[int], terms: Sequence[int], s: Complexes) -> Complexes:
-        """Coefficients of A_k at the points, (n_terms, n_points)."""
-        front = self._front(group, s)
-        table: Complexes = np.empty((len(terms), len(s)), dtype=complex)
-        for k, term in enumerate(terms):
-            table[k] = front[self._base.pattern.functions[term]]
-        return table
-
-    def _front(self, group: Sequence[int], s: Complexes) -> dict[int, Any]:
+    def _front(self, group: Sequence[int], s: Any, arithmetic: Arithmetic) -> dict[int, Any]:
         """{output of the system's functions: its delayed part}."""
         first = np.cumsum([0, *(f.count for f in self.system.functions)]).tolist()
         found: dict[int, Any] = {}
         with np.errstate(all="ignore"):
             for number in group:
                 function = cast(Delayed, self.system.functions[number])
-                found.update(enumerate(function.split(s, NumpyArithmetic())[1], first[number]))
+                found.update(enumerate(function.split(s, arithmetic)[1], first[number]))
         return found
 
 

@@ -15,13 +15,14 @@ on the others. Neither subtracts what nearly cancels.
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from collections.abc import Callable
+from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy import special
 
 from nodal.solver.pattern import Complexes, Floats
 
@@ -34,13 +35,16 @@ SHIFT = 2.0
 FINE = 1e-14
 """What the polynomials of one panel may leave out of the response, as part of the largest |H|."""
 
+NOISY = 1e-13
+"""Rounding of H, over the largest |H|, that ends the line."""
+
 BEYOND = 2e-15
 """|H - H(∞)| over the largest |H| where the line may end."""
 
 MOST_PANELS = 3000
 
-_REACH = 45.0
-"""Decades above 1/window: s = 10 ** this / window stands for infinity."""
+_REACH = 40.0
+"""Decades above 1/window that are looked at."""
 
 _PROBES = 6
 """Per decade, for finding where the line may end."""
@@ -48,8 +52,8 @@ _PROBES = 6
 ROUNDING = 2e-14
 """What rounding does to a response, as part of the largest |H|: some hundred panels of a few units each, times e²."""
 
-Transfer = Callable[[Complexes], Complexes]
-"""H at complex s, (n, n_points): any number n of transfer functions at once."""
+Transfer = Callable[[Complexes], tuple[Complexes, Floats]]
+"""(H, how far it may be off) at complex s, each (n, n_points): any number n of transfer functions at once."""
 
 _POINTS, _WEIGHTS = np.polynomial.legendre.leggauss(NODES)
 _TO_LEGENDRE: Floats = (
@@ -60,11 +64,7 @@ _TURNS: Complexes = np.asarray(1j ** np.arange(NODES), dtype=np.complex128)
 
 
 class NotInverted(Exception):
-    """No response that could be trusted: says why. `rows`: the transfer functions that would give an impulse."""
-
-    def __init__(self, reason: str, rows: Sequence[int] | None = None) -> None:
-        super().__init__(reason)
-        self.rows = rows
+    """No response that could be trusted: says why."""
 
 
 @dataclass(frozen=True)
@@ -82,7 +82,8 @@ class Inversion:
     centre: Floats
     half: Floats
     values: Complexes
-    """(n, n_panels, NODES): (H - H(∞))/s at the Gauss points."""
+    """(n, n_panels, NODES): (H - H(∞) - tail)/s at the Gauss points."""
+    tail: Tail
 
     def edge(self, times: Floats, ramp: float = 0.0, which: slice | NDArray[np.intp] = slice(None)) -> Floats:
         """(n, n_times); 0 before t = 0, at a jump the value after it."""
@@ -91,7 +92,7 @@ class Inversion:
         on = t >= 0
         if on.any():
             level = np.minimum(t[on] / ramp, 1.0) if ramp > 0 else np.ones(int(on.sum()))
-            result[:, on] = np.multiply.outer(self.jump[which], level)
+            result[:, on] = np.multiply.outer(self.jump[which], level) + self.tail.edge(t[on], ramp, which)
             if not self._quiet[which].all():
                 result[:, on] += self.smooth(t[on], ramp, which)
         return result
@@ -104,7 +105,7 @@ class Inversion:
         return result
 
     def smooth(self, t: Floats, ramp: float, which: slice | NDArray[np.intp] = slice(None)) -> Floats:
-        """Without the jump; at negative t what should be zero."""
+        """Without the jump and the tail; at negative t what should be zero."""
         values = self.values[which]
         if ramp <= 0:
             return self._integral(values, slice(None), t)
@@ -135,49 +136,113 @@ class Inversion:
         return result * growth
 
 
-def invert(transfer: Transfer, window: float, outputs: int = 1) -> Inversion:
+def invert(transfer: Transfer, jump: Floats, window: float, outputs: int = 1) -> Inversion:
     """Prepare the responses of stable transfer functions for the times up to `window` (s).
 
-    The rows of `transfer` belong to `outputs` readings in turn (row k to reading k mod outputs), whose largest |H|
-    is the measure of all errors. Raises NotInverted for impulses, for responses that grow by more than the window
-    can take, and for values that are not finite.
+    `jump` (n,) is H(∞). The rows of `transfer` belong to `outputs` readings in turn (row k to reading k mod outputs),
+    whose largest |H| is the measure of all errors. Raises NotInverted for responses that grow by more than the window
+    can take, and where the transfer function cannot be had.
     """
-    jump = _at_infinity(transfer, window)
     shift = SHIFT / window
-    omega = 10.0 ** np.arange(-1.0, _REACH - 5, 1 / _PROBES) / window
-    probed = transfer(np.asarray(shift + 1j * omega, dtype=np.complex128))
-    if not np.isfinite(probed).all():
-        raise NotInverted("the transfer function is not finite everywhere")
-    peaks = np.maximum(np.abs(probed).max(axis=1), np.abs(jump)).reshape(-1, outputs)
-    largest = np.where(peaks.max(axis=0) == 0, 1.0, peaks.max(axis=0))
-    measure = np.tile(largest, len(peaks))
-    still_there = (np.abs(probed - jump[:, None]) > BEYOND * measure[:, None]).any(axis=0)
-    end = omega[min(int(np.flatnonzero(still_there)[-1]) + 2, len(omega) - 1)] if still_there.any() else shift
+    omega = 10.0 ** np.arange(-1.0, _REACH, 1 / _PROBES) / window
+    s = np.asarray(shift + 1j * omega, dtype=np.complex128)
+    probed, noise = transfer(s)
+    usable, measure = _usable(probed, noise, jump, outputs)
+    tail, last = _tail(s, (probed - jump[:, None])[:, :usable], measure, usable < len(s))
+    end = omega[last]
     edges = np.append(0.0, shift * 2.0 ** np.arange(math.ceil(math.log2(max(end / shift, 1))) + 1))
-    centre, half, values, left_out = _panels(transfer, jump, measure, shift, edges)
-    sizes = np.abs(values[:, -1, -1] * (edges[-1] / np.pi))
-    error = math.exp(SHIFT) * (left_out + sizes) + ROUNDING * measure
-    made = Inversion(window, jump, measure, error, shift, centre, half, values)
+    edges[-1] = max(end, shift)
+    centre, half, values, left_out = _panels(transfer, jump, tail, measure, shift, edges)
+    beyond = np.abs(values[:, -1, -1]) * (edges[-1] / np.pi)
+    error = math.exp(SHIFT) * (left_out + beyond) + ROUNDING * measure
+    made = Inversion(window, jump, measure, error, shift, centre, half, values, tail)
     before = np.abs(made.smooth(-window * 10.0 ** -np.arange(0.0, 12.0, 0.25), 0.0)).max(axis=1)
-    if (before > 1e-3 * measure).any():
+    if not (before <= 1e-3 * measure).all():
         raise NotInverted("the response grows without bound, or too much of it could not be resolved")
-    return Inversion(window, jump, measure, error + 2 * before, shift, centre, half, values)
+    return replace(made, error=error + 2 * before)
 
 
-def _at_infinity(transfer: Transfer, window: float) -> Floats:
-    s = 10.0 ** np.array([_REACH, _REACH + 2]) / window
-    near, far = transfer(np.asarray(s, dtype=np.complex128)).T
-    if not (np.isfinite(near).all() and np.isfinite(far).all()):
-        raise NotInverted("the transfer function is not finite at high frequencies")
-    rising = np.flatnonzero((np.abs(far) > 2 * np.abs(near)) & (np.abs(far) > 1e-3))
-    if len(rising):
-        raise NotInverted("a step would give an impulse", rising.tolist())
-    limit: Floats = far.real
-    return limit
+def _usable(probed: Complexes, noise: Floats, jump: Floats, outputs: int) -> tuple[int, Floats]:
+    """(how many of the probes, in rising order, are not lost in rounding, the measure of each row's errors)."""
+    count = len(probed) // outputs
+    with np.errstate(invalid="ignore"):
+        size = np.where(np.isfinite(probed), np.abs(probed), 0.0).reshape(count, outputs, -1).max(axis=0)
+        peak = np.maximum.accumulate(size, axis=1)
+        peak = np.maximum(peak, np.abs(jump).reshape(count, outputs).max(axis=0)[:, None])
+        lost = ~(noise.reshape(count, outputs, -1).max(axis=0) <= NOISY * peak).all(axis=0)
+    usable = int(np.flatnonzero(lost)[0]) if lost.any() else len(lost)
+    if usable < 4 * _PROBES:
+        raise NotInverted("the transfer function is lost in rounding")
+    largest = peak[:, usable - 1]
+    return usable, np.tile(np.where(largest == 0, 1.0, largest), count)
+
+
+def _tail(s: Complexes, smooth: Complexes, measure: Floats, cut: bool) -> tuple[Tail, int]:
+    """(what H - H(∞) = `smooth` goes over to, index of the s where panels may end).
+
+    They end where nothing is left, or, `cut`, where rounding takes over. There H - H(∞) goes with a power of s; that
+    much of it is put in in closed form.
+    """
+    there = ~(np.abs(smooth) <= BEYOND * measure[:, None]).all(axis=0)
+    last = int(np.flatnonzero(there)[-1]) + 2 if there.any() else 0
+    none = np.ones(len(measure))
+    if last < len(there) or not cut:
+        return Tail(none, none, 0 * none), min(last, len(there) - 1)
+    last = len(there) - 1
+    near, far = np.abs(smooth[:, last - _PROBES]), np.abs(smooth[:, last])
+    fits = (far > BEYOND * measure) & (near > far)
+    slope = np.log10(np.where(fits, near / np.where(fits, far, 1), 10.0))
+    power = np.clip(np.round(2 * slope) / 2, 0.5, 2.0)
+    corner = np.where(fits, (far / measure) ** (1 / power), 0) * abs(s[last])
+    corner = np.maximum(corner, s[0].real)
+    ratio = smooth[:, last] / _falling(s[last : last + 1], corner, power)[:, 0]
+    fits = fits & (np.abs(ratio.imag) < 0.1 * np.abs(ratio.real))
+    return Tail(power, corner, np.where(fits, ratio.real, 0.0)), last
+
+
+def _falling(s: Complexes, corner: Floats, power: Floats) -> Complexes:
+    """(1 + s/corner)^-power, (n, n_points)."""
+    result: Complexes = (1 + s / corner[:, None]) ** -power[:, None]
+    return result
+
+
+@dataclass(frozen=True, slots=True)
+class Tail:
+    """factor (1 + s/corner)^-power, (n,) each: in time the incomplete gamma function P(power, corner t)."""
+
+    power: Floats
+    corner: Floats
+    factor: Floats
+
+    def transfer(self, s: Complexes) -> Complexes:
+        """(n, n_points)."""
+        return self.factor[:, None] * _falling(s, self.corner, self.power)
+
+    def edge(self, t: Floats, ramp: float, which: Any) -> Floats:
+        """(n, n_times), t not negative."""
+        power, corner, factor = (x[which][:, None] for x in (self.power, self.corner, self.factor))
+        if not factor.any():
+            return np.zeros((len(factor), len(t)))
+        result: Floats
+        if ramp <= 0:
+            result = factor * special.gammainc(power, corner * t)
+            return result
+
+        def area(x: Floats) -> Any:
+            up = np.maximum(x, 0) * corner
+            return (up * special.gammainc(power, up) - power * special.gammainc(power + 1, up)) / corner
+
+        early = (area(t) - area(t - ramp)) / ramp
+        inside = np.maximum(t[None, :] + (_POINTS[:, None] - 1) * (ramp / 2), 0)
+        late = sum(
+            w / 2 * special.gammainc(power, corner * x) for w, x in zip(_WEIGHTS, inside, strict=True)
+        )
+        result = factor * np.where(t > 8 * ramp, late, early)
+        return result
 
 
 def _panels(
-    transfer: Transfer, jump: Floats, measure: Floats, shift: float, edges: Floats
+    transfer: Transfer, jump: Floats, tail: Tail, measure: Floats, shift: float, edges: Floats
 ) -> tuple[Floats, Floats, Complexes, Floats]:
     """(centre, half, values, sum of what the polynomials leave out) of panels that are all fine enough."""
     kept: list[tuple[Floats, Floats, Complexes]] = []
@@ -186,10 +251,10 @@ def _panels(
     count = 0
     while len(centre):
         s = np.asarray(shift + 1j * (centre[:, None] + half[:, None] * _POINTS), dtype=np.complex128)
-        h = transfer(s.ravel())
-        if not np.isfinite(h).all():
-            raise NotInverted("the transfer function is not finite everywhere")
-        values = (h - jump[:, None]).reshape(len(jump), *s.shape) / s
+        h, noise = transfer(s.ravel())
+        if not (noise <= 100 * NOISY * measure[:, None]).all():
+            raise NotInverted("the transfer function is lost in rounding")
+        values = (h - jump[:, None] - tail.transfer(s.ravel())).reshape(len(jump), *s.shape) / s
         high = values @ _TO_LEGENDRE[-2:].T
         rough = np.abs(high).sum(axis=-1) * half * (2 / np.pi)
         count += len(centre)

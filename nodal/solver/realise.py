@@ -324,14 +324,9 @@ def _shifted(
     for equation, value in source.items():
         right[equation, -1] += value
     factored = Factored(make_plan(pattern.system, [shift], pattern), np.array([shift], dtype=complex))
-    x = factored.solve(right.astype(complex))
-    big, small = (part.real for part in x)
-    states = factored.drops(*x)[dynamic].real * scale[:, None]
-    weights = np.zeros((len(outputs), pattern.size))
-    for k, output in enumerate(outputs):
-        for unknown, weight in output.items():
-            weights[k, unknown] += weight
-    read = weights @ big + weights @ small
+    solved = factored.solve(right.astype(complex))
+    states = factored.drops(solved)[dynamic].real * scale[:, None]
+    read = solved.outputs(outputs).real
     m, b, c = states[:, :-1], states[:, -1], read[:, :-1]
     if not (np.isfinite(states).all() and np.isfinite(read).all()):
         raise NotRealised("the equations have no solution at the shift")
