@@ -47,15 +47,19 @@ def test_floating_shunt_with_a_faint_leak(leak):
     check(net, source, [{1: 1.0}, {1: 1.0, 2: -1.0}, {3: 1.0, 2: -1.0}], [1.0, 1e3, 1e9])
 
 
+@pytest.mark.parametrize("shunt_first", [True, False])
 @pytest.mark.parametrize("leak", [10e9, 1e15])
-def test_current_through_a_floating_shunt(leak):
+def test_current_through_a_floating_shunt(leak, shunt_first):
     """The large current must not hide the faint leaks that hold the shunt's common voltage."""
     net = Sketch(3)
-    net.resistor(1, 2, 5e-3)
+    if shunt_first:
+        net.resistor(1, 2, 5e-3)
     net.resistor(1, 0, leak)
     net.resistor(2, 0, 2 * leak)
     net.capacitor(1, 3, 1e-15)
     net.resistor(3, 0, 1e6)
+    if not shunt_first:
+        net.resistor(1, 2, 5e-3)
     check(net, {0: 1.0, 1: -1.0}, [{0: 1.0}, {1: 1.0}, {0: 1.0, 1: -1.0}, {2: 1.0}], [1e-3, 50.0, 1e6])
 
 
