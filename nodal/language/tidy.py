@@ -18,11 +18,13 @@ from __future__ import annotations
 import re
 from collections import Counter
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
+from copy import copy
+from dataclasses import dataclass
 
 from nodal.language.diagnostics import Collector, DesignError
 from nodal.language.lexing import KEYWORDS, NUMBER, Lexeme
-from nodal.language.parse import parse, parse_with_lexemes
+from nodal.language.parse import MAX_BYTES, parse, parse_with_lexemes
+from nodal.language.syntax import Span
 from nodal.language.units import scan_unit
 
 WIDTH = 120
@@ -32,8 +34,9 @@ _PASSES = 100
 """Two or three do; a text made to need more is not aligned to the end."""
 _INDENT = "  "
 _HANGING = "    "
+_NEWLINE = re.compile(r"\r\n|\n|\r")
 _BETWEEN = re.compile(r"(?P<comment>#[^\r\n]*)|(?P<newline>\r\n|\n|\r)")
-_COMMENT_SPACE = " \t\u00a0\u202f"
+_SPACE = " \t\u00a0\u202f"
 _CODE_POINTS = str.maketrans({"\u2126": "Ω", "\u03bc": "µ"})
 _OPERANDS = frozenset((NUMBER, "NAME", "DOTTED", "RPAR"))
 _NO_SPACE_BEFORE = frozenset(("COMMA", "COLON", "SEMICOLON", "RPAR"))
@@ -50,12 +53,18 @@ def tidy(text: str, path: str = "<text>") -> str:
     file, lexemes = parse_with_lexemes(text, path, collector)
     if collector.failed:
         raise DesignError(collector.found, collector.sources)
-    result = _written(_lines(text, lexemes))
-    again = parse(result, path, Collector())
-    if again != file:
+    signs = _Signs.of(text, lexemes)
+    lines = _Printer(text, lexemes, [signs.spelled(lexeme, text) for lexeme in lexemes]).run()
+    result = _written(lines)
+    first_end = _NEWLINE.search(text)
+    if first_end and first_end.group() == "\r\n":
+        result = result.replace("\n", "\r\n")
+    if len(result.encode(errors="surrogatepass")) > MAX_BYTES:  # indentation can add that much
+        collector.add("too-long", Span(path, 0, 0), path=f"{path} in its canonical form")
+        raise DesignError(collector.found, collector.sources)
+    if parse(result, path, Collector()) != file:
         raise AssertionError(f"tidying {path} would change what it says; the file was left alone")
-    first_end = re.search(r"\r\n|\n|\r", text)
-    return result.replace("\n", "\r\n") if first_end and first_end.group() == "\r\n" else result
+    return result
 
 
 # Spelling
@@ -89,7 +98,7 @@ class _Signs:
             return "±"
         if lexeme.type == NUMBER and lexeme.unit:
             digits = lexeme.text
-            unit = self._unit(written[len(digits) :].strip(_COMMENT_SPACE), lexeme.unit)
+            unit = self._unit(written[len(digits) :].strip(_SPACE), lexeme.unit)
             # 3 attoseconds: with a space the unit would be the word that names a part.
             return f"{digits}{'' if unit.partition('/')[0] in KEYWORDS else ' '}{unit}"
         return written
@@ -112,173 +121,163 @@ class _Signs:
 # Layout
 
 
-@dataclass(slots=True)
 class _Line:
     """One line of the result on its way."""
 
-    indent: str
-    code: str = ""
-    comment: str = ""
-    column: int = 0
-    """Where the comment stood in the text, then where it goes, from 0."""
-    after_blank: bool = False
+    __slots__ = ("after_blank", "code", "column", "comment", "indent", "width")
+
+    def __init__(self, indent: str, *, after_blank: bool = False) -> None:
+        self.indent = indent
+        self.code: list[str] = []
+        self.width = len(indent)
+        """Columns of indentation and code."""
+        self.comment = ""
+        self.column = 0
+        """Where the comment stood in the text, then where it goes, from 0."""
+        self.after_blank = after_blank
+
+    def add(self, *pieces: str) -> None:
+        self.code += pieces
+        self.width += sum(map(len, pieces))
 
     @property
-    def width(self) -> int:
-        return len(self.indent) + len(self.code)
+    def opens(self) -> bool:
+        """Whether a brace opens at its end."""
+        return bool(self.code) and self.code[-1] == "{"
 
 
-@dataclass(slots=True)
-class _Layout:
-    """The state of the walk over the lexemes."""
+class _Printer:
+    """Walks over the lexemes and what stands between them, and lays out lines."""
 
-    lines: list[_Line] = field(default_factory=list)
-    before: Lexeme | None = None
-    """The lexeme written last."""
-    fresh: bool = True
-    """A statement or a brace has ended: the next lexeme begins a line."""
-    field_name: bool = False
-    """The lexeme written last is the name of a field: what follows is its value."""
-    code: bool = False
-    """Inside the code of an `allow`."""
-    breaks: int = 0
-    """Newlines since the lexeme or comment before."""
-    line_start: int = 0
-    """Where the current line of the text begins."""
-    braces: int = 0
-    open: int = 0
-    """Parentheses that stand open."""
-    inline: int = 0
-    """Depth of braces within a block on one line."""
-    sign: bool = False
-    """The lexeme written last is a sign."""
+    def __init__(self, text: str, lexemes: Sequence[Lexeme], spelled: Sequence[str]) -> None:
+        self.text = text
+        self.lexemes = lexemes
+        self.spelled = spelled
+        self.lines: list[_Line] = []
+        self._closing = _closing(lexemes)
+        self._before = ""
+        """Type of the lexeme written last."""
+        self._fresh = True
+        """A statement has ended or a brace opened: the next lexeme begins a statement or closes a brace."""
+        self._value = False
+        """The lexeme written last is the name of a field: what follows is its value."""
+        self._sign = False
+        """The lexeme written last is a sign."""
+        self._code = False
+        """Inside the code of an `allow`."""
+        self._breaks = 0
+        """Newlines since the lexeme or comment before."""
+        self._line_start = 0
+        """Where the current line of the text begins."""
+        self._braces = 0
+        self._parentheses = 0
+        self._inline = 0
+        """Depth of braces within the block on one line; 0 outside of one."""
 
+    def run(self) -> list[_Line]:
+        position = 0
+        for at, lexeme in enumerate(self.lexemes):
+            self._between(position, lexeme.span.start)
+            position = lexeme.span.end
+            if lexeme.type == "END" and lexeme.text != ";":
+                self._breaks += 1
+                self._line_start = position
+            self._take(at)
+            if lexeme.type == "LBRACE" and not self._inline and self._fits(at):
+                self._inline = self._braces
+        self._between(position, len(self.text))
+        return self.lines
 
-def _lines(text: str, lexemes: Sequence[Lexeme]) -> list[_Line]:
-    signs = _Signs.of(text, lexemes)
-    spelled = {id(lexeme): signs.spelled(lexeme, text) for lexeme in lexemes}
-    layout, position = _Layout(), 0
-    for at, lexeme in enumerate(lexemes):
-        _between(layout, text, position, lexeme.span.start)
-        position = lexeme.span.end
-        if lexeme.type == "END":
-            layout.fresh = True
-            if lexeme.text != ";":
-                layout.breaks += 1
-                layout.line_start = lexeme.span.end
+    def _between(self, start: int, end: int) -> None:
+        """Take up the comments and newlines in a stretch of text without lexemes."""
+        for found in _BETWEEN.finditer(self.text, start, end):
+            if found.lastgroup == "newline":
+                self._breaks += 1
+                self._line_start = found.end()
+                continue
+            if self._breaks or not self.lines:
+                self._new_line(self._block_indent() if self._fresh else self._hanging_indent())
+            line = self.lines[-1]
+            line.comment = found.group().rstrip(_SPACE)
+            line.column = len(self.text[self._line_start : found.start()].lstrip("\ufeff").expandtabs(8))
+            self._breaks = 0
+
+    def _take(self, at: int) -> None:
+        """Write one lexeme, on the line or on a new one."""
+        kind = self.lexemes[at].type
+        if kind == "END":
+            self._fresh = True
+            return
+        self._braces -= kind == "RBRACE"
+        self._parentheses -= kind == "RPAR"
+        begins = self._fresh and kind != "RBRACE"
+        if kind == "RBRACE" and self.lines[-1].opens and not self.lines[-1].comment:
+            self.lines[-1].add("}")
+        elif begins or kind == "RBRACE":
+            if self._inline:
+                self.lines[-1].add("; " if begins and self._before != "LBRACE" else " ")
+            else:
+                self._new_line(self._block_indent(), at_end=not begins)
+            self.lines[-1].add(self.spelled[at])
+        elif self._breaks:
+            self._new_line(self._hanging_indent(closing=kind == "RPAR"))
+            self.lines[-1].add(self.spelled[at])
         else:
-            _place(layout, lexeme, spelled)
-            if lexeme.type == "LBRACE" and not layout.inline and _fits(layout, text, lexemes, at, spelled):
-                layout.inline = layout.braces
-    _between(layout, text, position, len(text))
-    return layout.lines
+            self.lines[-1].add("" if self._joined(kind) else " ", self.spelled[at])
+        self._sign = kind == "MINUS" and not self._code and (self._before not in _OPERANDS or self._value)
+        self._code = kind == "ALLOW" if begins else self._code and kind != "COLON"
+        self._value = begins and kind == "NAME"
+        self._braces += kind == "LBRACE"
+        self._parentheses += kind == "LPAR"
+        if self._braces < self._inline:
+            self._inline = 0
+        self._fresh = kind in ("LBRACE", "RBRACE")
+        self._before, self._breaks = kind, 0
 
+    def _joined(self, kind: str) -> bool:
+        """Whether no space stands between the lexeme written last and one of this type."""
+        if kind in _NO_SPACE_BEFORE or self._before == "LPAR" or self._sign:
+            return True
+        if kind == "LPAR":
+            return self._before in ("NAME", "DOTTED") and not self._value
+        return self._code and "MINUS" in (kind, self._before)
 
-def _between(layout: _Layout, text: str, start: int, end: int) -> None:
-    """Take up the comments and newlines in a stretch of text without lexemes."""
-    for found in _BETWEEN.finditer(text, start, end):
-        if found.lastgroup == "newline":
-            layout.breaks += 1
-            layout.line_start = found.end()
-            continue
-        comment = found.group().rstrip(_COMMENT_SPACE)
-        column = len(text[layout.line_start : found.start()].lstrip("\ufeff").expandtabs(8))
-        if layout.breaks or not layout.lines:
-            _new_line(
-                layout, _block_indent(layout) if layout.fresh else _hanging_indent(layout, closing=False)
-            )
-        layout.lines[-1].comment, layout.lines[-1].column = comment, column
-        layout.breaks = 0
+    def _new_line(self, indent: str, *, at_end: bool = False) -> None:
+        begins_block = not self.lines or (self._fresh and self.lines[-1].opens)
+        blank = self._breaks > 1 and self._fresh and not begins_block and not at_end
+        self.lines.append(_Line(indent, after_blank=blank))
 
+    def _block_indent(self) -> str:
+        return _INDENT * self._braces
 
-def _place(layout: _Layout, lexeme: Lexeme, spelled: Mapping[int, str]) -> None:
-    """Write one lexeme, on the line or on a new one."""
-    kind, before, word = lexeme.type, layout.before, spelled[id(lexeme)]
-    layout.braces -= kind == "RBRACE"
-    begins = layout.fresh and kind != "RBRACE"
-    empty = kind == "RBRACE" and layout.lines[-1].code.endswith("{") and not layout.lines[-1].comment
-    closing = kind == "RPAR" and layout.breaks > 0
-    layout.open += (kind == "LPAR") - (kind == "RPAR")
-    if empty:
-        layout.lines[-1].code += word
-    elif layout.inline and (begins or kind == "RBRACE"):
-        between = " " if kind == "RBRACE" or (before and before.type == "LBRACE") else "; "
-        layout.lines[-1].code += between + word
-    elif begins or kind == "RBRACE":
-        _new_line(layout, _block_indent(layout), at_end=kind == "RBRACE")
-        layout.lines[-1].code = word
-    elif layout.breaks:
-        opened = kind == "LPAR"
-        layout.open -= opened
-        _new_line(layout, _hanging_indent(layout, closing=closing))
-        layout.open += opened
-        layout.lines[-1].code = word
-        layout.lines[-1].after_blank = False
-    else:
-        layout.lines[-1].code += word if _joined(layout, lexeme) else " " + word
-    layout.sign = kind == "MINUS" and not layout.code and not (
-        before is not None and before.type in _OPERANDS and not layout.field_name
-    )  # fmt: skip
-    layout.code = kind == "ALLOW" if begins else layout.code and kind != "COLON"
-    layout.field_name = begins and kind == "NAME"
-    layout.braces += kind == "LBRACE"
-    if kind == "RBRACE" and layout.braces < layout.inline:
-        layout.inline = 0
-    layout.fresh = kind in ("LBRACE", "RBRACE")
-    layout.before, layout.breaks = lexeme, 0
+    def _hanging_indent(self, *, closing: bool = False) -> str:
+        return self._block_indent() + _HANGING * max(self._parentheses, 0 if closing else 1)
 
-
-def _new_line(layout: _Layout, indent: str, at_end: bool = False) -> None:
-    lines = layout.lines
-    opens = not lines or (lines[-1].code.endswith("{") and layout.fresh)
-    lines.append(_Line(indent, after_blank=layout.breaks > 1 and layout.fresh and not opens and not at_end))
-
-
-def _block_indent(layout: _Layout) -> str:
-    return _INDENT * layout.braces
-
-
-def _hanging_indent(layout: _Layout, *, closing: bool) -> str:
-    return _block_indent(layout) + _HANGING * max(layout.open, 0 if closing else 1)
-
-
-def _joined(layout: _Layout, lexeme: Lexeme) -> bool:
-    """Whether no space stands between the lexeme written last and this one."""
-    before, kind = layout.before, lexeme.type
-    assert before is not None
-    if kind in _NO_SPACE_BEFORE or before.type == "LPAR" or layout.sign:
+    def _fits(self, at: int) -> bool:
+        """Whether the block that opens at lexeme `at` was written on one line and can stay there."""
+        end = self._closing[at]
+        if _NEWLINE.search(self.text, self.lexemes[at].span.start, self.lexemes[end].span.start):
+            return False
+        trial = copy(self)
+        line = _Line("")
+        line.code, line.width = ["{"], self.lines[-1].width
+        trial.lines, trial._inline = [line], self._braces
+        for index in range(at + 1, end + 1):
+            trial._take(index)
+            if line.width > WIDTH:
+                return False
         return True
-    if kind == "LPAR":
-        return before.type in ("NAME", "DOTTED") and not layout.field_name
-    return layout.code and "MINUS" in (kind, before.type)
 
 
-def _fits(layout: _Layout, text: str, lexemes: Sequence[Lexeme], at: int, spelled: Mapping[int, str]) -> bool:
-    """Whether the block that opens at lexeme `at` was written on one line and can stay there."""
-    end = _closing(lexemes, at)
-    if re.search(r"[\r\n]", text[lexemes[at].span.start : lexemes[end].span.start]):
-        return False
-    trial = _Layout(
-        [_Line(layout.lines[-1].indent, layout.lines[-1].code)],
-        lexemes[at],
-        braces=layout.braces,
-        inline=layout.braces,
-    )
-    for lexeme in lexemes[at + 1 : end + 1]:
-        if lexeme.type == "END":
-            trial.fresh = True
-        else:
-            _place(trial, lexeme, spelled)
-    return trial.lines[-1].width <= WIDTH
-
-
-def _closing(lexemes: Sequence[Lexeme], at: int) -> int:
-    depth = 0
-    for index in range(at, len(lexemes)):
-        depth += (lexemes[index].type == "LBRACE") - (lexemes[index].type == "RBRACE")
-        if depth == 0:
-            return index
-    raise AssertionError("braces match in a text without errors")
+def _closing(lexemes: Sequence[Lexeme]) -> dict[int, int]:
+    """Index of each opening brace -> that of its closing one."""
+    pairs, open = {}, []
+    for at, lexeme in enumerate(lexemes):
+        if lexeme.type == "LBRACE":
+            open.append(at)
+        elif lexeme.type == "RBRACE":
+            pairs[open.pop()] = at
+    return pairs
 
 
 # Comments
@@ -291,7 +290,7 @@ def _written(lines: list[_Line]) -> str:
     for line in lines:
         if line.after_blank:
             written.append("")
-        code = line.indent + line.code if line.code else ""
+        code = "".join((line.indent, *line.code)) if line.code else ""
         written.append(f"{code:<{line.column}}{line.comment}" if line.comment else code)
     return "\n".join(written) + "\n"
 

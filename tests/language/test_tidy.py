@@ -170,6 +170,13 @@ def test_a_text_with_errors_is_refused_with_all_of_them() -> None:
     assert refused.value.sources["x.nodal"].startswith("nodal 1")
 
 
+def test_a_text_that_would_grow_beyond_the_limit_is_refused() -> None:
+    with pytest.raises(DesignError) as refused:
+        tidy("nodal 1\n" + "case c {" * 99 + "let a = 1;" * 12000 + "}" * 99, "x.nodal")
+    assert [found.code for found in refused.value.diagnostics] == ["too-long"]
+    assert "canonical form" in refused.value.diagnostics[0].message
+
+
 def test_names_and_includes_need_not_be_known() -> None:
     text = 'nodal 1\ninclude "nowhere.nodal"\nbranch a: b to c = unknown\n'
     assert tidy(text) == text
