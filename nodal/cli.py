@@ -120,6 +120,10 @@ _TIDY = [
     click.option("-q", "--quiet", is_flag=True, help="Do not name files."),
     _COLOR,
 ]
+_COMPARE = [
+    click.option("--case", multiple=True, metavar="CASE", help="Compare this case alone; may be repeated."),
+    click.option("--drive", metavar="DRIVE", help="Which sources move: a drive or a source of both files."),
+]
 _DESIGN = [
     click.option("--case", multiple=True, metavar="CASE", help="A case of the file; may be repeated."),
     click.option("--all-cases", is_flag=True, help="Every case of the file."),
@@ -253,6 +257,45 @@ def figures(options: Options, file: str, low: str | None, high: str | None) -> N
             page.add("", caution)
         text = page.text()
     _finish(design, options, text)
+
+
+@main.command()
+@click.argument("old")
+@click.argument("new")
+@click.option("--exit-code", is_flag=True, help="Status 1 where anything differs.")
+@_options(_COMPARE, _OUTPUT)
+def compare(options: Options, old: str, new: str, exit_code: bool) -> None:
+    """What changed between two designs, or two states of one.
+
+    Values of the text part by part, figures that moved, requirements with another answer, cases added or
+    gone. OLD and NEW are files, REVISION:path or :path (what git has staged); includes come from the same
+    revision. As in git, such a path runs from the top of the repository, or from here if it begins with ./
+    """
+    from nodal import revisions
+    from nodal.report import comparison as report
+    from nodal.report import data
+    from nodal.studies.compare import compare as compare_designs
+
+    if options.form == "csv":
+        raise click.UsageError("compare prints text or json")
+    before, after = revisions.load_both(old, new)
+    known = list(dict.fromkeys((*before.cases, *after.cases)))
+    for case in options.case:
+        if case not in known:
+            _fail("unknown-case", name=case, hint=_nearest(case, known))
+    if options.drive is not None:
+        for design in (before, after):
+            _drive(design.network().network, options.drive)
+    answer = compare_designs(before, after, cases=options.case or None, drive=options.drive)
+    if options.form == "json":
+        text = data.dumps(report.as_data(answer))
+    else:
+        page = _page(options)
+        report.text(page, answer)
+        text = page.text()
+    _finish(after, options, text)
+    if exit_code and answer.differs:
+        raise click.exceptions.Exit(FAILED)
 
 
 @main.command()

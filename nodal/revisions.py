@@ -15,7 +15,7 @@ from typing import NoReturn
 
 from nodal import design
 from nodal.language.codes import make
-from nodal.language.diagnostics import Collector, DesignError
+from nodal.language.diagnostics import Collector, DesignError, Diagnostic
 from nodal.language.files import Outside, Unusable
 from nodal.language.parse import MAX_BYTES, decode
 
@@ -270,3 +270,19 @@ def load(word: str) -> design.Design:
     if text is None:
         raise DesignError(collector.found, collector.sources)
     return design.loads(text, label, files=files)
+
+
+def load_both(old: str, new: str) -> tuple[design.Design, design.Design]:
+    """Two designs. Raises DesignError with all that is wrong with either."""
+    loaded: list[design.Design] = []
+    found: list[Diagnostic] = []
+    sources: dict[str, str] = {}
+    for word in (old, new):
+        try:
+            loaded.append(load(word))
+        except DesignError as error:
+            found += error.diagnostics
+            sources |= error.sources
+    if found:
+        raise DesignError(found, sources)
+    return loaded[0], loaded[1]
