@@ -12,7 +12,7 @@ from __future__ import annotations
 
 import math
 import re
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Literal
 
@@ -119,12 +119,7 @@ def requirement_items(design: Design, cases: Sequence[str] | None = None) -> lis
 
     KeyError for a case that does not exist.
     """
-    names = design.cases if cases is None else cases
-    return [
-        RequirementItem(case, requirement)
-        for case in names
-        for requirement in design.network(case).network.requirements
-    ]
+    return Checks(design).items(cases)
 
 
 def evaluate(design: Design, cases: Sequence[str] | None = None) -> list[RequirementResult]:
@@ -133,25 +128,41 @@ def evaluate(design: Design, cases: Sequence[str] | None = None) -> list[Require
     Nothing is raised for a figure that cannot be had: its result has the status "error" and says why.
     """
     checks = Checks(design)
-    return [checks.result(item) for item in requirement_items(design, cases)]
+    return [checks.result(item) for item in checks.items(cases)]
 
 
 @dataclass(slots=True)
 class Checks:
-    """A design whose cases are prepared once each, for whoever wants results one by one."""
+    """A design whose cases are prepared once each, for whoever wants results one by one.
+
+    `lets` give values other than the file's, as `Design.network` takes them; what is wrong with them raises
+    DesignError where a case is first asked for.
+    """
 
     design: Design
+    lets: Mapping[str, float | str] = field(default_factory=dict)
     _models: dict[str, Model] = field(default_factory=dict, repr=False)
+
+    def items(self, cases: Sequence[str] | None = None) -> list[RequirementItem]:
+        """See `requirement_items`."""
+        return [
+            RequirementItem(case, requirement)
+            for case in (self.design.cases if cases is None else cases)
+            for requirement in self._model(case).network.requirements
+        ]
 
     def response(self, case: str) -> Response:
         """The curves of a case; KeyError where there is no such case."""
-        if case not in self._models:
-            self._models[case] = self.design.network(case)
-        return self._models[case].response
+        return self._model(case).response
 
     def result(self, item: RequirementItem) -> RequirementResult:
         """What comes of one requirement."""
         return judge(item, self.response(item.case))
+
+    def _model(self, case: str) -> Model:
+        if case not in self._models:
+            self._models[case] = self.design.network(case, **self.lets)
+        return self._models[case]
 
 
 def judge(item: RequirementItem, response: Response) -> RequirementResult:

@@ -1,4 +1,4 @@
-"""The command `nodal`: reads designs, prints sweeps and figures.
+"""The command `nodal`: reads designs, prints sweeps and figures, checks requirements.
 
 Exit status: 0 all well; 1 a requirement or a recorded figure failed; 2 the input or the call is wrong.
 Heavy modules are imported inside the commands, so that `nodal --help` starts at once.
@@ -11,7 +11,7 @@ import dataclasses
 import itertools
 import os
 import sys
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import IO, TYPE_CHECKING, Any, NoReturn, TypeVar
 
@@ -106,12 +106,17 @@ _COLOR = click.option(
     "--color", type=click.Choice(["auto", "always", "never"]), default="auto", show_default=True,
     help="Color text; auto heeds NO_COLOR.",
 )  # fmt: skip
+_AS_JSON = click.option("--json", "as_json", is_flag=True, help="Short for --format json.")
+_TO_FILE = click.option(
+    "-o", "--output", metavar="FILE", help="Write the answer to FILE, whole or not at all."
+)
+_QUIET = click.option("-q", "--quiet", is_flag=True, help="Show no warnings and notes.")
 _OUTPUT = [
     click.option("--format", type=click.Choice(["text", "json", "csv"]), default="text", show_default=True,
                  help="How to print the answer."),
-    click.option("--json", "as_json", is_flag=True, help="Short for --format json."),
-    click.option("-o", "--output", metavar="FILE", help="Write the answer to FILE, whole or not at all."),
-    click.option("-q", "--quiet", is_flag=True, help="Show no warnings and notes."),
+    _AS_JSON,
+    _TO_FILE,
+    _QUIET,
     _COLOR,
 ]
 _TIDY = [
@@ -124,11 +129,28 @@ _COMPARE = [
     click.option("--case", multiple=True, metavar="CASE", help="Compare this case alone; may be repeated."),
     click.option("--drive", metavar="DRIVE", help="Which sources move: a drive or a source of both files."),
 ]
+_CASE = click.option("--case", multiple=True, metavar="CASE", help="A case of the file; may be repeated.")
+_LET = click.option("--let", multiple=True, metavar="NAME=VALUE",
+                    help="Give a `let` another value; may be repeated.")  # fmt: skip
+_JOBS = click.option("-j", "--jobs", type=click.IntRange(min=1), metavar="N",
+                     help="Files to work on at a time; one for each processor unless given.")  # fmt: skip
+_CHECK = [
+    _CASE,
+    _LET,
+    click.option("--no-solve", is_flag=True, help="Only read the files and check their connections: fast."),
+    _JOBS,
+    click.option("--format", type=click.Choice(["text", "json", "github", "junit"]), default="text",
+                 show_default=True, help="How to print the answer; github: as annotations."),
+    _AS_JSON,
+    _TO_FILE,
+    _QUIET,
+    _COLOR,
+]
+_RECORD = [_JOBS, _QUIET, _COLOR]
 _DESIGN = [
-    click.option("--case", multiple=True, metavar="CASE", help="A case of the file; may be repeated."),
+    _CASE,
     click.option("--all-cases", is_flag=True, help="Every case of the file."),
-    click.option("--let", multiple=True, metavar="NAME=VALUE",
-                 help="Give a `let` another value; may be repeated."),
+    _LET,
     click.option("--drive", metavar="DRIVE", help="Which sources move: a drive or a source of the file."),
 ]
 _SPAN = [
@@ -226,14 +248,21 @@ def sweep(
 
 @main.command()
 @click.argument("file")
+@click.option("--for-diff", is_flag=True, help="As git's diff shows it: the text, then a figure a line.")
 @_options(_SPAN, _DESIGN, _OUTPUT)
-def figures(options: Options, file: str, low: str | None, high: str | None) -> None:
+def figures(options: Options, file: str, low: str | None, high: str | None, for_diff: bool) -> None:
     """Figures of merit of every reading and contact, all cases side by side.
 
-    Those that the file's requirements ask about are among them. --case chooses cases.
+    Those that the file's requirements ask about are among them. --case chooses cases. With --for-diff, which
+    is for git to call, a file with errors gives these as its answer, at status 0.
     """
     from nodal.report import answers, data, terminal
 
+    if for_diff:
+        from nodal.report import diffing
+
+        _for_git(lambda: diffing.for_diff(file), options)
+        return
     design = _load(file)
     models = _models(design, options, default_all=True)
     responses = {case: model.response for case, model in models.items()}
@@ -260,17 +289,22 @@ def figures(options: Options, file: str, low: str | None, high: str | None) -> N
 
 
 @main.command()
-@click.argument("old")
-@click.argument("new")
+@click.argument("designs", nargs=-1, required=True, metavar="OLD NEW")
+@click.option("--as-git-driver", is_flag=True, help="Take what git gives an external diff driver.")
 @click.option("--exit-code", is_flag=True, help="Status 1 where anything differs.")
 @_options(_COMPARE, _OUTPUT)
-def compare(options: Options, old: str, new: str, exit_code: bool) -> None:
+def compare(options: Options, designs: tuple[str, ...], as_git_driver: bool, exit_code: bool) -> None:
     """What changed between two designs, or two states of one.
 
     Values of the text part by part, figures that moved, requirements with another answer, cases added or
     gone. OLD and NEW are files, REVISION:path or :path (what git has staged); includes come from the same
     revision. As in git, such a path runs from the top of the repository, or from here if it begins with ./
     """
+    if as_git_driver:
+        from nodal.report import diffing
+
+        _for_git(lambda: diffing.driver(designs, _page(options)), options)
+        return
     from nodal import revisions
     from nodal.report import comparison as report
     from nodal.report import data
@@ -278,7 +312,9 @@ def compare(options: Options, old: str, new: str, exit_code: bool) -> None:
 
     if options.form == "csv":
         raise click.UsageError("compare prints text or json")
-    before, after = revisions.load_both(old, new)
+    if len(designs) != 2:
+        raise click.UsageError("compare takes two designs, OLD and NEW")
+    before, after = revisions.load_both(*designs)
     known = list(dict.fromkeys((*before.cases, *after.cases)))
     for case in options.case:
         if case not in known:
@@ -296,6 +332,27 @@ def compare(options: Options, old: str, new: str, exit_code: bool) -> None:
     _finish(after, options, text)
     if exit_code and answer.differs:
         raise click.exceptions.Exit(FAILED)
+
+
+class _Survives:
+    """Says what went wrong in place of failing: git gives up a whole log when a driver of one file fails."""
+
+    def __init__(self, options: Options) -> None:
+        self.options = options
+
+    def __enter__(self) -> None:
+        return
+
+    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, trace: object) -> bool:
+        if error is None or not isinstance(error, Exception) or isinstance(error, BrokenPipeError):
+            return False
+        _write(f"nodal failed here, which is a mistake in it: {error!r}\n", self.options)
+        return True
+
+
+def _for_git(answer: Callable[[], str], options: Options) -> None:
+    with _Survives(options):
+        _write(answer(), options)
 
 
 @main.command()
@@ -363,6 +420,109 @@ def tidy(options: Options, paths: tuple[str, ...], check: bool, diff: bool) -> N
         raise click.exceptions.Exit(FAILED)
 
 
+@main.command()
+@click.argument("paths", nargs=-1, required=True, metavar="PATH...")
+@_options(_CHECK)
+def check(options: Options, paths: tuple[str, ...], no_solve: bool, jobs: int | None) -> None:
+    """Hold designs to their requirements, and to the figures recorded beside them.
+
+    Each PATH is a file, a folder whose .nodal files are meant, or - for standard input. Every `require` of
+    every case is answered with what was asked, what was found and the margin: what is left of the limit, or
+    of the tolerance for `=`, negative where it is missed. A file without source or reading is a shared file,
+    checked where it is included.
+
+    Where a record stands beside a design (see `nodal record`), figures that moved beyond its tolerance, are
+    new, stale or no longer reached fail. With --let records are not looked at.
+
+    Status: 0 all well; 1 a requirement or a recorded figure failed; 2 a file has errors, or a required figure
+    cannot be computed.
+    """
+    from nodal.checking import Wanted, check_files, worst
+    from nodal.language.diagnostics import Collector
+    from nodal.paths import find
+    from nodal.report import checks
+
+    collector = Collector()
+    files = find(paths, collector)
+    wanted = Wanted(options.case, _lets(options), solve=not no_solve)
+    answers = list(_progress(check_files(files, wanted, jobs), len(files), options))
+    known = dict.fromkeys(case for answer in answers for case in answer.cases)
+    for case in options.case:
+        if case not in known and all(answer.kind != "broken" for answer in answers):
+            _fail("unknown-case", name=case, hint=_nearest(case, known))
+    if options.form == "text":
+        color = options.color if options.output is None or options.color == "always" else "never"
+        text = checks.text(answers, _brush(color))
+    elif options.form == "json":
+        single = len(paths) == 1 and files == list(paths)
+        text = checks.json_text(answers, single=single, warnings=not options.quiet)
+    elif options.form == "github":
+        text = checks.github_text(answers, warnings=not options.quiet)
+    else:
+        text = checks.junit_text(answers)
+    if options.form in ("text", "junit"):
+        for answer in answers:
+            shown = [d for d in answer.diagnostics if d.severity == "error" or not options.quiet]
+            _show(shown, answer.sources, options.color)
+    if collector.failed:
+        raise DesignError(collector.found, collector.sources)
+    _write(text, options)
+    if worst(answers):
+        raise click.exceptions.Exit(worst(answers))
+
+
+@main.command()
+@click.argument("paths", nargs=-1, required=True, metavar="PATH...")
+@_options(_RECORD)
+def record(options: Options, paths: tuple[str, ...], jobs: int | None) -> None:
+    """Write the figures of every case into a file beside each design, for `nodal check` to compare with.
+
+    Each PATH is a file or a folder whose .nodal files are meant. The figures of bench_probe.nodal go to
+    bench_probe.figures.toml, one a line, sorted, with nine digits. Lines that still hold stay as they are;
+    tolerances and comments set by hand are kept.
+    """
+    from nodal.checking import record_files, worst
+    from nodal.language.diagnostics import Collector
+    from nodal.paths import STANDARD_INPUT, find
+    from nodal.report import checks
+
+    if STANDARD_INPUT in paths:
+        raise click.UsageError("a record stands beside a file, so that - cannot be recorded")
+    collector = Collector()
+    files = find(paths, collector)
+    answers = list(_progress(record_files(files, jobs), len(files), options))
+    for answer in answers:
+        shown = [d for d in answer.diagnostics if d.severity == "error" or not options.quiet]
+        _show(shown, answer.sources, options.color)
+    _write(checks.record_text(answers), options)
+    if collector.failed:
+        raise DesignError(collector.found, collector.sources)
+    if worst(answers):
+        raise click.exceptions.Exit(worst(answers))
+
+
+_Answer = TypeVar("_Answer")
+
+
+def _progress(answers: Iterator[_Answer], total: int, options: Options) -> Iterator[_Answer]:
+    """The same answers, with a bar on the terminal while they come."""
+    if total < 2 or not sys.stderr.isatty():
+        yield from answers
+        return
+    from rich.console import Console
+    from rich.progress import Progress
+
+    console = Console(stderr=True, no_color=not _colored(sys.stderr, options.color))
+    with Progress(console=console, transient=True) as bar:
+        yield from bar.track(answers, total=total, description="")
+
+
+def _brush(color: str) -> Callable[[str, str], str]:
+    """Paints words where color is wanted on standard output."""
+    colored = _colored(sys.stdout, color)
+    return lambda text, shade: click.style(text, fg=shade) if colored else text
+
+
 def _painted(difference: str, color: str) -> str:
     """A unified diff, in colors where they are wanted."""
     if not _colored(sys.stdout, color):
@@ -385,17 +545,23 @@ def _models(design: Design, options: Options, *, default_all: bool) -> dict[str,
     """The models of the cases asked for, by name."""
     if options.case and options.all_cases:
         raise click.UsageError("--case does not go with --all-cases")
-    lets: dict[str, Any] = {}
-    for text in options.let:
-        name, equals, value = text.partition("=")
-        if not equals or not name.strip() or not value.strip():
-            _fail("bad-let", text=text, hint="write --let NAME=VALUE, as in --let lead_length=50mm")
-        lets[name.strip()] = value.strip()
+    lets: dict[str, Any] = _lets(options)
     for case in options.case:
         if case not in design.cases:
             _fail("unknown-case", name=case, hint=_nearest(case, design.cases))
     cases = options.case or (design.cases if options.all_cases or default_all else design.cases[:1])
     return {case: design.network(case, **lets) for case in dict.fromkeys(cases)}
+
+
+def _lets(options: Options) -> dict[str, str]:
+    """What --let says, by name."""
+    lets: dict[str, str] = {}
+    for text in options.let:
+        name, equals, value = text.partition("=")
+        if not equals or not name.strip() or not value.strip():
+            _fail("bad-let", text=text, hint="write --let NAME=VALUE, as in --let lead_length=50mm")
+        lets[name.strip()] = value.strip()
+    return lets
 
 
 def _drive(network: Any, asked: str | None) -> str:

@@ -37,7 +37,10 @@ from nodal.language.units import show
 if TYPE_CHECKING:
     from nodal.measured import Measured
 
-__all__ = ["Change", "Record", "Tolerance", "compare", "load", "parse", "record_path", "update", "value_text"]
+__all__ = [
+    "Change", "Record", "Tolerance", "compare", "empty", "load", "parse", "record_path", "update",
+    "value_text",
+]  # fmt: skip
 
 FORMAT = 1
 SUFFIX = ".figures.toml"
@@ -145,6 +148,11 @@ def load(path: str) -> Record | None:
     if text is None:
         raise DesignError(collector.found, collector.sources)
     return parse(text, path)
+
+
+def empty(path: str) -> Record:
+    """The record that says nothing, for a file that does not exist yet."""
+    return Record(path, "", {}, ())
 
 
 def parse(text: str, path: str) -> Record:

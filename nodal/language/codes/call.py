@@ -104,6 +104,14 @@ CALL: tuple[Code, ...] = (
         "whose names begin with a point are not searched.",
     ),
     Code(
+        "process-died",
+        "error",
+        "a process that worked on one of the files ended before it had an answer",
+        "try with --jobs 1",
+        "Several files are worked on in processes of their own. One of them was ended from outside, perhaps "
+        "for want of memory; no answer is complete without it.",
+    ),
+    Code(
         "record-syntax",
         "error",
         "{path} is not TOML: {reason}",
