@@ -36,6 +36,8 @@ _FOLLOWED = (16, 64, 256, 1024)
 _BLUNT = 1e-13
 """Of the largest |H|: what of the rest does not matter."""
 
+_ROUNDING = 1e-13
+
 _RESOLVED = 2000.0
 """Radians that the longest delay may turn through over what is left of the rest."""
 
@@ -143,7 +145,8 @@ def _followed(
         fronts = Fronts(system, source, outputs, window, most)
         if fronts.rest is None:
             break
-        size = np.abs(fronts.evaluate(probes)[0])
+        values, noise = fronts.evaluate(probes)
+        size = np.where(noise < 0.1 * np.abs(values), np.abs(values), 0.0)
         sharp = (size[-1] > _BLUNT * size.max(axis=(0, 2))[:, None]).any(axis=0)
         if not sharp.any() or probes[sharp][-1].imag * fronts.longest < _RESOLVED:
             break
@@ -154,11 +157,11 @@ def _followed(
 def _check(fronts: Fronts, window: float) -> None:
     """The fronts together are the transfer function, where what comes after the window has died out."""
     s = np.asarray(40 / window * (1 + 1j * 10.0 ** np.arange(-1.0, 3.0, 0.1)))
-    together = (fronts.evaluate(s)[0] * np.exp(-s * fronts.starts[:, None, None])).sum(axis=0)
+    values = fronts.evaluate(s)[0]
+    together = (values * np.exp(-s * fronts.starts[:, None, None])).sum(axis=0)
     expected = solve(fronts.system, s, [fronts.source], fronts.outputs).values[0]
-    scale = np.abs(expected).max(axis=1, keepdims=True)
-    off = np.abs(together - expected)
-    if not (off <= AGREEMENT * np.maximum(scale, np.abs(together).max(axis=1, keepdims=True))).all():
+    allowed = AGREEMENT * np.abs(expected).max(axis=1) + _ROUNDING * np.abs(values).max(axis=(0, 2))
+    if not (np.abs(together - expected) <= allowed[:, None]).all():
         raise NotInverted("the fronts do not add up to the transfer function")
 
 

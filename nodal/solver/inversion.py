@@ -67,6 +67,10 @@ class NotInverted(Exception):
     """No response that could be trusted: says why."""
 
 
+class _Lost(Exception):
+    """Rounding between the probes was larger than at them."""
+
+
 @dataclass(frozen=True)
 class Inversion:
     """Responses of n transfer functions for 0 <= t <= window, after a unit step or ramp at t = 0.
@@ -148,11 +152,18 @@ def invert(transfer: Transfer, jump: Floats, window: float, outputs: int = 1) ->
     s = np.asarray(shift + 1j * omega, dtype=np.complex128)
     probed, noise = transfer(s)
     usable, measure = _usable(probed, noise, jump, outputs)
-    tail, last = _tail(s, (probed - jump[:, None])[:, :usable], measure, usable < len(s))
-    end = omega[last]
-    edges = np.append(0.0, shift * 2.0 ** np.arange(math.ceil(math.log2(max(end / shift, 1))) + 1))
-    edges[-1] = max(end, shift)
-    centre, half, values, left_out = _panels(transfer, jump, tail, measure, shift, edges)
+    while True:
+        tail, last = _tail(s, (probed - jump[:, None])[:, :usable], measure, usable < len(s))
+        count = math.ceil(math.log2(max(omega[last] / shift, 1)))
+        edges = np.append(shift * 2.0 ** np.arange(-1, count), max(omega[last], shift))
+        edges[0] = 0.0
+        try:
+            centre, half, values, left_out = _panels(transfer, jump, tail, measure, shift, edges)
+            break
+        except _Lost:
+            usable = min(usable, last) - _PROBES // 2
+            if usable < 4 * _PROBES:
+                raise NotInverted("the transfer function is lost in rounding") from None
     beyond = np.abs(values[:, -1, -1]) * (edges[-1] / np.pi)
     error = math.exp(SHIFT) * (left_out + beyond) + ROUNDING * measure
     made = Inversion(window, jump, measure, error, shift, centre, half, values, tail)
@@ -253,7 +264,7 @@ def _panels(
         s = np.asarray(shift + 1j * (centre[:, None] + half[:, None] * _POINTS), dtype=np.complex128)
         h, noise = transfer(s.ravel())
         if not (noise <= 100 * NOISY * measure[:, None]).all():
-            raise NotInverted("the transfer function is lost in rounding")
+            raise _Lost
         values = (h - jump[:, None] - tail.transfer(s.ravel())).reshape(len(jump), *s.shape) / s
         high = values @ _TO_LEGENDRE[-2:].T
         rough = np.abs(high).sum(axis=-1) * half * (2 / np.pi)
