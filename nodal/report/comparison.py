@@ -20,7 +20,7 @@ from nodal.studies.compare import Change, Comparison, Judged, Moved
 from nodal.studies.facts import distinct
 
 _WHOLE = ("added", "gone", "renamed")
-_FRACTIONS = ("flatness", "peaking", "error", "disturbance")
+FRACTIONS = ("flatness", "peaking", "error", "disturbance")
 """Figures that are parts of one, shown in percent: how far they moved is told in points."""
 _STYLES = {"pass": "green", "fail": "red", "error": "red"}
 
@@ -118,7 +118,7 @@ def _moved(moved: Sequence[Moved], several: bool, count: str) -> Table:
 def _moved_by(moved: Moved) -> str:
     """The relative change, but points of a figure in percent and degrees of a phase."""
     old, new, name = moved.old.value, moved.new.value, moved.row.call.name
-    if name not in _FRACTIONS and name != "phase":
+    if name not in FRACTIONS and name != "phase":
         return signed(moved.relative)
     if old is None or new is None or not math.isfinite(new - old):
         return ""
@@ -146,7 +146,7 @@ def figures(row: FigureRow, old: Result, new: Result) -> tuple[str, str]:
         return before, after
     unit = new.unit
     scale = 1.0
-    if row.call.name in _FRACTIONS:
+    if row.call.name in FRACTIONS:
         unit, scale = "%", 100.0
     return distinct(old.value * scale, new.value * scale, lambda v, digits: show(v, unit, digits), least=5)
 
@@ -172,18 +172,22 @@ def _answer(result: RequirementResult | None) -> Text:
     if result is None:
         return Text(numbers.NOTHING)
     answer = Text(result.status, style=_STYLES[result.status])
-    found = result.reason or "nothing found"
-    if result.found is not None:
-        found = (result.bound or "") + _found(result, result.found)
-    return answer.append(f": {found}\n{result.figure}\n{result.asked}", style="none")
+    came = found(result) if result.found is not None else result.reason
+    return answer.append(f": {came}\n{result.figure}\n{result.asked}", style="none")
 
 
-def _found(result: RequirementResult, value: float) -> str:
-    if result.unit == "dB":
-        return f"{numbers.decibels(value)} dB"
-    if result.figure.partition("(")[0] in _FRACTIONS:
-        return numbers.part_of_one(value)
-    return numbers.quantity(value, result.unit, 5 if result.unit == "" else 4)
+def found(result: RequirementResult) -> str:
+    """What came of a requirement's figure: "4.80 %", ">= 1.000 GHz"; "" where nothing did."""
+    value, unit = result.found, result.unit
+    if value is None:
+        return ""
+    if unit == "dB":
+        text = f"{numbers.decibels(value)} dB"
+    elif result.figure.partition("(")[0] in FRACTIONS:
+        text = numbers.part_of_one(value)
+    else:
+        text = numbers.quantity(value, unit, 5 if unit == "" else 4)
+    return f"{result.bound} {text}" if result.bound else text
 
 
 # Data

@@ -372,10 +372,10 @@ def has_moved(row: FigureRow, old: Result, new: Result) -> bool:
     largest = max(abs(old.value), abs(new.value))
     if not math.isfinite(largest):
         return True
-    return not abs(new.value - old.value) <= max(MOVED * largest, _floor(row))
+    return not abs(new.value - old.value) <= max(MOVED * largest, floor(row))
 
 
-def _floor(row: FigureRow) -> float:
+def floor(row: FigureRow) -> float:
     """What rounding leaves of a figure that is zero in truth, in its unit."""
     angle = 1e-12
     if row.call.name == "phase":
