@@ -86,6 +86,10 @@ PAIRS = {
         "let a = 1          # one\ncase c {           # two\n  omit d           # three\n"
         "}                  # four\ncase e { omit f }  # five\n",
     ),
+    "a comment in an empty block": (
+        "case a {# why\n}\ncase b {\n#why\n}",
+        "case a {  # why\n}\ncase b {\n  #why\n}\n",
+    ),
     "a line break inside a statement": (
         "place p: leg(a to b,\nc with d; r = 3,\n\n\n # why\ns = (4 +\n5)\n)\nlet x =\n1 mm",
         "place p: leg(a to b,\n    c with d; r = 3,\n    # why\n    s = (4 +\n        5)\n)\n"
@@ -141,6 +145,17 @@ class TestComments:
     def test_a_new_line_joins_the_column_of_its_run(self) -> None:
         text = "let a = 1        # one\nlet b = 1        # two\nlet c = 1 # three\n"
         assert of(text) == "let a = 1        # one\nlet b = 1        # two\nlet c = 1        # three\n"
+
+    def test_the_column_that_most_stand_in_wins(self) -> None:
+        text = "let a = 1     # one\nlet b = 1     # two\nlet c = 1   # three\n\nlet d = 1   # four\n"
+        assert of(text) == text.replace("   # three", "     # three").replace("   # four", "  # four")
+
+    def test_columns_are_those_that_an_editor_shows(self) -> None:
+        assert of("let a = 1\t# one\nlet bcd = 1\t# two\n") == (
+            "let a = 1       # one\nlet bcd = 1     # two\n"
+        )
+        marked = "\ufeffnodal 1      # one\nlet a = 1    # two\n"
+        assert tidy(marked) == marked.removeprefix("\ufeff")
 
     def test_a_comment_may_go_on_in_its_column(self) -> None:
         text = "let  a = 1 # one that is\n           # long\n# not this\nlet b = 2\n"
