@@ -24,11 +24,12 @@ _COLORS = {"pass": "green", "fail": "red", "error": "red", "moved": "red", "new"
 
 
 def found_text(result: RequirementResult) -> str:
-    """What was found, and where: "7.56 % at 35.2 MHz", ">= 1 GHz"; "" where nothing was."""
+    """What was found, and where: "7.56 % at 35.2 MHz", ">= 1 GHz, not reached"; "" where nothing was."""
     if result.found is None:
         return ""
-    value = _value(result, result.found)
-    text = f"{result.bound} {value}" if result.bound else value
+    text = _value(result, result.found)
+    if result.bound is not None:
+        text = f"{result.bound} {numbers.quantity(result.found, result.unit, 5, trim=True)}, not reached"
     return f"{text} at {numbers.frequency(result.at)}" if result.at is not None else text
 
 
@@ -57,19 +58,17 @@ def margin_text(result: RequirementResult) -> str:
 
 
 def change_text(change: Change) -> str:
-    """How a recorded figure differs: "167 MHz -> 165 MHz (-1.2 %)"."""
-    if change.kind == "new":
-        return f"{change.after}, not in the record"
-    if change.kind == "stale":
-        return f"{change.before} in the record only"
-    text = f"{change.before} -> {change.after}"
-    if change.kind == "unreached":
-        return f"{text}, no longer reached"
-    return f"{text} ({_signed(change.change)})" if change.change is not None else text
+    """How a recorded figure differs: "167 MHz -> 165 MHz"."""
+    if change.before is None or change.after is None:
+        return change.after or f"{change.before}, in the record only"
+    return f"{change.before} -> {change.after}"
 
 
-def _signed(change: float) -> str:
-    text = numbers.part_of_one(change)
+def change_size(change: Change) -> str:
+    """By how much of the recorded value: "-1.23 %"; "" where that says nothing."""
+    if change.change is None:
+        return ""
+    text = numbers.part_of_one(change.change)
     return text if text.startswith("-") else f"+{text}"
 
 
@@ -105,24 +104,25 @@ def _file_text(answer: CheckAnswer, paint: Paint) -> Iterable[str]:
             yield f"  {case}"
         for cells in found:
             padded = [cell.ljust(width) for cell, width in zip(cells, widths, strict=True)]
-            word = padded[0].replace(cells[0], paint(cells[0], _COLORS[cells[0]]))
-            yield f"    {'  '.join([word, *padded[1:]])}".rstrip()
+            padded[0] = padded[0].replace(cells[0], paint(cells[0], _COLORS[cells[0]]))
+            yield f"    {'  '.join(padded)}".rstrip()
     if answer.record is not None and not answer.changes:
         yield "  figures as recorded"
 
 
 def _case_rows(answer: CheckAnswer, case: str) -> list[tuple[str, ...]]:
-    """(status, name, asked, found, margin, place) a line."""
+    """(status, name, asked, found, margin, place, reason) a line."""
     rows: list[tuple[str, ...]] = []
     for r in answer.requirements:
         if r.case == case:
-            found = f"{found_text(r)} ({r.reason})" if r.bound and r.found is not None else found_text(r)
-            rows.append((r.status, r.name, f"{r.figure} {r.asked}", found or r.reason, margin_text(r),
-                         f"{visible(r.path)}:{r.line}"))  # fmt: skip
+            reason = r.reason if r.status == "error" else ""
+            rows.append((r.status, r.name, f"{r.figure} {r.asked}", found_text(r), margin_text(r),
+                         f"{visible(r.path)}:{r.line}", reason))  # fmt: skip
     for change in answer.changes:
         if change.case == case:
             place = f"{visible(change.path)}:{change.line}" if change.line else visible(change.path)
-            rows.append((change.kind, "recorded", change.figure, change_text(change), "", place))
+            rows.append((change.kind, "recorded", change.figure, change_text(change), change_size(change),
+                         place, ""))  # fmt: skip
     return rows
 
 
@@ -261,7 +261,7 @@ def github_text(answers: Sequence[CheckAnswer], *, warnings: bool) -> str:
                 lines.append(_annotation("error", place, sentence(r)))
         for c in answer.changes:
             place = {"file": c.path, **({"line": c.line} if c.line else {}), "title": f"{c.case}: {c.kind}"}
-            lines.append(_annotation("error", place, f"{c.figure}: {change_text(c)}"))
+            lines.append(_annotation("error", place, change_sentence(c)))
     return "\n".join([*lines, summary(answers), ""])
 
 
@@ -275,6 +275,12 @@ def sentence(result: RequirementResult) -> str:
         return f"{result.figure} {result.asked}: {result.reason}"
     found = f"found {found_text(result)}, margin {margin_text(result)}"
     return f"{result.figure} {result.asked}: {found}"
+
+
+def change_sentence(change: Change) -> str:
+    """A changed figure in one line."""
+    size = change_size(change)
+    return f"{change.figure}: {change_text(change)}" + (f" ({size})" if size else "")
 
 
 def _annotation(kind: str, properties: Mapping[str, Any], message: str) -> str:
@@ -319,7 +325,7 @@ def junit_text(answers: Sequence[CheckAnswer]) -> str:
                 if changed:
                     message = f"{_count(len(changed), 'figure')} not as recorded"
                     problem = ElementTree.SubElement(test, "failure", type="recorded", message=message)
-                    problem.text = "\n".join(f"{c.kind} {c.figure}: {change_text(c)}" for c in changed)
+                    problem.text = "\n".join(f"{c.kind} {change_sentence(c)}" for c in changed)
         for key, tags in (("tests", "testcase"), ("failures", "failure"), ("errors", "error")):
             suite.set(key, str(len(suite.findall(f".//{tags}"))))
     ElementTree.indent(root)
