@@ -34,6 +34,7 @@ TOLERANCE = 1e-11
 np.empty(1 << 24, dtype=np.uint8)
 
 _STEPS = 8
+_EPSILON = float(np.finfo(float).eps)
 _SAMPLES = 3
 _BLOCK_BYTES = 1 << 22
 _BLOCK_POINTS = (192, 512)
@@ -107,6 +108,10 @@ class _Run:
         self, system: System, s: Complexes, sources: Sequence[Source], outputs: Sequence[Output],
         plan: Plan | None, slopes: bool,
     ) -> None:
+        # A difference times ten is taken times ten at the very end: ten times each voltage would round before
+        # they cancel, and no correction would ever show it.
+        self.scale: Floats = np.array([max(map(abs, o.values()), default=1.0) or 1.0 for o in outputs])
+        outputs = [{k: w / size for k, w in o.items()} for o, size in zip(outputs, self.scale, strict=True)]
         self.s, self.sources, self.outputs, self.slopes = s, sources, outputs, slopes
         shape = (2 if slopes else 1, len(sources), len(outputs), len(s))
         self.values: Complexes = np.zeros(shape, dtype=complex)
@@ -131,7 +136,10 @@ class _Run:
             self._extend(plan, int(point))
 
     def solution(self, which: int) -> Solution:
-        return Solution(self.values[which], self.error[which], self.refined, self.replanned, self.extended)
+        values = self.values[which].copy()
+        values.real *= self.scale[:, None]  # part by part: infinite times complex one is not a number
+        values.imag *= self.scale[:, None]
+        return Solution(values, self.error[which], self.refined, self.replanned, self.extended)
 
     def _unsettled(self) -> NDArray[np.intp]:
         return np.nonzero((self.error > TOLERANCE).any(axis=(0, 1, 2)))[0]
@@ -279,7 +287,7 @@ class _Block:
         kernel.solve(self.w, list(first), self.spare, backward=kernel.backward_to(wanted))
         change = self._outputs(outputs, first)
         values = self._outputs(outputs, x) + change
-        error = _ratio(change, values)
+        error = _ratio(change, values, self._blur(outputs, first))
         if not (error > TOLERANCE).any():
             return values, error, error
         kernel.solve(self.w, list(first), self.spare, [], kernel.backward_rest(wanted))
@@ -287,7 +295,7 @@ class _Block:
         kernel.solve(self.w, list(second), self.spare, backward=kernel.backward_to(wanted))
         change = self._outputs(outputs, second)
         values = values + change
-        return values, _ratio(change, values), error
+        return values, _ratio(change, values, self._blur(outputs, second)), error
 
     def _correction(self, giving: Giving, places: Mapping[int, Any], drops: Complexes) -> Complexes:
         """Right-hand side less A x, from every term's drop."""
@@ -309,8 +317,8 @@ class _Block:
         self, b: Complexes, outputs: Sequence[Output], slopes: bool
     ) -> list[tuple[Complexes, Floats]]:
         """Corrections for as long as they help; (values, errors), and those of the slopes."""
-        x, small, values, change = self._refine(b, outputs, None)
-        results = [(values, _ratio(change, values))]
+        x, small, values, change, blur = self._refine(b, outputs, None)
+        results = [(values, _ratio(change, values, blur))]
         if slopes:
             pattern = self.plan.pattern
             slopes_of_terms = np.repeat(pattern.c[:, None], len(self.s), axis=1).astype(complex)
@@ -318,14 +326,14 @@ class _Block:
                 slopes_of_terms[term] += value
             b = self.plan.balance.remainder(np.zeros_like(b), slopes_of_terms * self._drops(x, small))
             floor = np.abs(values / self.s)
-            _, _, slope, change = self._refine(b, outputs, floor)
-            results.append((slope, _ratio(change, np.maximum(np.abs(slope), floor))))
+            _, _, slope, change, blur = self._refine(b, outputs, floor)
+            results.append((slope, _ratio(change, np.maximum(np.abs(slope), floor), blur)))
         return results
 
     def _refine(
         self, b: Complexes, outputs: Sequence[Output], floor: Floats | None
-    ) -> tuple[Complexes, Complexes, Complexes, Complexes]:
-        """(x, small, outputs, their last change); x and small are kept apart for small differences."""
+    ) -> tuple[Complexes, Complexes, Complexes, Complexes, Floats]:
+        """(x, small, outputs, their last change, its blur); x and small are apart for small differences."""
         kernel = self.plan.kernel
         coefficients = self.plan.pattern.coefficients(self.s, self.functions)
         x = b.copy()
@@ -342,14 +350,20 @@ class _Block:
             change = self._outputs(outputs, correction)
             values = self._outputs(outputs, x) + self._outputs(outputs, small)
             scale = values if floor is None else np.maximum(np.abs(values), floor)
-            last, error = error, _ratio(change, scale)
+            blur = self._blur(outputs, correction)
+            last, error = error, _ratio(change, scale, blur)
             waiting = error > TOLERANCE
             if not waiting.any() or (last is not None and not (error[waiting] < 0.25 * last[waiting]).any()):
                 break
-        return x, small, values, change
+        return x, small, values, change, blur
 
     def _drops(self, x: Complexes, small: Complexes) -> Complexes:
         return product(self.plan.pattern.taking, x) + product(self.plan.pattern.taking, small)
+
+    def _blur(self, outputs: Sequence[Output], correction: Complexes) -> Floats:
+        """How far the change of an output may be off for the rounding of the corrections it is made of."""
+        sizes = [{k: abs(w) for k, w in o.items()} for o in outputs]
+        return _EPSILON * self._outputs(sizes, np.abs(correction)).real
 
     def _outputs(self, outputs: Sequence[Output], x: Complexes) -> Complexes:
         result = np.zeros((len(outputs), x.shape[1]), dtype=complex)
@@ -359,9 +373,9 @@ class _Block:
         return result
 
 
-def _ratio(change: Complexes, values: Any) -> Floats:
-    """|change/values|, 0 where nothing changed, infinite where it is not a number."""
-    size = np.abs(change)
+def _ratio(change: Complexes, values: Any, blur: Floats) -> Floats:
+    """(|change| + blur)/|values|, 0 where zero stayed zero, infinite where it is not a number."""
+    size = np.where((change == 0) & (values == 0), 0.0, np.abs(change) + blur)
     result: Floats = np.divide(size, np.abs(values), out=np.zeros(size.shape), where=size != 0)
     result[np.isnan(result)] = np.inf
     return result
