@@ -95,12 +95,16 @@ def networks(
     parts += [kind(name, i, 0, Value(1.0), side="test") for i, name in enumerate(sources, 1)]
     first = draw(st.integers(1, count - 1), label="reading")
     second = (first + draw(st.integers(1, count - 1))) % count
+    times = Value(draw(st.sampled_from([1.0, 10.0, 0.3])))
     unit = "V" if source == "voltage" else "A"
     return Network(
         nodes=nodes,
         parts=tuple(parts),
         contacts=(Contact("port1", 1, 0),) if ports == 1 else (),
-        readings=(Reading("out", first, second), *(Reading(f"at{i}", i, 0) for i in range(1, ports + 1))),
+        readings=(
+            Reading("out", first, second, times),
+            *(Reading(f"at{i}", i, 0) for i in range(1, ports + 1)),
+        ),
         drives=tuple(Drive(name, ((name, 1.0),), unit) for name in sources),
         default_drive=sources[0] if ports == 1 else None,
     )
@@ -191,7 +195,9 @@ def text_of(network: Network) -> str:
     node = network.nodes
     for part in network.parts:
         lines += _statements(part, node)
-    lines += [f"reading {r.name}: {node[r.a]} to {node[r.b]}" for r in network.readings]
+    lines += [
+        f"reading {r.name}: {node[r.a]} to {node[r.b]} times {r.times.nominal!r}" for r in network.readings
+    ]
     return "\n".join(lines) + "\n"
 
 

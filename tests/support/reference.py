@@ -301,10 +301,18 @@ def reading(network: Network, name: str, frequency: float, drive: str | None = N
     """A reading at one frequency in Hz (0 is approached along the real axis), with `DIGITS` digits."""
     asked = network.reading(name)
     # A limit along the real axis needs digits for every power of s that cancels.
-    with mp.workdps(DIGITS if frequency else 8 * DIGITS):
+    with mp.workdps(max(mp.dps, DIGITS if frequency else 8 * DIGITS)):
         s = mpc(0, 2 * mp.pi * mpf(frequency)) if frequency else mpf(10) ** (-2 * DIGITS)
         found = solve(network, s, drive)
         return (found[("v", asked.a)] - found[("v", asked.b)]) * _number(asked.times)
+
+
+def vanishes(network: Network, name: str, frequency: float, found: Any, drive: str | None = None) -> bool:
+    """Whether what `reading` found is rounding around an exact zero: it shrinks as digits are added."""
+    if abs(found) > mpf(10) ** (-DIGITS // 2):
+        return False
+    with mp.workdps(2 * DIGITS):
+        return abs(reading(network, name, frequency, drive)) <= abs(found) * mpf(10) ** (-DIGITS // 2)
 
 
 def _varied(network: Network, step: Any) -> Iterator[Network]:
