@@ -17,7 +17,7 @@ from typing import Literal, TypeVar
 
 from nodal import records
 from nodal.checks import Checks, RequirementResult
-from nodal.design import Design, load
+from nodal.design import Design, distinct, load
 from nodal.files import replace_file
 from nodal.language import syntax
 from nodal.language.diagnostics import Collector, DesignError, Diagnostic
@@ -61,6 +61,8 @@ class CheckAnswer:
     record: str | None = None
     """The file of recorded figures that was compared."""
     changes: tuple[records.Change, ...] = ()
+    estimates: dict[str, float] = field(default_factory=dict)
+    """Worst estimated relative error of the curves behind the figures, by case."""
 
     @property
     def status(self) -> int:
@@ -115,6 +117,8 @@ def check_file(path: str, wanted: Wanted) -> CheckAnswer:
 
             changes = records.compare(record, measure(checks, cases), design.cases)
             answer = replace(answer, record=record.path, changes=tuple(changes))
+        estimates = {case: checks.response(case).quality.worst_estimated_error for case in cases}
+        answer = replace(answer, estimates=estimates)
     except DesignError as error:
         answer = replace(
             answer, kind="broken", diagnostics=(*diagnostics, *error.diagnostics),
@@ -257,6 +261,18 @@ def _processors() -> int:
     if hasattr(os, "sched_getaffinity"):
         return len(os.sched_getaffinity(0))
     return os.cpu_count() or 1
+
+
+def found(
+    answers: Sequence[CheckAnswer | RecordAnswer], collector: Collector, *, warnings: bool
+) -> tuple[list[Diagnostic], dict[str, str]]:
+    """The diagnostics of all files and of `collector`, each once (files share what they include), with the
+    texts they point into."""
+    sources = dict(collector.sources)
+    for answer in answers:
+        sources |= answer.sources
+    every = [*collector.found, *(d for answer in answers for d in answer.diagnostics)]
+    return distinct(d for d in every if warnings or d.severity == "error"), sources
 
 
 def worst(answers: Iterable[CheckAnswer | RecordAnswer]) -> int:

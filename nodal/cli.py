@@ -437,7 +437,7 @@ def check(options: Options, paths: tuple[str, ...], no_solve: bool, jobs: int | 
     Status: 0 all well; 1 a requirement or a recorded figure failed; 2 a file has errors, or a required figure
     cannot be computed.
     """
-    from nodal.checking import Wanted, check_files, worst
+    from nodal.checking import Wanted, check_files, found, worst
     from nodal.language.diagnostics import Collector
     from nodal.paths import find
     from nodal.report import checks
@@ -450,25 +450,24 @@ def check(options: Options, paths: tuple[str, ...], no_solve: bool, jobs: int | 
     for case in options.case:
         if case not in known and all(answer.kind != "broken" for answer in answers):
             _fail("unknown-case", name=case, hint=_nearest(case, known))
+    diagnostics, sources = found(answers, collector, warnings=not options.quiet)
     if options.form == "text":
         color = options.color if options.output is None or options.color == "always" else "never"
         text = checks.text(answers, _brush(color))
     elif options.form == "json":
         single = len(paths) == 1 and files == list(paths)
-        text = checks.json_text(answers, single=single, warnings=not options.quiet)
+        text = checks.json_text(answers, diagnostics, sources, single=single)
     elif options.form == "github":
-        text = checks.github_text(answers, warnings=not options.quiet)
+        text = checks.github_text(answers, diagnostics, sources)
     else:
         text = checks.junit_text(answers)
     if options.form in ("text", "junit"):
-        for answer in answers:
-            shown = [d for d in answer.diagnostics if d.severity == "error" or not options.quiet]
-            _show(shown, answer.sources, options.color)
-    if collector.failed:
-        raise DesignError(collector.found, collector.sources)
-    _write(text, options)
-    if worst(answers):
-        raise click.exceptions.Exit(worst(answers))
+        _show(diagnostics, sources, options.color)
+    if answers or options.form != "text":
+        _write(text, options)
+    status = WRONG if collector.failed else worst(answers)
+    if status:
+        raise click.exceptions.Exit(status)
 
 
 @main.command()
@@ -481,7 +480,7 @@ def record(options: Options, paths: tuple[str, ...], jobs: int | None) -> None:
     bench_probe.figures.toml, one a line, sorted, with nine digits. Lines that still hold stay as they are;
     tolerances and comments set by hand are kept.
     """
-    from nodal.checking import record_files, worst
+    from nodal.checking import found, record_files, worst
     from nodal.language.diagnostics import Collector
     from nodal.paths import STANDARD_INPUT, find
     from nodal.report import checks
@@ -491,14 +490,11 @@ def record(options: Options, paths: tuple[str, ...], jobs: int | None) -> None:
     collector = Collector()
     files = find(paths, collector)
     answers = list(_progress(record_files(files, jobs), len(files), options))
-    for answer in answers:
-        shown = [d for d in answer.diagnostics if d.severity == "error" or not options.quiet]
-        _show(shown, answer.sources, options.color)
+    _show(*found(answers, collector, warnings=not options.quiet), options.color)
     _write(checks.record_text(answers), options)
-    if collector.failed:
-        raise DesignError(collector.found, collector.sources)
-    if worst(answers):
-        raise click.exceptions.Exit(worst(answers))
+    status = WRONG if collector.failed else worst(answers)
+    if status:
+        raise click.exceptions.Exit(status)
 
 
 _Answer = TypeVar("_Answer")

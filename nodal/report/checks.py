@@ -23,6 +23,10 @@ _COLORS = {"pass": "green", "fail": "red", "error": "red", "moved": "red", "new"
            "unreached": "red"}  # fmt: skip
 
 
+NOTEWORTHY = 1e-10
+"""An estimated relative error that is said."""
+
+
 def found_text(result: RequirementResult) -> str:
     """What was found, and where: "7.56 % at 35.2 MHz", ">= 1 GHz, not reached"; "" where nothing was."""
     if result.found is None:
@@ -106,6 +110,9 @@ def _file_text(answer: CheckAnswer, paint: Paint) -> Iterable[str]:
             padded = [cell.ljust(width) for cell, width in zip(cells, widths, strict=True)]
             padded[0] = padded[0].replace(cells[0], paint(cells[0], _COLORS[cells[0]]))
             yield f"    {'  '.join(padded)}".rstrip()
+        worst = answer.estimates.get(case, 0.0)
+        if worst > NOTEWORTHY:
+            yield paint(f"    worst estimated relative error of these: {worst:.1e}", "yellow")
     if answer.record is not None and not answer.changes:
         yield "  figures as recorded"
 
@@ -150,7 +157,7 @@ def summary(answers: Sequence[CheckAnswer]) -> str:
     total = sum(counts.values()) + unsolved
     sentences = [f"{_count(total, 'requirement')} in {_count(len(designs), 'design')}: {', '.join(parts)}"]
     if not total:
-        sentences = [f"no requirements in {_count(len(designs), 'design')}"]
+        sentences = [f"no requirements in {_count(len(designs), 'design')}"] if designs else []
     recorded = [answer for answer in designs if answer.record is not None]
     changed = sum(len(answer.changes) for answer in recorded)
     if recorded:
@@ -159,7 +166,7 @@ def summary(answers: Sequence[CheckAnswer]) -> str:
     broken = sum(answer.kind == "broken" for answer in answers)
     if broken:
         sentences.append(f"{_count(broken, 'file')} with errors")
-    return "; ".join(sentences)
+    return "; ".join(sentences or ["no designs"])
 
 
 def _count(number: int, word: str) -> str:
@@ -190,22 +197,21 @@ def _record_line(answer: RecordAnswer) -> str:
 # JSON
 
 
-def json_text(answers: Sequence[CheckAnswer], *, single: bool, warnings: bool) -> str:
-    """The answer as JSON.
+def json_text(
+    answers: Sequence[CheckAnswer], diagnostics: Sequence[Diagnostic], sources: Mapping[str, str], *,
+    single: bool,
+) -> str:
+    """The answer as JSON, with the diagnostics of all files.
 
     A call for one file has its "file" and "cases"; one for several paths or a folder has "files", a list of
-    such. "diagnostics" are those of all files.
+    such.
     """
     head: dict[str, Any] = {"format": FORMAT, "tool": f"nodal {__version__}"}
     files = [_file_json(answer) for answer in answers]
-    found = [d for a in answers for d in as_json(_wanted(a, warnings), a.sources)]
+    found = as_json(diagnostics, sources)
     if single and len(files) == 1:
         return dumps({**head, **files[0], "diagnostics": found})
     return dumps({**head, "files": files, "diagnostics": found})
-
-
-def _wanted(answer: CheckAnswer, warnings: bool) -> list[Diagnostic]:
-    return [d for d in answer.diagnostics if warnings or d.severity == "error"]
 
 
 def _file_json(answer: CheckAnswer) -> dict[str, Any]:
@@ -225,6 +231,7 @@ def _case_json(answer: CheckAnswer, case: str) -> dict[str, Any]:
              "change": number(c.change), "path": c.path, "line": c.line or None}
             for c in answer.changes if c.case == case
         ],
+        "quality": {"worst_estimated_error": number(answer.estimates.get(case))},
     }  # fmt: skip
 
 
@@ -244,17 +251,19 @@ def requirement_json(result: RequirementResult) -> dict[str, Any]:
 # Annotations
 
 
-def github_text(answers: Sequence[CheckAnswer], *, warnings: bool) -> str:
+def github_text(
+    answers: Sequence[CheckAnswer], diagnostics: Sequence[Diagnostic], sources: Mapping[str, str]
+) -> str:
     """Annotations as a hosted build reads them from its log, one a line; then the line that sums up."""
     lines: list[str] = []
+    for d in diagnostics:
+        kind = {"error": "error", "warning": "warning", "note": "notice"}[d.severity]
+        place: dict[str, Any] = {}
+        if d.span is not None:
+            (line, column), _ = span_position(d.span, sources)
+            place = {"file": d.span.path, "line": line, "col": column}
+        lines.append(_annotation(kind, {**place, "title": d.code}, _said(d)))
     for answer in answers:
-        for d in _wanted(answer, warnings):
-            kind = {"error": "error", "warning": "warning", "note": "notice"}[d.severity]
-            place: dict[str, Any] = {}
-            if d.span is not None:
-                (line, column), _ = span_position(d.span, answer.sources)
-                place = {"file": d.span.path, "line": line, "col": column}
-            lines.append(_annotation(kind, {**place, "title": d.code}, _said(d)))
         for r in answer.requirements:
             if r.status != "pass":
                 place = {"file": r.path, "line": r.line, "title": f"{r.case}: {r.name}"}
