@@ -43,6 +43,8 @@ class Old:
     design: Design | None
     error: DesignError | None = None
     home: Home | None = None
+    shared: bool = False
+    """It has neither source nor reading of its own and is no design: a file for others to include."""
 
 
 def load(file: str, *, path: str | None = None, name: str | None = None, newest: bool = False) -> Old:
@@ -58,13 +60,16 @@ def load(file: str, *, path: str | None = None, name: str | None = None, newest:
         return Old("", None, DesignError(collector.found, collector.sources))
     label = path or _plain_name(file)
     home = None
-    if _includes(text, label):
+    statements = list(_statements(text, label))
+    if any(isinstance(statement, syntax.Include) for statement in statements):
         home = _home(file, path, name, newest)
         label = home.label
     try:
         return Old(text, loads(text, label, files=home.files if home else None), None, home)
     except DesignError as error:
-        return Old(text, None, error, home)
+        measured = any(isinstance(statement, syntax.Source | syntax.Reading) for statement in statements)
+        lacking = all(found.code == "no-source" for found in error.diagnostics if found.severity == "error")
+        return Old(text, None, error, home, shared=lacking and not measured)
 
 
 def _plain_name(file: str) -> str:
@@ -79,9 +84,11 @@ def _copied(file: str) -> bool:
     )
 
 
-def _includes(text: str, label: str) -> bool:
-    file = parse(text, label, Collector())
-    return any(isinstance(statement, syntax.Include) for statement in file.statements)
+def _statements(text: str, label: str) -> Iterator[syntax.Statement]:
+    for statement in parse(text, label, Collector()).statements:
+        yield statement
+        if isinstance(statement, syntax.UnderTest):
+            yield from statement.body
 
 
 def _home(file: str, path: str | None, name: str | None, newest: bool) -> Home:

@@ -111,6 +111,9 @@ class Tree:
         except Unusable as why:
             collector.add("unreadable", None, path=label, reason=str(why))
             return None
+        if path == ".":  # the top itself
+            collector.add("is-directory", None, path=label)
+            return None
         entry = self.entry(path)
         if entry is None:
             collector.add("not-in-revision", None, path=path, revision=self.words, hint=self.hint(path))

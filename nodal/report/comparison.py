@@ -17,7 +17,7 @@ from nodal.language.units import show
 from nodal.report import data, numbers, terminal
 from nodal.report.terminal import Page
 from nodal.studies.compare import Change, Comparison, Judged, Moved
-from nodal.studies.facts import distinct
+from nodal.studies.facts import ROUNDING, distinct
 
 _WHOLE = ("added", "gone", "renamed")
 FRACTIONS = ("flatness", "peaking", "error", "disturbance")
@@ -184,6 +184,7 @@ def found(result: RequirementResult) -> str:
     if unit == "dB":
         text = f"{numbers.decibels(value)} dB"
     elif result.figure.partition("(")[0] in FRACTIONS:
+        value = value if abs(value) > ROUNDING else 0.0
         text = numbers.part_of_one(value)
     else:
         text = numbers.quantity(value, unit, 5 if unit == "" else 4)

@@ -36,9 +36,11 @@ def for_diff(file: str) -> str:
 def _below(old: Old) -> Iterable[str]:
     if old.home is not None:
         included = [] if old.design is None else [p for p in old.design.sources if p != old.design.path]
-        names = ", ".join(sorted(path.rpartition(":")[2] for path in included)) or "files"
+        names = ", ".join(sorted(path.rpartition(":")[2] for path in included)) or "other files"
         yield f"{_RULE}includes {names} from {old.home.words}"
-    if old.error is not None:
+    if old.shared:
+        yield f"{_RULE}no figures: a file for others to include"
+    elif old.error is not None:
         yield f"{_RULE}no figures"
         yield from render(old.error.diagnostics, old.error.sources).splitlines()
     elif old.design is not None:
@@ -98,7 +100,7 @@ def driver(arguments: tuple[str, ...], page: Page) -> str:
     old = blobs.load(old_file, path=path, name=_known(old_name), newest=True)
     new = blobs.load(new_file, path=new_path, name=_known(new_name))
     if old.design is None or new.design is None:
-        errors = [side.error for side in (old, new) if side.error is not None]
+        errors = [side.error for side in (old, new) if side.error is not None and not side.shared]
         said = "".join(render(error.diagnostics, error.sources) for error in errors)
         return head + said + _difference(old.text, new.text, path, new_path)
     comparison.text(page, compare(old.design, new.design))
