@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from nodal.solver.fronts import Fronts
-from nodal.solver.inversion import Inversion, NotInverted, invert
+from nodal.solver.inversion import Inversion, NotInverted, invert, passed, usable_probes
 from nodal.solver.matrix import System
 from nodal.solver.pattern import Complexes, Floats
 from nodal.solver.realise import AGREEMENT, NotRealised, Realisation, at_infinity, realise
@@ -94,7 +94,7 @@ class Edges:
             on = local >= 0
             if on.any():
                 rows = number * len(self._inverted) + place
-                result[:, on] += self._inversion.edge(local[on], self.ramp, rows)
+                result[:, on] += self._inversion.edge(local[on], rows)
         return result
 
 
@@ -127,8 +127,8 @@ def respond(
     rest = np.flatnonzero(~accepted)
     if not len(rest):
         return Edges(ramp, window, methods, error, np.zeros(1), jumps, found, None, rest, np.zeros(1))
-    fronts = _followed(system, source, [outputs[int(k)] for k in rest], window)
-    inversion = _inverted(fronts, window, rest)
+    fronts = _followed(system, source, [outputs[int(k)] for k in rest], window, ramp)
+    inversion = _inverted(fronts, window, ramp, rest)
     shape = len(fronts.starts), len(rest)
     error[rest] = inversion.error.reshape(shape).sum(axis=0)
     jumps = np.hstack([jumps, np.zeros((count, len(fronts.starts) - 1))])
@@ -137,7 +137,7 @@ def respond(
 
 
 def _followed(
-    system: System, source: Mapping[int, float], outputs: Sequence[Output], window: float
+    system: System, source: Mapping[int, float], outputs: Sequence[Output], window: float, ramp: float
 ) -> Fronts:
     """As many fronts one by one as it takes for the others to be too blunt to matter."""
     probes = np.asarray(1 / window + 1j * 10.0 ** np.arange(-1.0, 30.0, 0.25) / window)
@@ -145,10 +145,11 @@ def _followed(
         fronts = Fronts(system, source, outputs, window, most)
         if fronts.rest is None:
             break
-        values, noise = fronts.evaluate(probes)
-        size = np.where(noise < 0.1 * np.abs(values), np.abs(values), 0.0)
-        sharp = (size[-1] > _BLUNT * size.max(axis=(0, 2))[:, None]).any(axis=0)
-        if not sharp.any() or probes[sharp][-1].imag * fronts.longest < _RESOLVED:
+        values, noise = (x.reshape(-1, len(probes)) for x in fronts.evaluate(probes))
+        usable, measure = usable_probes(values, noise, np.zeros(len(values)), len(outputs))
+        rest = np.abs(values[-len(outputs) :, :usable]) * passed(probes[:usable].imag, ramp)
+        sharp = np.flatnonzero((rest > _BLUNT * measure[-len(outputs) :, None]).any(axis=0))
+        if not len(sharp) or probes[sharp[-1]].imag * fronts.longest < _RESOLVED:
             break
     _check(fronts, window)
     return fronts
@@ -165,7 +166,9 @@ def _check(fronts: Fronts, window: float) -> None:
         raise NotInverted("the fronts do not add up to the transfer function")
 
 
-def _inverted(fronts: Fronts, window: float, outputs: NDArray[np.intp]) -> Inversion:
+def _inverted(
+    fronts: Fronts, window: float, ramp: float, outputs: NDArray[np.intp]
+) -> Inversion:
     def transfer(s: Complexes) -> tuple[Complexes, Floats]:
         values, noise = fronts.evaluate(s)
         return values.reshape(-1, len(s)), noise.reshape(-1, len(s))
@@ -174,7 +177,7 @@ def _inverted(fronts: Fronts, window: float, outputs: NDArray[np.intp]) -> Inver
     hopeless = np.flatnonzero((orders > 0).any(axis=0))
     if len(hopeless):
         raise Impulse([int(outputs[k]) for k in hopeless])
-    return invert(transfer, jumps.ravel(), window, len(outputs))
+    return invert(transfer, jumps.ravel(), window, ramp, len(outputs))
 
 
 def sampled(edges: Edges, points: int, over: float | None = None) -> Floats:

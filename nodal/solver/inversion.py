@@ -79,6 +79,7 @@ class Inversion:
     """
 
     window: float
+    ramp: float
     jump: Floats
     largest: Floats
     error: Floats
@@ -89,16 +90,17 @@ class Inversion:
     """(n, n_panels, NODES): (H - H(∞) - tail)/s at the Gauss points."""
     tail: Tail
 
-    def edge(self, times: Floats, ramp: float = 0.0, which: slice | NDArray[np.intp] = slice(None)) -> Floats:
+    def edge(self, times: Floats, which: slice | NDArray[np.intp] = slice(None)) -> Floats:
         """(n, n_times); 0 before t = 0, at a jump the value after it."""
         t = np.asarray(times, dtype=float)
         result = np.zeros((len(self.jump[which]), len(t)))
         on = t >= 0
         if on.any():
-            level = np.minimum(t[on] / ramp, 1.0) if ramp > 0 else np.ones(int(on.sum()))
-            result[:, on] = np.multiply.outer(self.jump[which], level) + self.tail.edge(t[on], ramp, which)
+            level = np.minimum(t[on] / self.ramp, 1.0) if self.ramp > 0 else np.ones(int(on.sum()))
+            result[:, on] = np.multiply.outer(self.jump[which], level)
+            result[:, on] += self.tail.edge(t[on], self.ramp, which)
             if not self._quiet[which].all():
-                result[:, on] += self.smooth(t[on], ramp, which)
+                result[:, on] += self.smooth(t[on], which)
         return result
 
     @cached_property
@@ -108,14 +110,13 @@ class Inversion:
         result: NDArray[np.bool_] = most < 1e-15 * self.largest
         return result
 
-    def smooth(self, t: Floats, ramp: float, which: slice | NDArray[np.intp] = slice(None)) -> Floats:
+    def smooth(self, t: Floats, which: slice | NDArray[np.intp] = slice(None)) -> Floats:
         """Without the jump and the tail; at negative t what should be zero."""
-        values = self.values[which]
+        values, ramp = self.values[which], self.ramp
         if ramp <= 0:
             return self._integral(values, slice(None), t)
         s = self.shift + 1j * (self.centre[:, None] + self.half[:, None] * _POINTS)
         slow = (self.centre + self.half) * ramp < 1
-        slow[: int(slow.sum())] = True
         turned = s[slow] * ramp
         result = self._integral(values[:, slow] * (-np.expm1(-turned) / turned), slow, t)
         if not slow.all():
@@ -140,7 +141,9 @@ class Inversion:
         return result * growth
 
 
-def invert(transfer: Transfer, jump: Floats, window: float, outputs: int = 1) -> Inversion:
+def invert(
+    transfer: Transfer, jump: Floats, window: float, ramp: float = 0.0, outputs: int = 1
+) -> Inversion:
     """Prepare the responses of stable transfer functions for the times up to `window` (s).
 
     `jump` (n,) is H(∞). The rows of `transfer` belong to `outputs` readings in turn (row k to reading k mod outputs),
@@ -151,29 +154,34 @@ def invert(transfer: Transfer, jump: Floats, window: float, outputs: int = 1) ->
     omega = 10.0 ** np.arange(-1.0, _REACH, 1 / _PROBES) / window
     s = np.asarray(shift + 1j * omega, dtype=np.complex128)
     probed, noise = transfer(s)
-    usable, measure = _usable(probed, noise, jump, outputs)
+    usable, measure = usable_probes(probed, noise, jump, outputs)
     while True:
-        tail, last = _tail(s, (probed - jump[:, None])[:, :usable], measure, usable < len(s))
+        tail, last = _tail(s, (probed - jump[:, None])[:, :usable], measure, ramp, usable < len(s))
         count = math.ceil(math.log2(max(omega[last] / shift, 1)))
         edges = np.append(shift * 2.0 ** np.arange(-1, count), max(omega[last], shift))
         edges[0] = 0.0
         try:
-            centre, half, values, left_out = _panels(transfer, jump, tail, measure, shift, edges)
+            centre, half, values, left_out = _panels(transfer, jump, tail, measure, shift, edges, ramp)
             break
         except _Lost:
             usable = min(usable, last) - _PROBES // 2
             if usable < 4 * _PROBES:
                 raise NotInverted("the transfer function is lost in rounding") from None
-    beyond = np.abs(values[:, -1, -1]) * (edges[-1] / np.pi)
+    beyond = np.abs(values[:, -1, -1]) * (edges[-1] / np.pi * passed(edges[-1], ramp))
     error = math.exp(SHIFT) * (left_out + beyond) + ROUNDING * measure
-    made = Inversion(window, jump, measure, error, shift, centre, half, values, tail)
-    before = np.abs(made.smooth(-window * 10.0 ** -np.arange(0.0, 12.0, 0.25), 0.0)).max(axis=1)
+    made = Inversion(window, ramp, jump, measure, error, shift, centre, half, values, tail)
+    before = np.abs(made.smooth(-window * 10.0 ** -np.arange(0.0, 12.0, 0.25))).max(axis=1)
     if not (before <= 1e-3 * measure).all():
         raise NotInverted("the response grows without bound, or too much of it could not be resolved")
     return replace(made, error=error + 2 * before)
 
 
-def _usable(probed: Complexes, noise: Floats, jump: Floats, outputs: int) -> tuple[int, Floats]:
+def passed(omega: Any, ramp: float) -> Any:
+    """About what a ramp lets through of a step's spectrum, 1 at most."""
+    return 1 / np.maximum(omega * ramp, 1.0)
+
+
+def usable_probes(probed: Complexes, noise: Floats, jump: Floats, outputs: int) -> tuple[int, Floats]:
     """(how many of the probes, in rising order, are not lost in rounding, the measure of each row's errors)."""
     count = len(probed) // outputs
     with np.errstate(invalid="ignore"):
@@ -188,13 +196,16 @@ def _usable(probed: Complexes, noise: Floats, jump: Floats, outputs: int) -> tup
     return usable, np.tile(np.where(largest == 0, 1.0, largest), count)
 
 
-def _tail(s: Complexes, smooth: Complexes, measure: Floats, cut: bool) -> tuple[Tail, int]:
+def _tail(
+    s: Complexes, smooth: Complexes, measure: Floats, ramp: float, cut: bool
+) -> tuple[Tail, int]:
     """(what H - H(∞) = `smooth` goes over to, index of the s where panels may end).
 
     They end where nothing is left, or, `cut`, where rounding takes over. There H - H(∞) goes with a power of s; that
     much of it is put in in closed form.
     """
-    there = ~(np.abs(smooth) <= BEYOND * measure[:, None]).all(axis=0)
+    weight = passed(s[: smooth.shape[1]].imag, ramp)
+    there = ~(np.abs(smooth) * weight <= BEYOND * measure[:, None]).all(axis=0)
     last = int(np.flatnonzero(there)[-1]) + 2 if there.any() else 0
     none = np.ones(len(measure))
     if last < len(there) or not cut:
@@ -253,7 +264,8 @@ class Tail:
 
 
 def _panels(
-    transfer: Transfer, jump: Floats, tail: Tail, measure: Floats, shift: float, edges: Floats
+    transfer: Transfer, jump: Floats, tail: Tail, measure: Floats, shift: float, edges: Floats,
+    ramp: float,
 ) -> tuple[Floats, Floats, Complexes, Floats]:
     """(centre, half, values, sum of what the polynomials leave out) of panels that are all fine enough."""
     kept: list[tuple[Floats, Floats, Complexes]] = []
@@ -267,12 +279,13 @@ def _panels(
             raise _Lost
         values = (h - jump[:, None] - tail.transfer(s.ravel())).reshape(len(jump), *s.shape) / s
         high = values @ _TO_LEGENDRE[-2:].T
-        rough = np.abs(high).sum(axis=-1) * half * (2 / np.pi)
+        weight = half * (2 / np.pi) * passed(np.maximum(centre - half, shift), ramp)
+        rough = np.abs(high).sum(axis=-1) * weight
         count += len(centre)
         split = (rough > FINE * measure[:, None]).any(axis=0) & (half > shift / 8)
         if count + 2 * int(split.sum()) > MOST_PANELS:
             # Polynomials that do not follow the curve may be wrong by as much as there is of it.
-            rough[:, split] = (np.abs(values).mean(axis=-1) * half * (2 / np.pi))[:, split]
+            rough[:, split] = (np.abs(values).mean(axis=-1) * weight)[:, split]
             split[:] = False
         kept.append((centre[~split], half[~split], values[:, ~split]))
         left_out += rough[:, ~split].sum(axis=1)
