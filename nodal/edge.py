@@ -55,7 +55,8 @@ class Trace:
 
     def __call__(self, times: ArrayLike) -> Floats:
         t = np.asarray(times, dtype=np.float64)
-        return self._edges(t.ravel(), [self._output])[0].reshape(t.shape)
+        values: Floats = self._edges(t.ravel(), [self._output])[0]
+        return values.reshape(t.shape)
 
     @property
     def arrivals(self) -> Floats:
@@ -65,7 +66,8 @@ class Trace:
     @property
     def jumps(self) -> Floats:
         """By how much it jumps at each arrival if the edge is an ideal step."""
-        return self._edges.jumps[self._output]
+        jumps: Floats = self._edges.jumps[self._output]
+        return jumps
 
 
 @dataclass(frozen=True, slots=True)
@@ -216,7 +218,8 @@ def _traces(
 
 def _final(assembly: Assembly, source: Functional, outputs: Sequence[Functional]) -> Floats:
     try:
-        return limit(assembly.system, [source], outputs)[0][0]
+        values: Floats = limit(assembly.system, [source], outputs)[0][0]
+        return values
     except (Singular, ArithmeticError):
         return np.full(len(outputs), np.nan)
 

@@ -13,14 +13,20 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from nodal.solver.arithmetic import MpArithmetic
+from nodal.solver.exact import Exact
 from nodal.solver.fronts import Fronts
 from nodal.solver.inversion import Inversion, NotInverted, invert, passed, usable_probes
 from nodal.solver.matrix import System
-from nodal.solver.pattern import Complexes, Floats
+from nodal.solver.pattern import Complexes, Floats, Pattern
+from nodal.solver.plan import generic
 from nodal.solver.realise import AGREEMENT, NotRealised, Realisation, at_infinity, realise
 from nodal.solver.sweep import Output, solve
 
-POLES, INVERSION = "poles and residues", "inversion"
+POLES, INVERSION, NOTHING = "poles and residues", "inversion", "zero at every frequency"
+
+_ZERO = 1e-15
+"""An output below this much of what it is the difference of is zero."""
 
 _ULPS = 8 * float(np.finfo(float).eps)
 """How far before an arrival, relatively, a time counts as the arrival: sums of delays are rounded."""
@@ -57,7 +63,7 @@ class Edges:
     ramp: float
     window: float
     methods: tuple[str, ...]
-    """POLES or INVERSION, of each output."""
+    """POLES, INVERSION or NOTHING, of each output."""
     error: Floats
     """(n_outputs,): estimated largest absolute error."""
     arrivals: Floats
@@ -65,9 +71,9 @@ class Edges:
     jumps: Floats
     """(n_outputs, n_arrivals): by how much the response to an ideal step jumps there."""
     realisation: Realisation | None
+    _realised: NDArray[np.intp]
     _inversion: Inversion | None
     _inverted: NDArray[np.intp]
-    _starts: Floats
 
     def __call__(self, times: ArrayLike, outputs: Sequence[int] | None = None) -> Floats:
         """(n_outputs, n_times); at a jump the value after it. ValueError for times after the window."""
@@ -78,8 +84,9 @@ class Edges:
         result = np.zeros((len(wanted), len(t)))
         direct = [k for k, o in enumerate(wanted) if self.methods[o] == POLES]
         if direct and self.realisation is not None:
-            result[direct] = self.realisation.edge(t, self.ramp, wanted[direct])
-        inverted = [k for k, o in enumerate(wanted) if self.methods[o] != POLES]
+            place = np.searchsorted(self._realised, wanted[direct])
+            result[direct] = self.realisation.edge(t, self.ramp, place)
+        inverted = [k for k, o in enumerate(wanted) if self.methods[o] == INVERSION]
         if inverted and self._inversion is not None:
             result[inverted] = self._inverse(t, wanted[inverted])
         return result
@@ -88,7 +95,7 @@ class Edges:
         assert self._inversion is not None
         place = np.searchsorted(self._inverted, outputs)
         result = np.zeros((len(outputs), len(t)))
-        for number, start in enumerate(self._starts):
+        for number, start in enumerate(self.arrivals):
             local = t - start
             local = np.where(np.abs(local) <= _ULPS * start, 0.0, local)
             on = local >= 0
@@ -107,33 +114,62 @@ def respond(
     `frequencies` (Hz) are where a realisation is checked besides its own grid. Raises Impulse, NotInverted (no response that could be trusted) or Singular.
     """
     count = len(outputs)
-    found: Realisation | None = None
-    if not system.functions:
-        order = at_infinity(system, source, outputs).order
-        hopeless = [k for k in range(count) if order[k] > (1 if ramp > 0 else 0)]
-        if hopeless:
-            raise Impulse(hopeless)
-        try:
-            found = realise(system, source, outputs, frequencies)
-        except NotRealised:
-            found = None
-    accepted = found.accepted if found is not None else np.zeros(count, dtype=bool)
+    methods = np.full(count, NOTHING, dtype=object)
     error = np.zeros(count)
     jumps = np.zeros((count, 1))
+    arrivals = np.zeros(1)
+    alive = _alive(system, source, outputs, window)
+    found = _realised(system, source, outputs, alive, ramp, frequencies)
     if found is not None:
-        error[accepted] = (_TRUST * found.mismatch + 1e-13 * found.largest)[accepted]
-        jumps[accepted, 0] = found.direct[accepted]
-    methods = tuple(POLES if ok else INVERSION for ok in accepted)
-    rest = np.flatnonzero(~accepted)
-    if not len(rest):
-        return Edges(ramp, window, methods, error, np.zeros(1), jumps, found, None, rest, np.zeros(1))
-    fronts = _followed(system, source, [outputs[int(k)] for k in rest], window, ramp)
-    inversion = _inverted(fronts, window, ramp, rest)
-    shape = len(fronts.starts), len(rest)
-    error[rest] = inversion.error.reshape(shape).sum(axis=0)
-    jumps = np.hstack([jumps, np.zeros((count, len(fronts.starts) - 1))])
-    jumps[rest] = inversion.jump.reshape(shape).T
-    return Edges(ramp, window, methods, error, fronts.starts, jumps, found, inversion, rest, fronts.starts)
+        methods[alive[found.accepted]] = POLES
+        error[alive] = _TRUST * found.mismatch + 1e-13 * found.largest
+        jumps[alive, 0] = found.direct
+    inverted = np.array([k for k in alive if methods[k] != POLES], dtype=np.intp)
+    inversion = None
+    if len(inverted):
+        methods[inverted] = INVERSION
+        fronts = _followed(system, source, [outputs[k] for k in inverted.tolist()], window, ramp)
+        inversion = _inverted(fronts, window, ramp, inverted)
+        arrivals = fronts.starts
+        shape = len(arrivals), len(inverted)
+        error[inverted] = inversion.error.reshape(shape).sum(axis=0)
+        jumps = np.hstack([jumps, np.zeros((count, len(arrivals) - 1))])
+        jumps[inverted] = inversion.jump.reshape(shape).T
+    return Edges(ramp, window, tuple(methods), error, arrivals, jumps, found, alive, inversion, inverted)
+
+
+def _alive(
+    system: System, source: Mapping[int, float], outputs: Sequence[Output], window: float
+) -> NDArray[np.intp]:
+    """Outputs that are not zero at every s, as a balanced bridge is: rounding would be all there is of them."""
+    pattern = Pattern(system)
+    arithmetic = MpArithmetic(50)
+    alive = np.zeros(len(outputs), dtype=bool)
+    for level in (1.0, 1e3, 1e6):
+        exact = Exact(pattern, generic(level / window), arithmetic)
+        x, _ = exact.solve(source)
+        for k, output in enumerate(outputs):
+            parts = sum(abs(x[i] * weight) for i, weight in output.items())
+            alive[k] |= bool(abs(exact.output(output, x)) > _ZERO * parts)
+    return np.flatnonzero(alive)
+
+
+def _realised(
+    system: System, source: Mapping[int, float], outputs: Sequence[Output], alive: NDArray[np.intp], ramp: float,
+    frequencies: ArrayLike,
+) -> Realisation | None:
+    """Poles and residues of the outputs that are `alive`; None where there are none or they are not known."""
+    if system.functions or not len(alive):
+        return None
+    wanted = [outputs[k] for k in alive.tolist()]
+    order = at_infinity(system, source, wanted).order
+    hopeless = alive[order > (1 if ramp > 0 else 0)]
+    if len(hopeless):
+        raise Impulse(hopeless.tolist())
+    try:
+        return realise(system, source, wanted, frequencies)
+    except NotRealised:
+        return None
 
 
 def _followed(
@@ -145,7 +181,8 @@ def _followed(
         fronts = Fronts(system, source, outputs, window, most)
         if fronts.rest is None:
             break
-        values, noise = (x.reshape(-1, len(probes)) for x in fronts.evaluate(probes))
+        values, noise = fronts.evaluate(probes)
+        values, noise = values.reshape(-1, len(probes)), noise.reshape(-1, len(probes))
         usable, measure = usable_probes(values, noise, np.zeros(len(values)), len(outputs))
         rest = np.abs(values[-len(outputs) :, :usable]) * passed(probes[:usable].imag, ramp)
         sharp = np.flatnonzero((rest > _BLUNT * measure[-len(outputs) :, None]).any(axis=0))
@@ -235,4 +272,5 @@ def _first_guesses(knots: Floats, most: int) -> list[Floats]:
     """Between knots, two a decade counted from the first of the two; `most` in all."""
     gaps = [(a, b) for a, b in pairwise(knots) if b - a > _TOUCHING * b]
     per_gap = max(1, min(14, most // max(len(gaps), 1)))
-    return [a + (b - a) * 10.0 ** -np.arange(0.5, 0.5 * per_gap + 0.5, 0.5) for a, b in gaps]
+    steps = 10.0 ** -np.arange(0.5, 0.5 * per_gap + 0.5, 0.5)
+    return [np.asarray(a + (b - a) * steps) for a, b in gaps]
