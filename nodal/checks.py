@@ -33,6 +33,7 @@ ROUNDING = 1e-12
 """A limit is met where the figure misses it by no more than this part of it (of one, where it is zero)."""
 
 _RELATION = re.compile(r"<=|>=|=")
+_QUANTITY = re.compile(r"[0-9][0-9.]*(?:[eE][-+]?[0-9]+)?\s*[^\s0-9()*+-]*")
 
 
 @dataclass(frozen=True, slots=True)
@@ -61,13 +62,17 @@ class RequirementItem:
 
     @property
     def asked(self) -> str:
-        """Relation and limit as written: "<= 3 %"."""
+        """Relation and limit as written, with the value of what is no number: "<= 3 %", "<= 2 * most (6 Ω)"."""
         r = self.requirement
+        value = show(r.limit, r.unit, 12)
+        if r.relation == "=":
+            value += f" ± {show(r.tolerance, r.unit, 12)}"
         found = _RELATION.search(r.text)
-        if found is not None:
-            return r.text[found.start() :]
-        text = f"{r.relation} {show(r.limit, r.unit, 12)}"
-        return f"{text} ± {show(r.tolerance, r.unit, 12)}" if r.relation == "=" else text
+        if found is None:
+            return f"{r.relation} {value}"
+        written = r.text[found.start() :]
+        plain = not _QUANTITY.sub("", written).strip("<>=± +-")
+        return written if plain else f"{written} ({value})"
 
     @property
     def path(self) -> str:
