@@ -36,7 +36,7 @@ _TRUST = 10.0
 decades there are."""
 
 
-_FOLLOWED = (16, 64, 256, 1024)
+_FOLLOWED = (16, 32, 64, 128, 256, 512, 1024)
 """Fronts that are followed one by one, more where the rest is still sharp."""
 
 _BLUNT = 1e-13
@@ -272,5 +272,5 @@ def _first_guesses(knots: Floats, most: int) -> list[Floats]:
     """Between knots, two a decade counted from the first of the two; `most` in all."""
     gaps = [(a, b) for a, b in pairwise(knots) if b - a > _TOUCHING * b]
     per_gap = max(1, min(14, most // max(len(gaps), 1)))
-    steps = 10.0 ** -np.arange(0.5, 0.5 * per_gap + 0.5, 0.5)
+    steps = np.power(10.0, -np.arange(0.5, 0.5 * per_gap + 0.5, 0.5))
     return [np.asarray(a + (b - a) * steps) for a, b in gaps]

@@ -94,6 +94,11 @@ class Fronts:
         self._whole = _Planned(System(system.size, system.terms, tuple(whole)))
         self._delays, self._groups = _by_delay(system)
         self._terms = [self._terms_of(group) for group in self._groups]
+        self._entries = sorted({self._base.pattern.term_rows[t] for terms in self._terms for t in terms})
+        """What delayed terms give to: columns 1, 2, … of `_amounts`."""
+        self._entry_of = {
+            t: 1 + self._entries.index(self._base.pattern.term_rows[t]) for terms in self._terms for t in terms
+        }
         arrivals, self._before, self._leaving = _lattice(self._delays, window, most)
         self.arrivals: Floats = np.array(arrivals)
         """(n,) s, in order: the fronts that are followed."""
@@ -128,30 +133,60 @@ class Fronts:
 
     def _evaluate(self, s: Complexes) -> tuple[Complexes, Floats]:
         base = self._base.at(s)
-        fronts = [self._front(group, s, NumpyArithmetic()) for group in self._groups]
-        functions = self._base.pattern.functions
         shape = len(self.starts), len(self.outputs), len(s)
-        values, noise = np.empty(shape, dtype=complex), np.empty(shape)
-        sent: list[list[list[Any]]] = []
-        for index in range(len(self.arrivals)):
+        values, noise = np.zeros(shape, dtype=complex), np.zeros(shape)
+        drops, shown, off = [], [], []
+        for rows in (tuple(self.source.items()), *self._entries):
             right = np.zeros((self.system.size, len(s)), dtype=complex)
-            if index == 0:
-                for equation, value in self.source.items():
-                    right[equation] = value
-            for step in self._before[index]:
-                self._arrive(right, sent, step, 1.0)
-            solved, values[index], noise[index] = base.solve_for(right, self.outputs)
-            drops = base.drops(solved)
-            sent.append([
-                [drops[term] * front[functions[term]] for term in terms]
-                for terms, front in zip(self._terms, fronts, strict=True)
-            ])
+            for row, weight in rows:
+                right[row] = weight
+            solved, value, uncertain = base.solve_for(right, self.outputs)
+            drops.append(base.drops(solved))
+            shown.append(value)
+            off.append(uncertain)
+        amounts = self._amounts(s, NumpyArithmetic(), drops)
+        for index, amount in enumerate(amounts[: len(self.arrivals)]):
+            for column, factor in amount.items():
+                values[index] += factor * shown[column]
+                noise[index] += np.abs(factor) * off[column]
         if self.rest is not None:
             right = np.zeros((self.system.size, len(s)), dtype=complex)
-            for time, step in self._leaving:
-                self._arrive(right, sent, step, np.exp(-s * (time - self.rest)))
+            for column, factor in amounts[-1].items():
+                for row, weight in self._entries[column - 1]:
+                    right[row] += factor * weight
             _, values[-1], noise[-1] = self._whole.at(s).solve_for(right, self.outputs)
         return values, noise
+
+    def _amounts(self, s: Any, arithmetic: Arithmetic, drops: Sequence[Any]) -> list[dict[int, Any]]:
+        """x_τ of every arrival as {column: factor} of the solutions for the source (0) and for each entry.
+
+        `drops[column][term]` is what a term takes from those solutions. What delayed terms give to the equations
+        has few forms, the entries, so that no arrival needs a solution of its own. The last item is the right-hand
+        side of the rest, where there is one.
+        """
+        functions = self._base.pattern.functions
+        fronts = [self._front(group, s, arithmetic) for group in self._groups]
+        found: list[dict[int, Any]] = []
+
+        def arrive(amount: dict[int, Any], step: Step, late: Any) -> None:
+            index, delay = step
+            for term in self._terms[delay]:
+                taken: Any = sum(factor * drops[column][term] for column, factor in found[index].items())
+                column = self._entry_of[term]
+                sent = taken * fronts[delay][functions[term]] * late
+                amount[column] = amount[column] - sent if column in amount else -sent
+
+        for index in range(len(self.arrivals)):
+            amount: dict[int, Any] = {0: 1} if index == 0 else {}
+            for step in self._before[index]:
+                arrive(amount, step, 1)
+            found.append(amount)
+        if self.rest is not None:
+            rest: dict[int, Any] = {}
+            for time, step in self._leaving:
+                arrive(rest, step, arithmetic.exp(-s * (time - self.rest)))
+            found.append(rest)
+        return found
 
     def at_infinity(self) -> tuple[Floats, Floats]:
         """(limits, orders) of what `evaluate` gives for s → ∞, each (n, n_outputs): by how much an edge jumps.
@@ -176,41 +211,23 @@ class Fronts:
     def _exactly(self, s: Any, arithmetic: MpArithmetic) -> list[list[Any]]:
         """`evaluate` at one real s with many digits."""
         base = Exact(self._base.pattern, s, arithmetic)
-        fronts = [self._front(group, s, arithmetic) for group in self._groups]
-        functions = self._base.pattern.functions
+        solutions = [base.solve(dict(rows))[0] for rows in (tuple(self.source.items()), *self._entries)]
+        shown = [[base.output(o, x) for o in self.outputs] for x in solutions]
+        amounts = self._amounts(s, arithmetic, [base.drops(x) for x in solutions])
         zero = arithmetic.number(0)
-        result: list[list[Any]] = []
-        sent: list[list[list[Any]]] = []
-        for index in range(len(self.arrivals)):
-            right: Any = [zero] * self.system.size
-            if index == 0:
-                for equation, value in self.source.items():
-                    right[equation] = arithmetic.number(value)
-            for step in self._before[index]:
-                self._arrive(right, sent, step, 1)
-            x, _ = base.solve_all(right)
-            result.append([base.output(o, x) for o in self.outputs])
-            drops = base.drops(x)
-            sent.append([
-                [drops[term] * front[functions[term]] for term in terms]
-                for terms, front in zip(self._terms, fronts, strict=True)
-            ])
+        result = [
+            [sum((f * shown[column][k] for column, f in amount.items()), zero) for k in range(len(self.outputs))]
+            for amount in amounts[: len(self.arrivals)]
+        ]
         if self.rest is not None:
-            right = [zero] * self.system.size
-            for time, step in self._leaving:
-                factor = arithmetic.exp(-s * (arithmetic.number(time) - arithmetic.number(self.rest)))
-                self._arrive(right, sent, step, factor)
+            right: dict[int, Any] = {}
+            for column, factor in amounts[-1].items():
+                for row, weight in self._entries[column - 1]:
+                    right[row] = right.get(row, zero) + factor * weight
             whole = Exact(self._whole.pattern, s, arithmetic)
-            x, _ = whole.solve_all(right)
+            x, _ = whole.solve(right)
             result.append([whole.output(o, x) for o in self.outputs])
         return result
-
-    def _arrive(self, right: Any, sent: list[list[list[Any]]], step: Step, factor: Any) -> None:
-        """Subtract A_k x of a step from the right-hand side."""
-        index, delay = step
-        for term, amount in zip(self._terms[delay], sent[index][delay], strict=True):
-            for row, weight in self._base.pattern.term_rows[term]:
-                right[row] = right[row] - amount * factor * weight
 
     def _terms_of(self, group: Sequence[int]) -> list[int]:
         """The terms that a group of delayed functions sends something through."""
