@@ -1,7 +1,7 @@
 """Broken files end with status 0 or 2 and never a traceback: random mutations of the shipped circuits.
 
 `NODAL_MUTATIONS=10000 pytest tests/cli/test_mutations.py` tries more than the number below; the mutations are
-numbered, and number n is the same in every run.
+numbered, and number n is the same in every run as long as the circuits are.
 """
 
 from __future__ import annotations
@@ -9,6 +9,7 @@ from __future__ import annotations
 import os
 import random
 import re
+import shutil
 import traceback
 from collections.abc import Callable
 from pathlib import Path
@@ -222,6 +223,7 @@ def test_mutations_do_change_the_text() -> None:
 
 @pytest.mark.parametrize("part", range(PARTS))
 def test_mutations(part: int, tmp_path: Path) -> None:
+    shutil.copytree(CIRCUITS[0].parent / "shared", tmp_path / "shared")  # what the circuits include
     failures = []
     for number in range(part, COUNT, PARTS):
         path = tmp_path / f"mutated{number}.nodal"
