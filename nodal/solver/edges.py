@@ -181,9 +181,8 @@ def _followed(
         fronts = Fronts(system, source, outputs, window, most)
         if fronts.rest is None:
             break
-        values, noise = fronts.evaluate(probes)
-        values, noise = values.reshape(-1, len(probes)), noise.reshape(-1, len(probes))
-        usable, measure = usable_probes(values, noise, np.zeros(len(values)), len(outputs))
+        values, noise, parts = _flat(fronts.evaluate(probes))
+        usable, measure = usable_probes(values, noise, parts, np.zeros(len(values)), len(outputs))
         rest = np.abs(values[-len(outputs) :, :usable]) * passed(probes[:usable].imag, ramp)
         sharp = np.flatnonzero((rest > _BLUNT * measure[-len(outputs) :, None]).any(axis=0))
         if not len(sharp) or probes[sharp[-1]].imag * fronts.longest < _RESOLVED:
@@ -192,13 +191,21 @@ def _followed(
     return fronts
 
 
+def _flat(found: tuple[Complexes, Floats, Floats]) -> tuple[Complexes, Floats, Floats]:
+    """Fronts and outputs as rows."""
+    values, noise, parts = found
+    shape = -1, values.shape[-1]
+    return values.reshape(shape), noise.reshape(shape), parts.reshape(shape)
+
+
 def _check(fronts: Fronts, window: float) -> None:
     """The fronts together are the transfer function, where what comes after the window has died out."""
     s = np.asarray(40 / window * (1 + 1j * 10.0 ** np.arange(-1.0, 3.0, 0.1)))
-    values = fronts.evaluate(s)[0]
+    values, noise, _ = fronts.evaluate(s)
     together = (values * np.exp(-s * fronts.starts[:, None, None])).sum(axis=0)
     expected = solve(fronts.system, s, [fronts.source], fronts.outputs).values[0]
     allowed = AGREEMENT * np.abs(expected).max(axis=1) + _ROUNDING * np.abs(values).max(axis=(0, 2))
+    allowed += 10 * noise.max(axis=(0, 2))
     if not (np.abs(together - expected) <= allowed[:, None]).all():
         raise NotInverted("the fronts do not add up to the transfer function")
 
@@ -206,9 +213,8 @@ def _check(fronts: Fronts, window: float) -> None:
 def _inverted(
     fronts: Fronts, window: float, ramp: float, outputs: NDArray[np.intp]
 ) -> Inversion:
-    def transfer(s: Complexes) -> tuple[Complexes, Floats]:
-        values, noise = fronts.evaluate(s)
-        return values.reshape(-1, len(s)), noise.reshape(-1, len(s))
+    def transfer(s: Complexes) -> tuple[Complexes, Floats, Floats]:
+        return _flat(fronts.evaluate(s))
 
     jumps, orders = fronts.at_infinity()
     hopeless = np.flatnonzero((orders > 0).any(axis=0))
@@ -273,4 +279,5 @@ def _first_guesses(knots: Floats, most: int) -> list[Floats]:
     gaps = [(a, b) for a, b in pairwise(knots) if b - a > _TOUCHING * b]
     per_gap = max(1, min(14, most // max(len(gaps), 1)))
     steps = np.power(10.0, -np.arange(0.5, 0.5 * per_gap + 0.5, 0.5))
-    return [np.asarray(a + (b - a) * steps) for a, b in gaps]
+    guesses: list[Floats] = [a + (b - a) * steps for a, b in gaps]
+    return guesses

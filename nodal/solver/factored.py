@@ -30,6 +30,11 @@ class Solved:
         """(n_outputs, n_points)."""
         return _combined(outputs, self.x) + _combined(outputs, self.small)
 
+    def parts(self, outputs: Sequence[Output]) -> Floats:
+        """(n_outputs, n_points): the sum of the sizes of what each output is made of."""
+        sizes = [{k: abs(weight) for k, weight in output.items()} for output in outputs]
+        return _combined(sizes, np.abs(self.x).astype(complex)).real
+
 
 def _combined(outputs: Sequence[Output], x: Complexes) -> Complexes:
     result: Complexes = np.zeros((len(outputs), x.shape[1]), dtype=complex)

@@ -115,27 +115,29 @@ class Fronts:
         """When each of what `evaluate` gives sets in, s."""
         return np.append(self.arrivals, [] if self.rest is None else [self.rest])
 
-    def evaluate(self, s: Complexes) -> tuple[Complexes, Floats]:
-        """(values, noise), each (n, n_outputs, n_points): transfer functions without their delays, and of the rest.
+    def evaluate(self, s: Complexes) -> tuple[Complexes, Floats, Floats]:
+        """(values, noise, parts), each (n, n_outputs, n_points): transfer functions without delays, then the rest.
 
-        `noise` is how far rounding may have put them off, absolutely.
+        `noise` is how far rounding may have put them off, absolutely; `parts` the sum of the sizes of what an output
+        is made of, which says how far it must.
         """
         shape = len(self.starts), len(self.outputs), len(s)
         values: Complexes = np.empty(shape, dtype=complex)
         noise: Floats = np.empty(shape)
+        parts: Floats = np.empty(shape)
         decade = np.floor(np.log10(np.abs(s)) / _DECADES)
         for level in np.unique(decade):
             chosen = np.flatnonzero(decade == level)
             for part in np.array_split(chosen, -(-len(chosen) // _POINTS)):
                 with np.errstate(all="ignore"):
-                    values[:, :, part], noise[:, :, part] = self._evaluate(s[part])
-        return values, noise
+                    values[:, :, part], noise[:, :, part], parts[:, :, part] = self._evaluate(s[part])
+        return values, noise, parts
 
-    def _evaluate(self, s: Complexes) -> tuple[Complexes, Floats]:
+    def _evaluate(self, s: Complexes) -> tuple[Complexes, Floats, Floats]:
         base = self._base.at(s)
         shape = len(self.starts), len(self.outputs), len(s)
-        values, noise = np.zeros(shape, dtype=complex), np.zeros(shape)
-        drops, shown, off = [], [], []
+        values, noise, parts = np.zeros(shape, dtype=complex), np.zeros(shape), np.zeros(shape)
+        drops, shown, off, made_of = [], [], [], []
         for rows in (tuple(self.source.items()), *self._entries):
             right = np.zeros((self.system.size, len(s)), dtype=complex)
             for row, weight in rows:
@@ -144,18 +146,21 @@ class Fronts:
             drops.append(base.drops(solved))
             shown.append(value)
             off.append(uncertain)
+            made_of.append(solved.parts(self.outputs))
         amounts = self._amounts(s, NumpyArithmetic(), drops)
         for index, amount in enumerate(amounts[: len(self.arrivals)]):
             for column, factor in amount.items():
                 values[index] += factor * shown[column]
                 noise[index] += np.abs(factor) * off[column]
+                parts[index] += np.abs(factor) * made_of[column]
         if self.rest is not None:
             right = np.zeros((self.system.size, len(s)), dtype=complex)
             for column, factor in amounts[-1].items():
                 for row, weight in self._entries[column - 1]:
                     right[row] += factor * weight
-            _, values[-1], noise[-1] = self._whole.at(s).solve_for(right, self.outputs)
-        return values, noise
+            solved, values[-1], noise[-1] = self._whole.at(s).solve_for(right, self.outputs)
+            parts[-1] = solved.parts(self.outputs)
+        return values, noise, parts
 
     def _amounts(self, s: Any, arithmetic: Arithmetic, drops: Sequence[Any]) -> list[dict[int, Any]]:
         """x_τ of every arrival as {column: factor} of the solutions for the source (0) and for each entry.

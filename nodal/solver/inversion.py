@@ -36,7 +36,10 @@ FINE = 1e-14
 """What the polynomials of one panel may leave out of the response, as part of the largest |H|."""
 
 NOISY = 1e-13
-"""Rounding of H, over the largest |H|, that ends the line."""
+"""Rounding of H, over the largest |H|, that ends the line …"""
+
+INEVITABLE = 4e-16
+"""… unless it is below this part of what H is the sum or difference of."""
 
 BEYOND = 2e-15
 """|H - H(∞)| over the largest |H| where the line may end."""
@@ -52,8 +55,8 @@ _PROBES = 6
 ROUNDING = 2e-14
 """What rounding does to a response, as part of the largest |H|: some hundred panels of a few units each, times e²."""
 
-Transfer = Callable[[Complexes], tuple[Complexes, Floats]]
-"""(H, how far it may be off) at complex s, each (n, n_points): any number n of transfer functions at once."""
+Transfer = Callable[[Complexes], tuple[Complexes, Floats, Floats]]
+"""(H, how far it may be off, size of what H is a sum of) at complex s, each (n, n_points), for any number n at once."""
 
 _POINTS, _WEIGHTS = np.polynomial.legendre.leggauss(NODES)
 _TO_LEGENDRE: Floats = (
@@ -153,8 +156,8 @@ def invert(
     shift = SHIFT / window
     omega = 10.0 ** np.arange(-1.0, _REACH, 1 / _PROBES) / window
     s = np.asarray(shift + 1j * omega, dtype=np.complex128)
-    probed, noise = transfer(s)
-    usable, measure = usable_probes(probed, noise, jump, outputs)
+    probed, noise, parts = transfer(s)
+    usable, measure = usable_probes(probed, noise, parts, jump, outputs)
     while True:
         tail, last = _tail(s, (probed - jump[:, None])[:, :usable], measure, ramp, usable < len(s))
         count = math.ceil(math.log2(max(omega[last] / shift, 1)))
@@ -181,18 +184,27 @@ def passed(omega: Any, ramp: float) -> Any:
     return 1 / np.maximum(omega * ramp, 1.0)
 
 
-def usable_probes(probed: Complexes, noise: Floats, jump: Floats, outputs: int) -> tuple[int, Floats]:
+def usable_probes(
+    probed: Complexes, noise: Floats, parts: Floats, jump: Floats, outputs: int
+) -> tuple[int, Floats]:
     """(how many of the probes, in rising order, are not lost in rounding, the measure of each row's errors)."""
     count = len(probed) // outputs
+
+    def by_output(x: Any) -> Floats:
+        largest: Floats = np.where(np.isfinite(x), x, 0.0).reshape(count, outputs, -1).max(axis=0)
+        return largest
+
+    peak = np.maximum.accumulate(by_output(np.abs(probed)), axis=1)
+    peak = np.maximum(peak, by_output(np.abs(jump))[:, -1:])
+    before = np.maximum.accumulate(by_output(parts), axis=1)
+    before[:, 1:] = before[:, :-1]
     with np.errstate(invalid="ignore"):
-        size = np.where(np.isfinite(probed), np.abs(probed), 0.0).reshape(count, outputs, -1).max(axis=0)
-        peak = np.maximum.accumulate(size, axis=1)
-        peak = np.maximum(peak, np.abs(jump).reshape(count, outputs).max(axis=0)[:, None])
-        lost = ~(noise.reshape(count, outputs, -1).max(axis=0) <= NOISY * peak).all(axis=0)
+        off = noise.reshape(count, outputs, -1).max(axis=0)
+        lost = ~(off <= np.maximum(NOISY * peak, INEVITABLE * before)).all(axis=0)
     usable = int(np.flatnonzero(lost)[0]) if lost.any() else len(lost)
     if usable < 4 * _PROBES:
         raise NotInverted("the transfer function is lost in rounding")
-    largest = peak[:, usable - 1]
+    largest = np.maximum(peak[:, usable - 1], off[:, :usable].max(axis=1) / FINE)
     return usable, np.tile(np.where(largest == 0, 1.0, largest), count)
 
 
@@ -274,7 +286,7 @@ def _panels(
     count = 0
     while len(centre):
         s = np.asarray(shift + 1j * (centre[:, None] + half[:, None] * _POINTS), dtype=np.complex128)
-        h, noise = transfer(s.ravel())
+        h, noise, _ = transfer(s.ravel())
         if not (noise <= 100 * NOISY * measure[:, None]).all():
             raise _Lost
         values = (h - jump[:, None] - tail.transfer(s.ravel())).reshape(len(jump), *s.shape) / s
