@@ -29,6 +29,8 @@ Span = tuple[float, float]
 
 MOST_POINTS = 2_000_000
 _STEPS_PER_WAVE = 16
+_LOWEST = 1e-300
+"""Hz, above the smallest number whose reciprocal is finite."""
 _LEAST_PER_DECADE = 20.0
 
 
@@ -81,8 +83,8 @@ def grid(response: Response, span: Span) -> Floats:
     per_decade = max(network.grid.per_decade if network.grid else 0.0, _LEAST_PER_DECADE)
     bottom = low
     if low == 0.0:
-        bottom = 1e-6 * min(network.grid.low if network.grid else high, high)
-    decades = np.log10(high / bottom) if high > bottom else 0.0
+        bottom = max(1e-6 * min(network.grid.low if network.grid else high, high), _LOWEST)
+    decades = np.log10(high) - np.log10(bottom) if high > bottom else 0.0
     step = 1.0 / (_STEPS_PER_WAVE * travel_time(network)) if travel_time(network) > 0.0 else np.inf
     count = int(np.ceil(decades * per_decade)) + 1
     if count + (high - low) / step > MOST_POINTS:

@@ -336,6 +336,9 @@ class Lexer:
         if mantissa.startswith("."):
             plain, why = f"0{digits}", "has no digit before the point"
             help = f"write {plain}{suffix}"
+        elif mantissa.count(".") == 2 and mantissa.endswith(".") and _PLAIN_NUMBER.fullmatch(mantissa[:-1]):
+            plain, why = f"{mantissa[:-1]}{exponent}", "has a point too many"
+            help = f"write {plain}{suffix}"
         elif mantissa.endswith(".") and _PLAIN_NUMBER.fullmatch(mantissa[:-1]):
             plain, why = f"{mantissa[:-1]}.0{exponent}", "has no digit after the point"
             help = f"write {plain}{suffix} or {mantissa[:-1]}{exponent}{suffix}"

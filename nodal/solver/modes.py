@@ -40,8 +40,8 @@ def poles(system: System, ignoring_functions: bool = False) -> Complexes:
     if pattern.functions and not ignoring_functions:
         raise NotLumped("the system holds functions of s")
     g, c, scale = _scaled(pattern)
-    if not c.any():
-        return np.zeros(0, dtype=complex)
+    if not c.any() or not (np.isfinite(g).all() and np.isfinite(c).all()):
+        return np.zeros(0, dtype=complex)  # none, or values beyond what scaling can bring together
     reduced = _reduce(g, c)
     if reduced is None:
         return np.zeros(0, dtype=complex)
