@@ -129,26 +129,36 @@ def check_file(path: str, wanted: Wanted) -> CheckAnswer:
 
 def record_file(path: str) -> RecordAnswer:
     """Bring the record beside one design up to date, or make it; a file that already holds is not touched."""
-    from nodal.measured import measure
-
     design, kind, diagnostics, sources = _loaded(path)
     if design is None:
         return RecordAnswer(path, kind, diagnostics, sources)
     target = records.record_path(path)
     try:
-        record = records.load(target)
-        measured = measure(Checks(design))
-        count = sum(len(figures) for figures in measured.values())
-        changes = records.compare(record or records.empty(target), measured)
-        text = records.update(record, measured, os.path.basename(path))
-        written = text != record.text if record is not None else count > 0
-        if written:
-            _write(target, text)
+        return record_design(Checks(design), target)
     except DesignError as error:
         return RecordAnswer(
             path, "broken", (*diagnostics, *error.diagnostics), {**sources, **error.sources}, target
         )
-    return RecordAnswer(path, "design", diagnostics, sources, target, count, tuple(changes), written)
+
+
+def record_design(checks: Checks, target: str) -> RecordAnswer:
+    """Bring the record in the file `target` up to date with a design. DesignError where it cannot be read or
+    written."""
+    from nodal.measured import measure
+
+    design = checks.design
+    record = records.load(target)
+    measured = measure(checks)
+    count = sum(len(figures) for figures in measured.values())
+    changes = records.compare(record or records.empty(target), measured)
+    text = records.update(record, measured, os.path.basename(design.path))
+    written = text != record.text if record is not None else count > 0
+    if written:
+        _write(target, text)
+    found = tuple(design.diagnostics)
+    return RecordAnswer(
+        design.path, "design", found, design.sources, target, count, tuple(changes), written
+    )
 
 
 def is_shared(path: str) -> bool:
