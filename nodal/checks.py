@@ -62,7 +62,7 @@ class RequirementItem:
 
     @property
     def asked(self) -> str:
-        """Relation and limit as written, with the value of what is no number: "<= 3 %", "<= 2 * most (6 Ω)"."""
+        """Relation and limit as written, worked out where it is no number: "<= 3 %", "<= 2 * most (6 Ω)"."""
         r = self.requirement
         value = show(r.limit, r.unit, 12)
         if r.relation == "=":

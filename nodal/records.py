@@ -275,7 +275,7 @@ def value_text(measured: Measured) -> str:
         value = 0.0
     digits = DIGITS
     if value != 0.0 and measured.floor > 0.0:
-        digits = min(DIGITS, 1 + math.floor(math.log10(abs(value) / measured.floor)))
+        digits = min(DIGITS, 1 + math.floor(math.log10(abs(value)) - math.log10(measured.floor)))
     return show(value + 0.0, unit, max(digits, 1))
 
 
