@@ -119,7 +119,7 @@ def respond(
     jumps = np.zeros((count, 1))
     arrivals = np.zeros(1)
     alive = _alive(system, source, outputs, window)
-    found = _realised(system, source, outputs, alive, ramp, frequencies)
+    found = _realised(system, source, outputs, alive, ramp, 1 / window, frequencies)
     if found is not None:
         methods[alive[found.accepted]] = POLES
         error[alive] = _TRUST * found.mismatch + 1e-13 * found.largest
@@ -156,7 +156,7 @@ def _alive(
 
 def _realised(
     system: System, source: Mapping[int, float], outputs: Sequence[Output], alive: NDArray[np.intp], ramp: float,
-    frequencies: ArrayLike,
+    pace: float, frequencies: ArrayLike,
 ) -> Realisation | None:
     """Poles and residues of the outputs that are `alive`; None where there are none or they are not known."""
     if system.functions or not len(alive):
@@ -167,7 +167,7 @@ def _realised(
     if len(hopeless):
         raise Impulse(hopeless.tolist())
     try:
-        return realise(system, source, wanted, frequencies)
+        return realise(system, source, wanted, frequencies, pace)
     except NotRealised:
         return None
 
@@ -233,7 +233,7 @@ def sampled(edges: Edges, points: int, over: float | None = None) -> Floats:
     knots = _knots(edges, end, points // 6)
     t = np.unique(np.concatenate([knots, *_first_guesses(knots, points // 2)]))
     if len(t) > points:
-        return t[np.linspace(0, len(t) - 1, max(points, 0)).astype(int)]
+        return np.asarray(t[np.linspace(0, len(t) - 1, max(points, 0)).astype(int)], dtype=float)
     values = edges(t)
     missed = np.full(len(t) - 1, np.inf)  # of every interval: what a straight line leaves out; inf: not known yet
     inner = np.zeros((len(values), len(t) - 1))

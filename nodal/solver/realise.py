@@ -140,31 +140,34 @@ class Realisation:
 
 
 def realise(
-    system: System, source: Mapping[int, float], outputs: Sequence[Mapping[int, float]], frequencies:
-    ArrayLike = (),
+    system: System, source: Mapping[int, float], outputs: Sequence[Mapping[int, float]],
+    frequencies: ArrayLike = (), pace: float = 1.0,
 ) -> Realisation:
-    """Realise every output of A(s) x = source; checked against the solver at its own grid and at
-    `frequencies` (Hz).
+    """Realise every output of A(s) x = source; checked against the solver, also at `frequencies` (Hz).
 
-    Raises NotRealised where the poles cannot be told reliably, ValueError for a system with functions of s.
+    `pace` (rad/s) is what is slow or fast where all poles are at the origin. Raises NotRealised where the poles
+    cannot be told reliably, ValueError for a system with functions of s.
     """
     if system.functions:
         raise ValueError("a system with functions of s has no finite set of poles")
     pattern = Pattern(system)
     infinity = at_infinity(pattern, source, outputs)
-    origin = _order_at_origin(pattern)
+    origin, resting = _at_origin(pattern, source, outputs)
     poles: list[Complexes] = []
     modes: list[Complexes] = []
     residues: list[Complexes] = []
     clusters: list[Cluster] = []
-    for band in _bands(pattern, infinity.degree, origin, source, outputs):
+    for band in _bands(pattern, infinity.degree, origin, pace, source, outputs):
         poles.append(band.poles)
         for cluster in _split(band.t, band.c, band.b):
-            if len(cluster.b) == 1:
-                modes.append(cluster.t[0])
-                residues.append(cluster.c * cluster.b)
-            else:
+            if len(cluster.b) > 1:
                 clusters.append(cluster)
+                continue
+            modes.append(cluster.t[0])
+            residue = cluster.c * cluster.b
+            if cluster.t[0, 0] == 0:
+                residue[resting] = 0  # such an output has a limit, which rounding would let drift
+            residues.append(residue)
     count = len(outputs)
     found = Realisation(
         infinity.direct, infinity.slope,
@@ -208,11 +211,17 @@ def at_infinity(
     return AtInfinity(direct, slope, orders, round((dets[1] - dets[0]) / decades))
 
 
-def _order_at_origin(pattern: Pattern) -> int:
-    """The number of poles at s = 0."""
+def _at_origin(
+    pattern: Pattern, source: Mapping[int, float], outputs: Sequence[Mapping[int, float]]
+) -> tuple[int, NDArray[np.bool_]]:
+    """(number of poles at s = 0, the outputs that have a finite limit there)."""
     arithmetic = MpArithmetic(_DIGITS)
     exacts = [Exact(pattern, arithmetic.context.mpf(10) ** -e, arithmetic) for e in _FAR]
-    return round((_log_det(exacts[0]) - _log_det(exacts[1])) / (_FAR[1] - _FAR[0]))
+    origin = round((_log_det(exacts[0]) - _log_det(exacts[1])) / (_FAR[1] - _FAR[0]))
+    far, near = ([exact.output(o, x) for o in outputs]
+                 for exact, x in ((exact, exact.solve(source)[0]) for exact in exacts))
+    resting = [abs(b) < abs(a) * 10 ** ((_FAR[1] - _FAR[0]) // 2) or b == 0 for a, b in zip(far, near, strict=True)]
+    return origin, np.array(resting, dtype=bool)
 
 
 def _log_det(exact: Exact) -> float:
@@ -252,12 +261,12 @@ class _Shifted:
 
 
 def _bands(
-    pattern: Pattern, degree: int, origin: int, source: Mapping[int, float], outputs: Sequence[Mapping[int,
-    float]]
+    pattern: Pattern, degree: int, origin: int, pace: float, source: Mapping[int, float],
+    outputs: Sequence[Mapping[int, float]],
 ) -> list[_Band]:
     if degree == 0:
         return []
-    edges = _band_edges(pattern, degree, origin)
+    edges = _band_edges(pattern, degree, origin, pace)
     shifts = [math.sqrt(a * b) for a, b in pairwise(edges)]
     forms = [_shifted(pattern, shift, source, outputs) for shift in shifts]
     limits = [0.0]
@@ -278,7 +287,7 @@ def _bands(
     return bands
 
 
-def _band_edges(pattern: Pattern, degree: int, origin: int) -> list[float]:
+def _band_edges(pattern: Pattern, degree: int, origin: int, pace: float) -> list[float]:
     """Limits of bands of |pole| (rad/s), none wide, set where few poles are.
 
     d log det A/d log s at real s is about the number of poles below s.
@@ -288,19 +297,17 @@ def _band_edges(pattern: Pattern, degree: int, origin: int) -> list[float]:
     plan = make_plan(pattern.system, points[[40, 80, 110, 140]], pattern)
     log_det = Factored(plan, points.astype(complex)).log_det()
     below = np.gradient(log_det, exponents)
-    middle = exponents
     inside = (below > origin + 0.02) & (below < degree - 0.02)
     if not inside.any():
-        centre = float(middle[np.argmin(np.abs(below - (origin + degree) / 2))])
-        return [10.0 ** (centre - 1), 10.0 ** (centre + 1)]
-    low, high = float(middle[inside][0]), float(middle[inside][-1])
+        return [pace / 10, pace * 10]
+    low, high = float(exponents[inside][0]), float(exponents[inside][-1])
     count = max(1, math.ceil((high - low) / _BAND))
     edges = [low]
     density = np.gradient(below, exponents)
     for k in range(1, count):
         wanted = low + (high - low) * k / count
-        near = np.flatnonzero(np.abs(middle - wanted) <= 0.75)
-        edges.append(float(middle[near[np.argmin(density[near])]]))
+        near = np.flatnonzero(np.abs(exponents - wanted) <= 0.75)
+        edges.append(float(exponents[near[np.argmin(density[near])]]))
     return [10.0**e for e in [*edges, high]]
 
 
@@ -357,11 +364,15 @@ def _band(form: _Shifted, chosen: NDArray[np.bool_]) -> _Band:
 
 
 def _at_rest(band: _Band, origin: int) -> _Band:
-    """The slowest `origin` poles are known to be exactly zero."""
+    """The slowest `origin` poles are known to be exactly zero.
+
+    Several stand in the Schur form as a cluster around zero, whose mean is right and whose members are not: to
+    change them one by one would change their sum by more than rounding did.
+    """
     slowest = np.argsort(np.abs(band.poles))[:origin]
     poles, t = band.poles.copy(), band.t.copy()
     poles[slowest] = 0
-    t[slowest, slowest] = 0
+    t[slowest, slowest] -= t[slowest, slowest].mean()
     return _Band(poles, t, band.c, band.b)
 
 
