@@ -68,7 +68,7 @@ def test_one_line_a_requirement_grouped_by_case(folder) -> None:
         ["pass", "wide", "bandwidth(m) <= 0.2 MHz", "159.16 kHz", "+20.4 %", "probe.nodal:10"],
         ["slow"],
         ["fail", "level", "gain(m) at 159.154943 kHz >= 0.7", "0.44721", "-36.1 %", "probe.nodal:9"],
-        ["pass", "wide", "bandwidth(m) <= 0.2 MHz", "79.571 kHz", "+60.2 %", "probe.nodal:10"],
+        ["pass", "wide", "bandwidth(m) <= 0.2 MHz", "79.590 kHz", "+60.2 %", "probe.nodal:10"],
         [],
         ["4 requirements in 1 design: 3 pass, 1 fail"],
     ]

@@ -8,6 +8,7 @@ import re
 import pytest
 
 import nodal
+from nodal import records
 from nodal.figure_names import BY_NAME
 from nodal.language import amplifiers, cables
 from nodal.language.forms import FORMS
@@ -17,6 +18,7 @@ BLOCKS = [
     (m.group(1).strip(), m.group(2))
     for m in re.finditer(r"^```nodal(.*)\n((?:.*\n)*?)^```$", TEXT, re.MULTILINE)
 ]
+RECORDS = re.findall(r"^```toml\n((?:.*\n)*?)^```$", TEXT, re.MULTILINE)
 FRAME = next(body for mark, body in BLOCKS if mark == "frame")
 EXAMPLES = [(mark, body) for mark, body in BLOCKS if mark != "frame"]
 
@@ -27,7 +29,7 @@ def whole(mark: str, body: str) -> str:
 
 
 def test_all_fences_are_read() -> None:
-    assert 2 * len(BLOCKS) == TEXT.count("\n```")
+    assert 2 * (len(BLOCKS) + len(RECORDS)) == TEXT.count("\n```")
     assert len([mark for mark, _ in EXAMPLES if not mark]) > 25
 
 
@@ -44,6 +46,13 @@ def test_example_that_fails(mark: str, body: str) -> None:
     with pytest.raises(nodal.DesignError) as caught:
         nodal.loads(whole(mark, body))
     assert [d.code for d in caught.value.diagnostics if d.severity == "error"] == [code.group(1)]
+
+
+@pytest.mark.parametrize("text", RECORDS)
+def test_example_of_a_record(text: str) -> None:
+    record = records.parse(text, "bench_probe.figures.toml")
+    assert set(record.entries) == {"nominal", "spring_tip"}
+    assert record.tolerance("noise(screen)", "V") == records.Tolerance(0.1, "%")
 
 
 @pytest.mark.parametrize("word", sorted(FORMS))
