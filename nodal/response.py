@@ -31,13 +31,13 @@ from nodal.assemble import (
     side_parts,
 )
 from nodal.network import GROUND, Contact, Drive, Network
-from nodal.parts import CurrentSource, Inductor, Part, VoltageSource
+from nodal.parts import Amplifier, Cable, Capacitor, CurrentSource, Inductor, Part, VoltageSource
 from nodal.parts.coupling import coefficient
 from nodal.solver.arithmetic import MpArithmetic
 from nodal.solver.exact import Exact
 from nodal.solver.limit import limit_of
 from nodal.solver.matrix import System
-from nodal.solver.modes import LARGEST, poles
+from nodal.solver.modes import poles, poles_near
 from nodal.solver.plan import Plan, Singular
 from nodal.solver.sweep import derivative, plan_for, solve
 
@@ -46,6 +46,11 @@ Complexes = NDArray[np.complex128]
 
 REACH = 100.0
 """A plan serves frequencies this far outside the range that it was made for."""
+
+POLES_SOUGHT = 400
+"""Unknowns up to which all poles are found for search grids: the time goes with the third power."""
+
+SHIFTS_PER_DECADE = 5
 
 NOISE_VALUES = 1 << 20
 """How many values a block of the noise calculation keeps at once."""
@@ -658,18 +663,28 @@ class Response:
 
     @cached_property
     def _resonances(self) -> Floats:
+        kinds = {type(part) for part in self.network.parts}
+        if not kinds & {Cable, Amplifier} and not {Inductor, Capacitor} <= kinds:
+            return np.zeros(0)  # networks of resistors with one kind of store have real poles (Cauer 1926)
         system = assemble(self.network, lumped=True).system
-        if system.size > LARGEST:
+        grid = self.network.grid
+        if system.size <= POLES_SOUGHT:
+            found = poles(system)
+        elif grid is None:
             return np.zeros(0)
-        found = poles(system)
+        else:
+            count = max(2, int(SHIFTS_PER_DECADE * np.log10(grid.high / grid.low)))
+            shifts = 2j * np.pi * np.geomspace(grid.low, grid.high, count)
+            found = poles_near(system, np.asarray(shifts, dtype=np.complex128))
         light = found[(np.abs(found.real) < 0.5 * np.abs(found)) & (found.imag > 0)]
         return np.unique(light.imag / (2 * np.pi))
 
     def lightly_damped(self) -> Floats:
         """Frequencies (Hz) of poles with a damping ratio below 0.5, for search grids; may be empty.
 
-        None are sought in networks of more than 1,200 unknowns. Cables count as one section of inductance and
-        capacitance here, dielectrics as without loss.
+        In networks of more than 400 unknowns only the few poles nearest to each of some frequencies over the
+        sweep are sought. Cables count as one section of inductance and capacitance here, dielectrics as without
+        loss.
         """
         return self._resonances
 

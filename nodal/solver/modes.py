@@ -7,7 +7,8 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy import linalg
+from scipy import linalg, sparse
+from scipy.sparse.linalg import ArpackNoConvergence, LinearOperator, eigs, splu
 
 from nodal.solver.matrix import System
 from nodal.solver.pattern import Complexes, Floats, Pattern
@@ -17,6 +18,7 @@ LARGEST = 1200
 
 _RANK = 1e-11
 _POLISHING = 3
+_NEIGHBOURS = 6
 
 
 class NotLumped(Exception):
@@ -51,6 +53,35 @@ def poles(system: System, ignoring_functions: bool = False) -> Complexes:
         return np.zeros(0, dtype=complex)
     found = _polished(g, c, -found[np.isfinite(found)]) * scale
     return np.asarray(found[np.lexsort((found.imag, np.abs(found)))], dtype=complex)
+
+
+def poles_near(system: System, shifts: Complexes) -> Complexes:
+    """Some finite poles (rad/s) of a large lumped system: the few nearest to each shift, by inverse iteration.
+
+    Arnoldi's method on (G + σC)⁻¹C, whose eigenvalues are 1/(σ - s) (Ericsson and Ruhe 1980); only poles closer
+    to a shift than half its size are kept. What stands off the shifts is not found: for search grids. Functions
+    of s are left out.
+    """
+    pattern = Pattern(system)
+    size = pattern.size
+    at = pattern.rows, pattern.cols
+    g = sparse.csc_matrix((pattern.entry_g.astype(complex), at), shape=(size, size))
+    c = sparse.csc_matrix((pattern.entry_c.astype(complex), at), shape=(size, size))
+    start = np.random.default_rng(1).standard_normal(size).astype(complex)
+    found = []
+    for shift in shifts:
+        try:
+            factors = splu(g + shift * c)
+        except RuntimeError:
+            continue  # a pole, or nothing that double precision can tell from one
+        inverse = LinearOperator((size, size), matvec=lambda x, f=factors: f.solve(c @ x), dtype=complex)
+        try:
+            values: Any = eigs(inverse, _NEIGHBOURS, v0=start, tol=1e-6, return_eigenvectors=False)
+        except ArpackNoConvergence as partial:
+            values = partial.eigenvalues
+        near = shift - 1 / values[values != 0]
+        found.append(near[np.abs(near - shift) < 0.5 * np.abs(shift)])
+    return np.concatenate(found) if found else np.zeros(0, dtype=complex)
 
 
 def _scaled(pattern: Pattern) -> tuple[Floats, Floats, float]:

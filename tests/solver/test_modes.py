@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 from support.systems import Sketch
 
-from nodal.solver.modes import NotLumped, lightly_damped, poles
+from nodal.solver.modes import NotLumped, lightly_damped, poles, poles_near
 
 
 def test_series_resonance():
@@ -81,3 +81,25 @@ def test_functions_are_refused_or_left_out():
     net.terms = [t for t in net.terms if t.f is None]
     net.terms += Sketch(net.size).terms
     assert poles(net.system(), ignoring_functions=True).shape in {(0,), (1,)}
+
+
+def test_poles_near_shifts_of_a_long_ladder():
+    """Ladder of N sections L, C, driven at one end and open at the other: ω = 2/√(LC) sin((2k-1)π/(4N+2)).
+
+    Textbook (the chain of beads, one end fixed, one free); value from memory.
+    """
+    count, l, c = 300, 2e-7, 1e-11
+    net = Sketch(count + 1)
+    net.source(1, 0)
+    for k in range(1, count + 1):
+        net.inductor(k, k + 1, l)
+        net.capacitor(k + 1, 0, c)
+    k = np.arange(1, count + 1)
+    expected = 2 / math.sqrt(l * c) * np.sin((2 * k - 1) * math.pi / (4 * count + 2))
+    shifts = 1j * np.geomspace(expected[0], expected[-1], 12) * (1 + 0.01j)
+    found = poles_near(net.system(), shifts)
+    found = found[found.imag > 0]
+    assert len(np.unique(np.round(found.imag / expected[0], 3))) >= 24
+    for s in found:
+        assert abs(s.real) < 1e-6 * abs(s)
+        assert np.abs(expected / s.imag - 1).min() < 1e-6
