@@ -15,7 +15,7 @@ from dataclasses import dataclass
 from nodal.design import Design, loads
 from nodal.language import syntax
 from nodal.language.diagnostics import Collector, DesignError
-from nodal.language.files import Disk, Files
+from nodal.language.files import Disk, Files, Unusable
 from nodal.language.parse import parse, read
 from nodal.revisions import Tree, git
 
@@ -33,6 +33,21 @@ class Home:
     label: str
     files: Files
     words: str
+
+
+class Nowhere:
+    """The files around a text of which nothing is known: none."""
+
+    root = "the repository"
+
+    def beside(self, label: str, target: str) -> str:
+        raise Unusable("git does not say where this state of the file stood")
+
+    def key(self, label: str) -> str:
+        return label
+
+    def read(self, label: str, collector: Collector) -> str | None:
+        return None
 
 
 @dataclass(frozen=True, slots=True)
@@ -104,7 +119,7 @@ def _home(file: str, path: str | None, name: str | None, newest: bool) -> Home:
     if found and top.returncode == 0:
         beside = os.path.relpath(os.path.join(os.fsdecode(top.stdout).rstrip("\n"), found[0]))
         return Home(beside, Disk(beside), "the work tree")
-    return Home(named, Disk(file), "nowhere: no such file is known")
+    return Home(named, Nowhere(), "nowhere: git knows no such file")
 
 
 def _escaped(name: str) -> str:

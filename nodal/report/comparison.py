@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Sequence
+from functools import partial
 from typing import Any
 
 from rich import box
@@ -21,7 +22,7 @@ from nodal.studies.facts import ROUNDING, distinct
 
 _WHOLE = ("added", "gone", "renamed")
 FRACTIONS = ("flatness", "peaking", "error", "disturbance")
-"""Figures that are parts of one, shown in percent: how far they moved is told in points."""
+"""Figures that are parts of one, shown in percent: how far they moved is told in percentage points."""
 _STYLES = {"pass": "green", "fail": "red", "error": "red"}
 
 
@@ -116,16 +117,15 @@ def _moved(moved: Sequence[Moved], several: bool, count: str) -> Table:
 
 
 def _moved_by(moved: Moved) -> str:
-    """The relative change, but points of a figure in percent and degrees of a phase."""
+    """The relative change, but percentage points of a figure in percent and degrees of a phase."""
     old, new, name = moved.old.value, moved.new.value, moved.row.call.name
     if name not in FRACTIONS and name != "phase":
         return signed(moved.relative)
     if old is None or new is None or not math.isfinite(new - old):
         return ""
-    plus = "+" if new > old else ""
     if name == "phase":
-        return f"{plus}{numbers.ratio(new - old, 3)}°"
-    return f"{plus}{numbers.ratio((new - old) * 100.0, 3)} points"
+        return f"{new - old:+#.3g}°"
+    return signed(new - old) if abs(new - old) < 1e-4 else f"{(new - old) * 100.0:+#.3g} pp"
 
 
 def signed(change: float | None) -> str:
@@ -144,11 +144,10 @@ def figures(row: FigureRow, old: Result, new: Result) -> tuple[str, str]:
         return _bound(old), _bound(new)
     if old.value is None or new.value is None:
         return before, after
-    unit = new.unit
-    scale = 1.0
+    was, now, unit = old.value, new.value, new.unit
     if row.call.name in FRACTIONS:
-        unit, scale = "%", 100.0
-    return distinct(old.value * scale, new.value * scale, lambda v, digits: show(v, unit, digits), least=5)
+        was, now, unit = was * 100.0, now * 100.0, "%"
+    return distinct(partial(show, was, unit), partial(show, now, unit), least=5)
 
 
 def _bound(result: Result) -> str:
@@ -162,18 +161,23 @@ def _requirements(requirements: Sequence[Judged], several: bool) -> Table:
         columns.insert(1, ("case", "left"))
     table = _table(*columns)
     for one in requirements:
+        asks = {(r.figure, r.asked): None for r in (one.old, one.new) if r is not None}
+        name = f"  {one.name}"
+        if len(asks) == 1:
+            name += "".join(f"\n    {figure}\n    {asked}" for figure, asked in asks)
         case = [one.case] if several else []
         what = Text(one.what, style=_style(one.what))
-        table.add_row(f"  {one.name}", *case, what, _answer(one.old), _answer(one.new))
+        answers = (_answer(result, with_ask=len(asks) > 1) for result in (one.old, one.new))
+        table.add_row(name, *case, what, *answers)
     return table
 
 
-def _answer(result: RequirementResult | None) -> Text:
+def _answer(result: RequirementResult | None, *, with_ask: bool) -> Text:
     if result is None:
         return Text(numbers.NOTHING)
     answer = Text(result.status, style=_STYLES[result.status])
-    came = found(result) if result.found is not None else result.reason
-    return answer.append(f": {came}\n{result.figure}\n{result.asked}", style="none")
+    answer.append(f": {found(result) or result.reason}", style="none")
+    return answer.append(f"\n{result.figure}\n{result.asked}", style="none") if with_ask else answer
 
 
 def found(result: RequirementResult) -> str:

@@ -126,9 +126,6 @@ def compare(
     common = tuple(c for c in chosen if c in old.cases and c in new.cases)
     before = {case: old.network(case).network for case in common}
     after = {case: new.network(case).network for case in common}
-    changes = {
-        case: differences(before[case], after[case], _lets(old, case), _lets(new, case)) for case in common
-    }
     solving = [case for case in common if _circuit(before[case]) != _circuit(after[case])]
     judging = [c for c in common if c in solving or before[c].requirements != after[c].requirements]
     was = {case: Response(before[case]) for case in judging}
@@ -138,10 +135,21 @@ def compare(
     return Comparison(
         old, new, common,
         tuple(c for c in chosen if c not in old.cases), tuple(c for c in chosen if c not in new.cases),
-        tuple(gathered(changes)), tuple(moved),
+        changes_of_text(old, new, common), tuple(moved),
         tuple(found for case in judging for found in _judged(case, old, new, was[case], now[case])),
         count, tuple(notes),
     )  # fmt: skip
+
+
+def changes_of_text(old: Design, new: Design, cases: Sequence[str]) -> tuple[Change, ...]:
+    """What the texts say differently in cases that both have; solves nothing."""
+    found = {
+        case: differences(
+            old.network(case).network, new.network(case).network, _lets(old, case), _lets(new, case)
+        )
+        for case in cases
+    }
+    return tuple(gathered(found))
 
 
 def _circuit(network: Network) -> Network:
