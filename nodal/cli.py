@@ -137,6 +137,7 @@ _JOBS = click.option("-j", "--jobs", type=click.IntRange(min=1), metavar="N",
 _CHECK = [
     _CASE,
     _LET,
+    click.option("--dependents", is_flag=True, help="Check the designs that include a PATH, too."),
     click.option("--no-solve", is_flag=True, help="Only read the files and check their connections: fast."),
     _JOBS,
     click.option("--format", type=click.Choice(["text", "json", "github", "junit"]), default="text",
@@ -423,13 +424,16 @@ def tidy(options: Options, paths: tuple[str, ...], check: bool, diff: bool) -> N
 @main.command()
 @click.argument("paths", nargs=-1, required=True, metavar="PATH...")
 @_options(_CHECK)
-def check(options: Options, paths: tuple[str, ...], no_solve: bool, jobs: int | None) -> None:
+def check(
+    options: Options, paths: tuple[str, ...], dependents: bool, no_solve: bool, jobs: int | None
+) -> None:
     """Hold designs to their requirements, and to the figures recorded beside them.
 
-    Each PATH is a file, a folder whose .nodal files are meant, or - for standard input. Every `require` of
-    every case is answered with what was asked, what was found and the margin: what is left of the limit, or
-    of the tolerance for `=`, negative where it is missed. A file without source or reading is a shared file,
-    checked where it is included.
+    Each PATH is a file, a folder whose .nodal files are meant, or - for standard input; a record stands for
+    its design. Every `require` of every case is answered with what was asked, what was found and the margin:
+    what is left of the limit, or of the tolerance for `=`, negative where it is missed. A file without source
+    or reading is a shared file, checked where it is included: with --dependents every design of the
+    repository that includes a PATH is checked too.
 
     Where a record stands beside a design (see `nodal record`), figures that moved beyond its tolerance, are
     new, stale or no longer reached fail. With --let records are not looked at.
@@ -438,12 +442,15 @@ def check(options: Options, paths: tuple[str, ...], no_solve: bool, jobs: int | 
     cannot be computed.
     """
     from nodal.checking import Wanted, check_files, found, worst
+    from nodal.dependents import designs_of, with_dependents
     from nodal.language.diagnostics import Collector
     from nodal.paths import find
     from nodal.report import checks
 
     collector = Collector()
-    files = find(paths, collector)
+    files = find(designs_of(paths, collector), collector)
+    if dependents:
+        files = with_dependents(files)
     wanted = Wanted(options.case, _lets(options), solve=not no_solve)
     answers = list(_progress(check_files(files, wanted, jobs), len(files), options))
     known = dict.fromkeys(case for answer in answers for case in answer.cases)

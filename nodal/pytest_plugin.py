@@ -222,12 +222,7 @@ class _Test(pytest.Item):
         """What was asked and found, without traceback; the traceback for anything unforeseen."""
         error = excinfo.value
         if isinstance(error, Unmet):
-            shown = excinfo.getrepr(style="value")
-            if shown.reprcrash is not None:
-                shown.reprcrash = replace(
-                    shown.reprcrash, path=error.path, lineno=error.line, message=error.brief
-                )
-            return shown
+            return _shown(excinfo.getrepr(style="value"), error)
         told = _without_traceback(excinfo)
         return super().repr_failure(excinfo, style) if told is None else told
 
@@ -311,6 +306,18 @@ class RecordTest(_Test):
         """The first line of the case in the record."""
         line = min((entry.line for entry in self.record.entries.get(self.case, {}).values()), default=0)
         return self._place(self.record.path, line)
+
+
+def _shown(shown: Any, error: Unmet) -> Any:
+    """The representation with the place and the short form that summaries print, also where it is sent to
+    another process, which takes them from the chain."""
+    crash = shown.reprcrash
+    if crash is not None:
+        crash = replace(crash, path=error.path, lineno=error.line, message=error.brief)
+        shown.reprcrash = crash
+        if getattr(shown, "chain", None):
+            shown.chain = [(shown.reprtraceback, crash, None)]
+    return shown
 
 
 def _said(found: Diagnostic) -> str:

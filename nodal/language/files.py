@@ -10,6 +10,8 @@ from typing import Protocol
 from nodal.language.diagnostics import Collector
 from nodal.language.parse import read as read_from_disk
 
+REPOSITORY = "the repository"
+
 Reader = Callable[[str, Collector], "str | None"]
 
 
@@ -50,7 +52,7 @@ class Disk:
 
     def __init__(self, first: str, read: Reader = read_from_disk) -> None:
         self.read = read
-        self._root, self.root = _root_of(first)
+        self._root, self.root = root_of(first)
 
     def beside(self, label: str, target: str) -> str:
         if os.path.isabs(target):
@@ -67,9 +69,10 @@ class Disk:
         return str(path)
 
 
-def _root_of(path: str) -> tuple[Path, str]:
+def root_of(path: str) -> tuple[Path, str]:
+    """The folder that includes may not leave where `path` is the first file, links followed; what it is."""
     folder = Path(path).resolve().parent
     for above in (folder, *folder.parents):
         if (above / ".git").exists():
-            return above, "the repository"
+            return above, REPOSITORY
     return folder, "the folder of the first file"

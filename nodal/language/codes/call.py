@@ -130,6 +130,14 @@ CALL: tuple[Code, ...] = (
         "or in the figure's unit. `nodal record` writes such files; it keeps tolerances and comments.",
     ),
     Code(
+        "record-without-design",
+        "error",
+        "{path} records figures of {design}, which does not exist",
+        "remove the record, or rename it with its design",
+        "Recorded figures stand beside their design: those of bench_probe.nodal in bench_probe.figures.toml. "
+        "A record was named, and there is no design beside it.",
+    ),
+    Code(
         "unknown-code",
         "error",
         'there is no code "{name}"',
