@@ -133,7 +133,9 @@ class _Run:
         unsettled = self._unsettled()
         self.extended = len(unsettled)
         for point in unsettled:
-            self._extend(plan, int(point))
+            if (self.error[..., point] > TOLERANCE).any():
+                self._extend(plan, int(point))
+                self._settle_zeros(plan, int(point))
 
     def solution(self, which: int) -> Solution:
         values = self.values[which].copy()
@@ -201,6 +203,22 @@ class _Run:
                     self.error[which, k, :, point] = error
             if (self.error[..., point] <= TOLERANCE).all():
                 return
+
+    def _settle_zeros(self, plan: Plan, point: int) -> None:
+        """An output that is exactly zero at `point` and at a frequency with nothing special about it is zero
+        at every one: no other point needs many digits to tell."""
+        for k, source in enumerate(self.sources):
+            for j, output in enumerate(self.outputs):
+                waiting = (self.error[:, k, j] > TOLERANCE).any(axis=0)
+                if (self.values[:, k, j, point] != 0).any() or not waiting.any():
+                    continue
+                if any(np.ndim(value) for value in source.values()):
+                    continue
+                elsewhere = _Run(
+                    plan.pattern.system, np.array([generic(self.s[point])]), [source], [output], plan, False
+                )
+                if elsewhere.values[0, 0, 0, 0] == 0 and elsewhere.error[0, 0, 0, 0] == 0:
+                    self.values[:, k, j], self.error[:, k, j] = 0.0, 0.0
 
     def _exact_results(
         self, exact: Exact, source: Source, before: Complexes
