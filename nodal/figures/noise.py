@@ -23,7 +23,8 @@ def noise(asked: Asked, span: Span) -> Result:
     if high <= low:
         return Result(0.0, asked.unit)
     bottom = low if low > 0.0 else min(high, 1.0) * 1e-3
-    breaks = [np.array([low, high]), np.geomspace(bottom, high, int(np.ceil(np.log10(high) - np.log10(bottom))) + 1)]
+    decades = int(np.ceil(np.log10(high) - np.log10(bottom)))
+    breaks = [np.array([low, high]), np.geomspace(bottom, high, decades + 1)]
     poles = asked.response.lightly_damped()
     breaks.append(poles[(poles > low) & (poles < high)])
     time = travel_time(asked.response.network)
