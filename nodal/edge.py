@@ -37,6 +37,10 @@ POINTS = 500
 """Samples where the caller asks for no number."""
 
 
+_ON_THE_AXIS = 1e-9
+"""A pole whose real part is below this much of it is without damping, but for rounding."""
+
+
 @dataclass(frozen=True)
 class Trace:
     """One quantity after the edge. Call it with times (s, any shape) for volts, 0 before t = 0.
@@ -93,6 +97,12 @@ class EdgeResponse:
     def estimated_error(self) -> float:
         """The largest among all traces, V (or the reading's unit)."""
         return max((trace.error for trace in self.traces), default=0.0)
+
+    @property
+    def grows(self) -> bool:
+        """Whether a pole right of the axis was found, so that nothing settles."""
+        found = [edges.realisation.poles for edges in self._edges if edges.realisation is not None]
+        return any(bool((poles.real > _ON_THE_AXIS * np.abs(poles)).any()) for poles in found)
 
     @property
     def traces(self) -> list[Trace]:

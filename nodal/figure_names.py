@@ -1,7 +1,7 @@
 """The figures of merit by name: what they are asked about, their unit and a line of description.
 
 A light table without numerics: the language checks `require` statements against it, `nodal.figures` holds a
-function for each row that is `available`, and the command line lists it. Adding a figure adds its row here.
+function for each row, and the command line lists it. Adding a figure adds its row here.
 """
 
 from __future__ import annotations
@@ -9,7 +9,11 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Literal
 
-ArgumentKind = Literal["reading", "contact", "drive", "frequency", "band"]
+ArgumentKind = Literal["reading", "contact", "drive", "frequency", "band", "origin", "epoch"]
+
+ORIGINS = ("true", "tangent")
+"""Where the response parameters of high-voltage measurement count from: where the response sets in, or where
+the tangent at its steepest front leaves zero. A contact of such a name is meant as the contact."""
 
 Domain = Literal["point", "span", "edge"]
 """What a figure is a property of: one frequency (`at F`; over a range its extremes count), a whole range of
@@ -21,7 +25,8 @@ class FigureName:
     """One row: a figure, its arguments, unit and meaning.
 
     `required` arguments stand in this order; the `optional` ones follow in any order, each once at most, and
-    are told apart by form (a contact is a name, a frequency a quantity in hertz).
+    are told apart by form (a contact is a name, a frequency a quantity in hertz, an epoch one in seconds, an
+    origin one of `ORIGINS`).
     `unit` is an SI symbol, "" for a ratio, or one of the words resolved by `unit_of`: "gain" and "reading".
     `signed` figures are bounded in absolute value by `<=`. `decibels` says whether a limit in dB makes sense:
     the figure's `Result.decibels` then holds the equal of its value.
@@ -37,10 +42,10 @@ class FigureName:
     decibels: bool = False
     driven: bool = True
     """Whether its value depends on which sources drive."""
-    available: bool = True
 
 
 _NORMAL: tuple[ArgumentKind, ...] = ("contact", "frequency")
+_RECORD: tuple[ArgumentKind, ...] = ("contact", "origin", "epoch")
 
 TABLE: tuple[FigureName, ...] = (
     FigureName("gain", "point", ("reading",), _NORMAL, "gain",
@@ -72,23 +77,25 @@ TABLE: tuple[FigureName, ...] = (
     FigureName("noise_density", "point", ("reading",), (), "reading/√Hz",
                "one-sided noise density of a reading", driven=False),
     FigureName("rise", "edge", ("reading",), ("contact",), "s",
-               "10 % to 90 % transition duration of a rising edge", available=False),
+               "10 % to 90 % transition duration of a rising edge"),
     FigureName("fall", "edge", ("reading",), ("contact",), "s",
-               "90 % to 10 % transition duration of a falling edge", available=False),
+               "90 % to 10 % transition duration of a falling edge"),
     FigureName("overshoot", "edge", ("reading",), ("contact",), "",
-               "largest excursion beyond the 100 % level after the edge", available=False),
+               "largest excursion beyond the 100 % level after the 50 % instant"),
     FigureName("preshoot", "edge", ("reading",), ("contact",), "",
-               "largest excursion below the 0 % level before the edge", available=False),
+               "largest excursion beyond the 0 % level before the 50 % instant"),
     FigureName("settling", "edge", ("reading", "band"), ("contact",), "s",
-               "time from the 50 % instant until the response stays within the band", available=False),
+               "time from the 50 % instant until the response stays within the band"),
     FigureName("droop", "edge", ("reading",), ("contact",), "",
-               "fall of the top over the window", signed=True, available=False),
+               "fall from the top, read where `top at` says, to the end of the window", signed=True),
     FigureName("propagation_delay", "edge", ("reading",), ("contact",), "s",
-               "50 % to 50 % from the source's edge to the reading", signed=True, available=False),
-    FigureName("response_time", "edge", ("reading",), ("contact",), "s",
-               "integral of one minus the unit step response over the record", signed=True, available=False),
-    FigureName("partial_response_time", "edge", ("reading",), ("contact",), "s",
-               "that integral up to where the step response first reaches one", signed=True, available=False),
+               "50 % to 50 % from the source's edge to the reading", signed=True),
+    FigureName("response_time", "edge", ("reading",), _RECORD, "s",
+               "integral of one minus the response over the record, from the origin", signed=True),
+    FigureName("partial_response_time", "edge", ("reading",), _RECORD, "s",
+               "largest value of that integral on its way", signed=True),
+    FigureName("response_settling_time", "edge", ("reading",), _RECORD, "s",
+               "time until what is left of that integral stays below 2 % of the time"),
 )
 
 BY_NAME: dict[str, FigureName] = {row.name: row for row in TABLE}

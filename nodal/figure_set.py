@@ -153,10 +153,9 @@ def _contact_rows(name: str, span: Span) -> Iterable[FigureRow]:
 
 
 def required(networks: Iterable[Network]) -> list[FigureRow]:
-    """The figures that requirements ask about, each once, those left out that do not exist yet."""
+    """The figures that requirements ask about, each once."""
     wanted = (requirement for network in networks for requirement in network.requirements)
-    rows = (row for r in wanted if BY_NAME[r.figure.name].available for row in _asked_by(r))
-    return list(dict.fromkeys(rows))
+    return list(dict.fromkeys(row for requirement in wanted for row in _asked_by(requirement)))
 
 
 def _asked_by(requirement: Requirement) -> Iterable[FigureRow]:
@@ -169,7 +168,7 @@ def _asked_by(requirement: Requirement) -> Iterable[FigureRow]:
             subject, figure, requirement.at, requirement.span, which, requirement.drive, required=True
         )
 
-    if row.domain == "span" or requirement.at is not None:
+    if row.domain != "point" or requirement.at is not None:
         yield asked(None)
         return
     largest = "magnitude" if row.signed else "max"

@@ -7,7 +7,7 @@ goes to zero. Everything is per unit of the drive (design §2.4: amplitudes are 
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Mapping, Sequence
+from collections.abc import Callable, Hashable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any, Protocol
@@ -240,6 +240,8 @@ class Response:
         self.quality = Quality()
         self._plans: dict[int, tuple[System, Plan, float, float]] = {}
         self._rests: dict[tuple[int, Any], _Resting] = {}
+        self.kept: dict[Hashable, Any] = {}
+        """What others worked out from this network and want to have at hand again, by keys of their own."""
 
     # The systems, each made when first needed.
 

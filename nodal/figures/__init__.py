@@ -1,9 +1,9 @@
 """Figures of merit: one number out of the curves of a network.
 
-`evaluate` gives a figure at a frequency or over a span, `extreme` the largest or smallest value of a
-figure over a range. Names, arguments and units stand in `nodal.figure_names`; each figure is one function
-of the files here, entered in `POINT_FIGURES` (a value at any frequency) or `SPAN_FIGURES` (one value of a
-whole span).
+`evaluate` gives a figure at a frequency, over a span or of the edge, `extreme` the largest or smallest value
+of a figure over a range. Names, arguments and units stand in `nodal.figure_names`; each figure is one
+function of the files here, entered in `POINT_FIGURES` (a value at any frequency), `SPAN_FIGURES` (one value
+of a whole span) or `EDGE_FIGURES` (of the response to the network's edge).
 """
 
 from __future__ import annotations
@@ -15,8 +15,8 @@ from typing import Literal
 import numpy as np
 
 from nodal.figure_names import BY_NAME
-from nodal.figures import contact, noise, transfer
-from nodal.figures.base import Asked, Floats, PointFigure, Result, SpanFigure, ask, decibels
+from nodal.figures import contact, edge, noise, transfer
+from nodal.figures.base import Asked, EdgeFigure, Floats, PointFigure, Result, SpanFigure, ask, decibels
 from nodal.figures.search import Crossing, Span, default_span, grid, maximum, minimum
 from nodal.network import FigureCall
 from nodal.response import Response, Unavailable
@@ -40,6 +40,18 @@ SPAN_FIGURES: dict[str, SpanFigure] = {
     "bandwidth": transfer.bandwidth,
     "peaking": transfer.peaking,
     "noise": noise.noise,
+}
+EDGE_FIGURES: dict[str, EdgeFigure] = {
+    "rise": edge.rise,
+    "fall": edge.fall,
+    "overshoot": edge.overshoot,
+    "preshoot": edge.preshoot,
+    "settling": edge.settling,
+    "droop": edge.droop,
+    "propagation_delay": edge.propagation_delay,
+    "response_time": edge.response_time,
+    "partial_response_time": edge.partial_response_time,
+    "response_settling_time": edge.response_settling_time,
 }
 
 Which = Literal["max", "min", "magnitude"]
@@ -78,8 +90,6 @@ def _guarded(
     row = BY_NAME.get(figure.name)
     if row is None:
         return Result(None, "", "unavailable", f'there is no figure "{figure.name}"')
-    if not row.available:
-        return Result(None, "", "unavailable", f"{figure.name} needs an edge response, not computed yet")
     try:
         asked = ask(figure, row, response, drive)
         if drive is None and response.network.default_drive is None and row.driven:
@@ -93,6 +103,8 @@ def _guarded(
 
 def _evaluate(asked: Asked, at: float | None, span: Span | None) -> Result:
     name = asked.row.name
+    if name in EDGE_FIGURES:
+        return _of_the_edge(asked, at, span)
     if name in SPAN_FIGURES:
         if at is not None:
             raise Unavailable(f"{name} is of a span of frequencies, not of one: say from where to where")
@@ -107,6 +119,8 @@ def _evaluate(asked: Asked, at: float | None, span: Span | None) -> Result:
 
 def _extreme(asked: Asked, which: Which, span: Span | None) -> Result:
     name = asked.row.name
+    if name in EDGE_FIGURES:
+        return _of_the_edge(asked, None, span)
     span = span or default_span(asked.response.network)
     if name in SPAN_FIGURES:
         return SPAN_FIGURES[name](asked, span)
@@ -123,6 +137,13 @@ def _extreme(asked: Asked, which: Which, span: Span | None) -> Result:
     if value == undefined and np.isnan(POINT_FIGURES[name](asked, np.array([where]))[0]):
         raise Unavailable(f"{asked.text or name} has no value from {span[0]:g} Hz to {span[1]:g} Hz")
     return Result(value, frequency=where, decibels=_in_decibels(asked, value))
+
+
+def _of_the_edge(asked: Asked, at: float | None, span: Span | None) -> Result:
+    name = asked.row.name
+    if at is not None or span is not None:
+        raise Unavailable(f"{name} belongs to the edge, not to frequencies")
+    return EDGE_FIGURES[name](asked)
 
 
 def _in_decibels(asked: Asked, value: float) -> float | None:

@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
-from nodal.figure_names import FigureName, unit_of
+from nodal.figure_names import ORIGINS, ArgumentKind, FigureName, unit_of
 from nodal.figures.search import Crossing, Span
 from nodal.network import FigureCall
 from nodal.response import Response, Unavailable
@@ -24,8 +24,8 @@ class Result:
 
     "not-reached": the span ends before the value; `bound` says what it proves, (">=", 1e9).
     "unavailable": there is no such value here; `message` says why in a sentence. A value may be infinite.
-    `frequency` (Hz) is where an extreme stands; `decibels` the same as `value` in dB where that makes
-    sense; `crossings` all of a bandwidth's.
+    `frequency` (Hz) or `instant` (s) is where an extreme stands; `decibels` the same as `value` in dB where
+    that makes sense; `crossings` all of a bandwidth's.
     """
 
     value: float | None
@@ -35,6 +35,7 @@ class Result:
     bound: tuple[Literal["<=", ">="], float] | None = None
     frequency: float | None = None
     decibels: float | None = None
+    instant: float | None = None
     crossings: tuple[Crossing, ...] = ()
 
 
@@ -51,6 +52,11 @@ class Asked:
     drives: tuple[str, ...] = ()
     reference: float | None = None
     """Hz; None where not given."""
+    band: float | None = None
+    """Part of the amplitude."""
+    origin: str = ORIGINS[0]
+    epoch: float | None = None
+    """s; None where not given."""
     text: str = ""
 
     @property
@@ -102,6 +108,9 @@ PointFigure = Callable[[Asked, Floats], Floats]
 
 SpanFigure = Callable[[Asked, Span], Result]
 
+EdgeFigure = Callable[[Asked], Result]
+"""Of the network's own edge."""
+
 
 def ask(call: FigureCall, row: FigureName, response: Response, drive: str | None) -> Asked:
     """Tell the arguments of `call` apart; `Unavailable` names what does not exist or does not fit."""
@@ -116,7 +125,7 @@ def ask(call: FigureCall, row: FigureName, response: Response, drive: str | None
     fields: dict[str, str | float] = {}
     drives: list[str] = []
     given = call.arguments[len(row.required):]
-    kinds = [*row.required, *("frequency" if isinstance(a, float | int) else "contact" for a in given)]
+    kinds = [*row.required, *(_kind(row, argument, known["contact"]) for argument in given)]
     for position, (kind, argument) in enumerate(zip(kinds, call.arguments, strict=True)):
         if position >= len(row.required) and (kind not in row.optional or kind in fields):
             raise Unavailable(f"{row.name} does not take {argument!r} here")
@@ -126,12 +135,24 @@ def ask(call: FigureCall, row: FigureName, response: Response, drive: str | None
             drives.append(str(argument))
         else:
             fields[kind] = argument
-    reference = fields.get("frequency")
+
+    def number(kind: str) -> float | None:
+        return float(fields[kind]) if kind in fields else None
+
     return Asked(
         row, response, drive, str(fields.get("reading", "")),
         str(fields["contact"]) if "contact" in fields else None,
-        tuple(drives), None if reference is None else float(reference), call.text,
+        tuple(drives), number("frequency"), number("band"), str(fields.get("origin", ORIGINS[0])),
+        number("epoch"), call.text,
     )
+
+
+def _kind(row: FigureName, argument: str | float, contacts: Sequence[str]) -> ArgumentKind:
+    """What an argument after the required ones is, by its form."""
+    if isinstance(argument, float | int):
+        return "epoch" if "epoch" in row.optional else "frequency"
+    origin = "origin" in row.optional and argument in ORIGINS and argument not in contacts
+    return "origin" if origin else "contact"
 
 
 def decibels(ratio: Floats | float) -> Floats:

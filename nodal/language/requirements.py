@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 
-from nodal.figure_names import BY_NAME, ArgumentKind, FigureName, unit_of
+from nodal.figure_names import BY_NAME, ORIGINS, ArgumentKind, FigureName, unit_of
 from nodal.language import syntax, units
 from nodal.language.evaluate import SPREAD, Evaluator
 from nodal.language.frame import Frame
@@ -15,7 +15,7 @@ _DRIVELESS = ("impedance", "resistance", "capacitance", "noise", "noise_density"
 """Figures that no drive is chosen for: of the chain alone, of noise, or with drives of their own."""
 _ARTICLES: dict[ArgumentKind, str] = {
     "reading": "a reading", "contact": "a contact", "drive": "a drive", "frequency": "a frequency",
-    "band": "a band",
+    "band": "a band", "origin": f"an origin ({' or '.join(ORIGINS)})", "epoch": "an epoch",
 }  # fmt: skip
 
 
@@ -87,12 +87,15 @@ def form_of(row: FigureName) -> str:
 def _kind(
     expression: syntax.Expression, kinds: list[ArgumentKind], network: Network, frame: Frame
 ) -> ArgumentKind:
-    """A contact is told from a frequency by being a name that no value bears."""
+    """A contact or an origin is told from a frequency or an epoch by being a name that no value bears."""
+    quantity: ArgumentKind = "epoch" if "epoch" in kinds else "frequency"
     if not isinstance(expression, syntax.Name):
-        return "frequency"
+        return quantity
     if any(contact.name == expression.text for contact in network.contacts):
         return "contact"
-    return "frequency" if "frequency" in kinds and expression.text in set(frame.scope.names()) else "contact"
+    if "origin" in kinds and expression.text in ORIGINS:
+        return "origin"
+    return quantity if quantity in kinds and expression.text in set(frame.scope.names()) else "contact"
 
 
 def _argument(
@@ -107,7 +110,11 @@ def _argument(
     if kind == "band":
         band = evaluator.positive(expression, frame.scope, units.NONE, "a band").nominal
         return band, f"{100 * band:.12g} %"
+    if kind == "epoch":
+        seconds = evaluator.positive(expression, frame.scope, units.SECOND, "an epoch").nominal
+        return seconds, units.show(seconds, "s", 12)
     known = {
+        "origin": list(ORIGINS),
         "reading": [reading.name for reading in network.readings],
         "contact": [contact.name for contact in network.contacts],
         "drive": [drive.name for drive in network.drives],
