@@ -16,6 +16,7 @@ from pathlib import Path
 
 import pytest
 from click.testing import CliRunner
+
 from nodal.cli import main
 
 CIRCUITS = sorted((Path(__file__).parents[2] / "circuits").glob("*.nodal"))
@@ -225,9 +226,6 @@ def test_mutations_do_change_the_text() -> None:
 def test_mutations(part: int, tmp_path: Path) -> None:
     shutil.copytree(CIRCUITS[0].parent / "shared", tmp_path / "shared")  # what the circuits include
     failures = []
-    for folder in CIRCUITS[0].parent.iterdir():  # what the circuits include
-        if folder.is_dir():
-            shutil.copytree(folder, tmp_path / folder.name)
     for number in range(part, COUNT, PARTS):
         path = tmp_path / f"mutated{number}.nodal"
         path.write_bytes(mutated(number).encode("utf-8"))
