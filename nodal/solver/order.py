@@ -84,8 +84,10 @@ def eliminate(
     What cancels to below `flush` of itself counts as zero. Raises NoPivot. Work grows with the entries that
     take part, not with `size` squared.
     """
-    values = list(values)
-    sizes: dict[int, list[Any]] = {}  # magnitudes of slots that were looked at
+    # Sample by sample: numbers and magnitudes of every slot.
+    samples = [list(numbers) for numbers in zip(*values, strict=True)]
+    sizes = [[abs(v) for v in numbers] for numbers in samples]
+    slots = len(values)
     by_row: list[dict[int, int]] = [{} for _ in range(size)]
     by_col: list[dict[int, int]] = [{} for _ in range(size)]
     for slot, (i, j) in enumerate(zip(rows, cols, strict=True)):
@@ -104,10 +106,10 @@ def eliminate(
             pivot, row, col, starts[0], lower, lower_row, starts[1], upper, upper_col, starts[2],
             target, left, top,
         )]
-        return Order(size, len(values), *arrays)
+        return Order(size, slots, *arrays)
 
     for _ in range(size):
-        found = _choose(heap, lines, open_lines, values, sizes)
+        found = _choose(heap, lines, open_lines, sizes)
         if found is None:
             raise NoPivot(order(), *([k for k in range(size) if open_lines[kind][k]] for kind in (0, 1)))
         p, q = found
@@ -117,46 +119,63 @@ def eliminate(
         row.append(p)
         col.append(q)
         below, right = by_col[q], by_row[p]
-        divisors = values[slot]
         for j, top_slot in right.items():
             upper.append(top_slot)
             upper_col.append(j)
             del by_col[j][p]
+        before = slots
+        targets: list[int] = []
         for i, left_slot in below.items():
             lower.append(left_slot)
             lower_row.append(i)
             line = by_row[i]
             del line[q]
-            # A sample at which the pivot is zero drops out: the run there finds out and plans again.
-            factors = [v / d if d else v * 0 for v, d in zip(values[left_slot], divisors, strict=True)]
             for j, top_slot in right.items():
                 at = line.get(j)
                 if at is None:
-                    line[j] = by_col[j][i] = at = len(values)
-                    values.append([-f * u for f, u in zip(factors, values[top_slot], strict=True)])
-                else:
-                    old = values[at]
-                    new = [v - f * u for v, f, u in zip(old, factors, values[top_slot], strict=True)]
-                    if flush:
-                        new = [n if abs(n) > flush * abs(v) else n * 0 for n, v in zip(new, old, strict=True)]
-                    values[at] = new
-                    sizes.pop(at, None)
-                target.append(at)
+                    line[j] = by_col[j][i] = at = slots
+                    slots += 1
+                targets.append(at)
                 left.append(left_slot)
                 top.append(top_slot)
+        target += targets
+        for numbers, magnitudes in zip(samples, sizes, strict=True):
+            numbers += [0] * (slots - before)
+            magnitudes += [0] * (slots - before)
+            # A sample at which the pivot is zero drops out: the run there finds out and plans again.
+            if numbers[slot]:
+                _update(numbers, magnitudes, slot, list(below.values()), list(right.values()), targets, flush)
         open_lines[0][p] = open_lines[1][q] = False
-        for i in below:
-            heapq.heappush(heap, (len(by_row[i]), 0, i))
-        for j in right:
-            heapq.heappush(heap, (len(by_col[j]), 1, j))
+        for kind, touched in ((0, below), (1, right)):
+            for k in touched:
+                if lines[kind][k]:
+                    heapq.heappush(heap, (len(lines[kind][k]), kind, k))
         for start, array in zip(starts, (lower, upper, target), strict=True):
             start.append(len(array))
     return order()
 
 
+def _update(
+    numbers: list[Any], magnitudes: list[Any], pivot: int, lower: list[int], upper: list[int],
+    targets: list[int], flush: Any,
+) -> None:
+    """One step at one sample; `targets` row by row."""
+    divisor = numbers[pivot]
+    factors = [numbers[slot] / divisor for slot in lower]
+    tops = [numbers[slot] for slot in upper]
+    changes = [factor * top for factor in factors for top in tops]
+    for at, change in zip(targets, changes, strict=True):
+        new = numbers[at] - change
+        size = abs(new)
+        if flush and size <= flush * magnitudes[at]:
+            new, size = new * 0, size * 0
+        numbers[at] = new
+        magnitudes[at] = size
+
+
 def _choose(
     heap: list[tuple[int, int, int]], lines: tuple[list[dict[int, int]], list[dict[int, int]]],
-    open_lines: tuple[list[bool], list[bool]], values: Sequence[list[Any]], sizes: dict[int, list[Any]],
+    open_lines: tuple[list[bool], list[bool]], sizes: list[list[Any]],
 ) -> tuple[int, int] | None:
     """The next pivot (row, col): the cheapest acceptable, else the largest; None where all is zero."""
     best: tuple[int, float, int, int] | None = None
@@ -172,23 +191,29 @@ def _choose(
             break
         looked_at.append(item)
         line = lines[kind][k]
-        magnitudes = []
-        for slot in line.values():
-            if slot not in sizes:
-                sizes[slot] = [abs(v) for v in values[slot]]
-            magnitudes.append(sizes[slot])
-        peaks = [max(at_sample) for at_sample in zip(*magnitudes, strict=True)]
-        for other, at_samples in zip(line, magnitudes, strict=True):
-            share = min([m / p if p else 0.0 for m, p in zip(at_samples, peaks, strict=True)])
+        for other, share in zip(line, _shares(list(line.values()), sizes), strict=True):
             i, j = (k, other) if kind == 0 else (other, k)
             if share >= THRESHOLD:
                 cost = (len(lines[0][i]) - 1) * (len(lines[1][j]) - 1)
                 if best is None or (cost, -share) < best[:2]:
                     best = (cost, -share, i, j)
-            elif any(at_samples) and (fallback is None or share > fallback[0]):
+            elif (fallback is None or share > fallback[0]) and any(
+                at_sample[line[other]] for at_sample in sizes
+            ):
                 fallback = (share, i, j)
     for item in looked_at:
         heapq.heappush(heap, item)
     if best is not None:
         return best[2], best[3]
     return fallback[1:] if fallback is not None else None
+
+
+def _shares(slots: list[int], sizes: list[list[Any]]) -> list[Any]:
+    """Of each slot of a line: its part of the line's largest, at the sample where that is least."""
+    result: list[Any] = []
+    for at_sample in sizes:
+        magnitudes = [at_sample[slot] for slot in slots]
+        peak = max(magnitudes)
+        parts = [m / peak for m in magnitudes] if peak else [0.0] * len(slots)
+        result = list(map(min, result, parts)) if result else parts
+    return result

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -20,45 +21,110 @@ Weights = tuple[tuple[int, float], ...]
 Shares = list[tuple[int, int, float]]
 """(row or entry, term, weight)"""
 
+_ALL = 0b1111111
+
 _EPSILON = float(np.finfo(float).eps)
 
 
 class Pattern:
     """Index arrays of one System, made once.
 
-    `rows`, `cols`: position of every matrix entry (entries that cancel in the sum are kept). `taking`
-    (n_terms x size) forms cols·x of every term: a branch's current comes from the difference of its node
-    voltages.
+    `rows`, `cols`: position of every matrix entry (entries that cancel in the sum are kept).
     """
 
     def __init__(self, system: System) -> None:
         self.system = system
-        self.size = system.size
-        self.term_rows: list[Weights] = [_merged(term.rows, system.size) for term in system.terms]
-        self.term_cols: list[Weights] = [_merged(term.cols, system.size) for term in system.terms]
-        index: dict[tuple[int, int], int] = {}
-        self.shares: Shares = []
-        """(entry, term, weight): entry = sum of weight * coefficient of term."""
+        size = self.size = system.size
+        self.term_rows: list[Weights] = [_merged(term.rows, size) for term in system.terms]
+        self.term_cols: list[Weights] = [_merged(term.cols, size) for term in system.terms]
+        index: dict[int, int] = {}
+        entries: list[int] = []
+        terms: list[int] = []
+        weights: list[float] = []
         for number, (rows, cols) in enumerate(zip(self.term_rows, self.term_cols, strict=True)):
             for i, row_weight in rows:
                 for j, col_weight in cols:
-                    entry = index.setdefault((i, j), len(index))
-                    self.shares.append((entry, number, row_weight * col_weight))
-        positions = np.array(list(index), dtype=np.intp).reshape(-1, 2)
-        self.rows: Ints = positions[:, 0].copy()
-        self.cols: Ints = positions[:, 1].copy()
+                    entries.append(index.setdefault(i * size + j, len(index)))
+                    terms.append(number)
+                    weights.append(row_weight * col_weight)
+        positions = np.array(list(index), dtype=np.intp)
+        self.rows: Ints = positions // max(size, 1)
+        self.cols: Ints = positions - self.rows * size
         self.g: Floats = np.array([t.g for t in system.terms], dtype=float)
         self.c: Floats = np.array([t.c for t in system.terms], dtype=float)
         if not (np.isfinite(self.g).all() and np.isfinite(self.c).all()):
             raise ValueError("a coefficient of a term is not finite")
         self.functions = {k: t.f for k, t in enumerate(system.terms) if t.f is not None}
         """Output of the system's functions by the term that has one."""
-        entry_of, term_of, weight_of = _columns(self.shares)
+        self.entry_of, self.term_of = entries, terms
+        """Entry and term of every product of a row's and a column's weight, in the order of the terms."""
+        entry_of, term_of = np.array(entries, dtype=np.intp), np.array(terms, dtype=np.intp)
+        weight_of = np.array(weights, dtype=float)
         self.entry_g = np.bincount(entry_of, weight_of * self.g[term_of], minlength=len(index))
         self.entry_c = np.bincount(entry_of, weight_of * self.c[term_of], minlength=len(index))
-        self.function_shares = [x for x in self.shares if x[1] in self.functions] if self.functions else []
+        self.function_shares: Shares = [
+            share for share in zip(entries, terms, weights, strict=True) if share[1] in self.functions
+        ] if self.functions else []
+
+    @cached_property
+    def taking(self) -> Any:
+        """(n_terms x size), forms cols·x of every term: a branch's current comes from the difference of its
+        node voltages.
+        """
         taken = [(t, k, w) for t, weights in enumerate(self.term_cols) for k, w in weights]
-        self.taking = compressed(*_columns(taken), (len(self.g), self.size))
+        return compressed(*_columns(taken), (len(self.g), self.size))
+
+    @cached_property
+    def differences(self) -> tuple[list[Weights], list[int]]:
+        """What terms take that is no single unknown, each once; and by term, where what it takes stands in
+        the unknowns followed by those."""
+        places: dict[Weights, int] = {}
+        at = [
+            weights[0][0] if len(weights) == 1 and weights[0][1] == 1.0
+            else places.setdefault(weights, self.size + len(places))
+            for weights in self.term_cols
+        ]
+        return list(places), at
+
+    @cached_property
+    def given(self) -> tuple[Ints, Ints, Floats]:
+        """(equation, term, weight) of everything that terms give to equations, in the order of the terms."""
+        triples = [(k, t, w) for t, weights in enumerate(self.term_rows) for k, w in weights]
+        equations, terms, weights = zip(*triples, strict=True) if triples else ((), (), ())
+        return np.array(equations, np.intp), np.array(terms, np.intp), np.array(weights, float)
+
+    @cached_property
+    def spoils(self) -> Ints:
+        """A number from 0 to 6 for everything in `given`, see `Giving`.
+
+        No two of one equation are alike (while there are seven at most): alike, they would only scale it. Nor
+        are the two of one term: alike, they would only change the value of its part, and what it carries
+        through a floating piece of network would still balance.
+        """
+        equations, terms, _ = self.given
+        taken = [0] * self.size
+        result: list[int] = []
+        last, met = -1, 0
+        for equation, term in zip(equations.tolist(), terms.tolist(), strict=True):
+            if term != last:
+                last, met = term, 0
+            avoided = taken[equation] | met
+            if avoided == _ALL:
+                avoided = met if met != _ALL else 0
+            number = (term * 0x9E3779B1 >> 12) % 7  # without rhyme: multiplicative hashing, Knuth 1973
+            while avoided >> number & 1:
+                number = (number + 3) % 7
+            taken[equation] |= 1 << number
+            met |= 1 << number
+            result.append(number)
+        return np.array(result, dtype=np.intp)
+
+    @cached_property
+    def constants(self) -> dict[int, float]:
+        """Entries that do not depend on s."""
+        varying = {entry for entry, _, _ in self.function_shares}
+        numbers = self.entry_g.tolist()
+        return {k: numbers[k] for k in np.flatnonzero(self.entry_c == 0).tolist() if k not in varying}
 
     def shares_by(self, place: Ints) -> Shares:
         """(place[equation], term, weight) for everything that terms give to equations."""
@@ -83,13 +149,35 @@ class Pattern:
     def matrix(self, s: Complexes, values: dict[int, Any], out: Complexes | None = None) -> Complexes:
         """Matrix entries, (n_entries, n_points), from s and the `function_values` there."""
         entries: Complexes = np.empty((len(self.rows), len(s)), dtype=complex) if out is None else out
-        entries.real = self.entry_g[:, None]
-        if s.real.any():
-            entries.real += np.multiply.outer(self.entry_c, s.real)
-        np.multiply.outer(self.entry_c, s.imag, out=entries.imag)
+        self._linear(np.stack((self.entry_g, self.entry_c), axis=1), s, entries)
         for entry, term, weight in self.function_shares:
             entries[entry] += values[term] * weight
         return entries
+
+    def varying(self, s: Complexes, values: dict[int, Any], out: Complexes) -> None:
+        """`matrix` without the rows of `constants`, in the order of `varying_entries`."""
+        entries, coefficients, shares = self._varying
+        self._linear(coefficients, s, out[:len(entries)])
+        for row, term, weight in shares:
+            out[row] += values[term] * weight
+
+    @property
+    def varying_entries(self) -> list[int]:
+        return self._varying[0]
+
+    @cached_property
+    def _varying(self) -> tuple[list[int], Floats, Shares]:
+        entries = [k for k in range(len(self.rows)) if k not in self.constants]
+        row_of = {entry: row for row, entry in enumerate(entries)}
+        shares = [(row_of[entry], term, weight) for entry, term, weight in self.function_shares]
+        return entries, np.stack((self.entry_g[entries], self.entry_c[entries]), axis=1), shares
+
+    @staticmethod
+    def _linear(coefficients: Floats, s: Complexes, out: Complexes) -> None:
+        """g + s c for every row (g, c)."""
+        basis = np.ones((2, len(s)), dtype=complex)
+        basis[1] = s
+        np.matmul(coefficients, basis.view(float), out=out.view(float))
 
     def function_slopes(self, s: Complexes) -> dict[int, Any]:
         """d/ds of `function_values`."""
@@ -129,15 +217,15 @@ class Pattern:
             for _, row_weight in rows
             for _, col_weight in cols
         )
-        # One weight at a time: the product in `shares` is rounded.
-        for (entry, term, _), (row_weight, col_weight) in zip(self.shares, products, strict=True):
+        # One weight at a time: their product in doubles is rounded.
+        for entry, term, (row_weight, col_weight) in zip(self.entry_of, self.term_of, products, strict=True):
             result[entry] = result[entry] + coefficients[term] * row_weight * col_weight
         return result
 
 
 class Giving:
-    """A x from every term's drop (cols·x), one product by s an equation, each summand off by up to three
-    roundings.
+    """What equations lack, b - A x, from every term's drop (cols·x), one product by s an equation, each
+    summand off by up to three roundings.
 
     They are off on purpose, each by its own number. Currents that cancel in an equation leave a remainder
     that is rounded, and sums like to come out as zero just where the remainder decides about the solution: a
@@ -146,28 +234,55 @@ class Giving:
     the spoilt system.
     """
 
-    def __init__(self, pattern: Pattern, shares: Shares, stride: int) -> None:
-        shape = pattern.size, len(pattern.g)
-        rows, terms, weights = _columns(shares)
-        start = np.random.default_rng(stride).integers(0, 7, len(pattern.g))
-        offset = (start[terms] + stride * _occurrence(terms)) % 7 - 3
-        weights = weights * (1 + offset * _EPSILON)
-        self._constant = compressed(rows, terms, weights * pattern.g[terms], shape)
-        self._linear = compressed(rows, terms, weights * pattern.c[terms], shape)
+    def __init__(self, pattern: Pattern, place: Ints, stride: int) -> None:
+        equations, terms, weights = pattern.given
+        rows = place[equations]
+        weights = weights * (-1 - (stride * pattern.spoils % 7 - 3) * _EPSILON)
+        differences, at = pattern.differences
+        columns = np.array(at, dtype=np.intp)[terms]
+        constant, linear = pattern.g[terms], pattern.c[terms]
+        # Rows of the product: what is constant by equation, then what goes with s where there is any.
+        self._size = pattern.size
+        followed, second = np.unique(rows[linear != 0], return_inverse=True)
+        self._followed = followed.tolist()
+        linear_rows = np.zeros_like(rows)
+        linear_rows[linear != 0] = self._size + second
+        self._matrix = compressed(
+            np.concatenate((rows, linear_rows)), np.concatenate((columns, columns)),
+            np.concatenate((weights * constant, weights * linear)),
+            (self._size + len(followed), self._size + len(differences)),
+        )
         self._function = [
-            (row, term, weight)
-            for row, term, weight in zip(rows.tolist(), terms.tolist(), weights.tolist(), strict=True)
-            if term in pattern.functions
+            (row, column, term, weight)
+            for row, column, term, weight in zip(
+                rows.tolist(), columns.tolist(), terms.tolist(), weights.tolist(), strict=True
+            ) if term in pattern.functions
         ] if pattern.functions else []
 
-    def current(self, drops: Complexes, s: Complexes, values: dict[int, Any]) -> Complexes:
-        """A x, (size, n_points)."""
-        result = product(self._linear, drops)
-        result *= s
-        result += product(self._constant, drops)
-        for row, term, weight in self._function:
-            result[row] += drops[term] * values[term] * weight
-        return result
+    def remainder(self, drops: Complexes, s: Complexes, values: dict[int, Any]) -> Complexes:
+        """-A x, (size, n_points), from the unknowns followed by `Pattern.differences` of them."""
+        total = product(self._matrix, drops)
+        for row, followed in enumerate(self._followed, self._size):
+            at, with_s = total[followed], total[row]
+            np.multiply(with_s, s, with_s)
+            np.add(at, with_s, at)
+        for row, column, term, weight in self._function:
+            total[row] += drops[column] * values[term] * weight
+        return total[:self._size]
+
+
+def take_differences(differences: list[Weights], drops: Sequence[Complexes]) -> None:
+    """Fill what stands behind the unknowns in `drops`, see `Pattern.differences`."""
+    behind = len(drops) - len(differences)
+    for at, weights in zip(drops[behind:], differences, strict=True):
+        if len(weights) == 2 and weights[0][1] == -weights[1][1] == 1.0:
+            np.subtract(drops[weights[0][0]], drops[weights[1][0]], at)
+        elif len(weights) == 2 and weights[1][1] == -weights[0][1] == 1.0:
+            np.subtract(drops[weights[1][0]], drops[weights[0][0]], at)
+        else:
+            at[:] = 0
+            for unknown, weight in weights:
+                at += drops[unknown] * weight
 
 
 class Balance:
@@ -221,6 +336,10 @@ def _evaluate(system: System, s: Any, arithmetic: Arithmetic) -> list[Any]:
 def _merged(weights: Iterable[tuple[int, float]], size: int) -> Weights:
     """One weight per index, those that cancel left out."""
     pairs = tuple(weights)
+    if len(pairs) == 1 or (len(pairs) == 2 and pairs[0][0] != pairs[1][0]):
+        (first, weight), (last, other) = pairs[0], pairs[-1]
+        if weight and other and 0 <= first < size and 0 <= last < size:
+            return pairs
     total: dict[int, float] = {}
     for index, weight in pairs:
         if not 0 <= index < size:
@@ -243,10 +362,3 @@ def compressed(rows: Ints, cols: Ints, values: Floats, shape: tuple[int, int]) -
 def _columns(shares: Shares) -> tuple[Ints, Ints, Floats]:
     table = np.array(shares, dtype=float).reshape(-1, 3)
     return table[:, 0].astype(np.intp), table[:, 1].astype(np.intp), table[:, 2]
-
-
-def _occurrence(terms: Ints) -> Ints:
-    """How often each term came before, for terms in ascending order."""
-    first = np.searchsorted(terms, terms)
-    result: Ints = np.arange(len(terms)) - first
-    return result

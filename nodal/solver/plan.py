@@ -52,17 +52,31 @@ class Plan:
 
     @cached_property
     def kernel(self) -> Kernel:
+        """For any arithmetic: every slot has an array."""
         return Kernel(self.order)
+
+    @cached_property
+    def folded(self) -> Kernel:
+        """For blocks of doubles: what does not depend on s is worked out beforehand."""
+        fill = dict.fromkeys(range(len(self.pattern.rows), self.order.slots), 0.0)
+        return Kernel(self.order, self.pattern.constants | fill)
+
+    @cached_property
+    def array_slots(self) -> list[int]:
+        """Slots that `folded` needs arrays for, those of `Pattern.varying` first."""
+        varying, constant = self.pattern.varying_entries, self.folded.constant
+        known = {*varying, *constant}
+        return varying + [slot for slot in range(self.order.slots) if slot not in known]
 
     @cached_property
     def giving(self) -> Giving:
         """Sums for the first correction, equations where the kernel keeps right-hand sides."""
-        return Giving(self.pattern, self.pattern.shares_by(self.order.place), 3)
+        return Giving(self.pattern, self.order.place, 3)
 
     @cached_property
     def giving_again(self) -> Giving:
         """Sums for the second correction."""
-        return Giving(self.pattern, self.pattern.shares_by(self.order.place), 2)
+        return Giving(self.pattern, self.order.place, 2)
 
     @cached_property
     def balance(self) -> Balance:

@@ -18,7 +18,7 @@ from numpy.typing import ArrayLike, NDArray
 from nodal.solver.arithmetic import MpArithmetic
 from nodal.solver.exact import Exact
 from nodal.solver.matrix import System
-from nodal.solver.pattern import Complexes, Floats, Giving, product
+from nodal.solver.pattern import Complexes, Floats, product, take_differences
 from nodal.solver.plan import Plan, Singular, exact_order, generic, make_plan
 
 Source = Mapping[int, Any]
@@ -28,6 +28,9 @@ Output = Mapping[int, float]
 
 TOLERANCE = 1e-11
 """Largest relative correction of an output that is taken as settled."""
+
+_ROUNDING = 16 * float(np.finfo(float).eps)
+"""A correction below this is noise."""
 
 # Once an allocation of this size was freed, the C library serves blocks from a heap that it keeps, not from
 # pages that must be cleared anew each time; the pages of this one are never touched.
@@ -156,7 +159,7 @@ class _Run:
 
     def _pass(self, plan: Plan, points: NDArray[np.intp], careful: bool) -> None:
         order, pattern = plan.order, plan.pattern
-        rows = order.slots + len(pattern.g) + 4 * order.size
+        rows = len(plan.array_slots) + len(pattern.differences[0]) + 4 * order.size
         per_block = int(np.clip(_BLOCK_BYTES // (16 * rows), *_BLOCK_POINTS))
         blocks = -(-len(points) // per_block)
         scratch = _Scratch()
@@ -279,13 +282,13 @@ class _Block:
         self.plan, self.s = plan, s
         self.functions = plan.pattern.function_values(s)
         self.scratch = scratch
-        slots = scratch.take("slots", plan.order.slots, len(s))
-        entries = len(plan.pattern.rows)
-        plan.pattern.matrix(s, self.functions, slots[:entries])
-        slots[entries:] = 0
-        self.w = list(slots)
+        slots = scratch.take("slots", len(plan.array_slots), len(s))
+        plan.pattern.varying(s, self.functions, slots)
+        self.w: list[Any] = [None] * plan.order.slots
+        for slot, array in zip(plan.array_slots, slots, strict=True):
+            self.w[slot] = array
         self.spare = scratch.take("spare", 1, len(s))[0]
-        plan.kernel.factor(self.w, self.spare)
+        plan.folded.factor(self.w, self.spare)
 
     def quick(self, source: Source, outputs: Sequence[Output]) -> tuple[Complexes, Floats, Floats]:
         """One solution and one correction, the latter for the outputs only, one more where that does not
@@ -293,35 +296,48 @@ class _Block:
 
         Returns (values, error, error of the first step).
         """
-        kernel, order = self.plan.kernel, self.plan.order
+        kernel, order = self.plan.folded, self.plan.order
         places = {int(order.place[k]): v for k, v in source.items()}
         wanted = frozenset(k for o in outputs for k in o)
-        x = self.scratch.take("x", order.size, len(self.s))
+        differences = self.plan.pattern.differences[0]
+        drops = self.scratch.take("x", order.size + len(differences), len(self.s))
+        x = drops[:order.size]
         x[:] = 0
         for place, value in places.items():
             x[place] = value
-        kernel.solve(self.w, list(x), self.spare, kernel.forward_from(places))
-        first = self._correction(self.plan.giving, places, product(self.plan.pattern.taking, x))
-        kernel.solve(self.w, list(first), self.spare, backward=kernel.backward_to(wanted))
-        change = self._outputs(outputs, first)
-        values = self._outputs(outputs, x) + change
-        error = _ratio(change, values, self._blur(outputs, first))
-        if not (error > TOLERANCE).any():
-            return values, error, error
-        kernel.solve(self.w, list(first), self.spare, [], kernel.backward_rest(wanted))
-        second = self._correction(self.plan.giving_again, places, self._drops(x, first))
-        kernel.solve(self.w, list(second), self.spare, backward=kernel.backward_to(wanted))
-        change = self._outputs(outputs, second)
-        values = values + change
-        return values, _ratio(change, values, self._blur(outputs, second)), error
-
-    def _correction(self, giving: Giving, places: Mapping[int, Any], drops: Complexes) -> Complexes:
-        """Right-hand side less A x, from every term's drop."""
-        result = giving.current(drops, self.s, self.functions)
-        np.negative(result, result)
+        kernel.solve(self.w, list(x), self.spare, kernel.passes(frozenset(places)))
+        take_differences(differences, list(drops))
+        first = self.plan.giving.remainder(drops, self.s, self.functions)
         for place, value in places.items():
-            result[place] += value
-        return result
+            first[place] += value
+        kernel.solve(self.w, list(first), self.spare, kernel.passes(unknowns=wanted))
+        change = self._outputs(outputs, first)
+        values = self._outputs(outputs, x)
+        error = _ratio(change, values + change, self._blur(outputs, first))
+        # What `Giving` puts off by a few roundings says how far a value may be off, not by how much it is.
+        values += np.where(error > _ROUNDING, change, 0)
+        unsettled = (error > TOLERANCE).any(axis=0)
+        if not unsettled.any():
+            return values, error, error
+        # What lies between the first and the last unsettled point is corrected along: views, no copies.
+        among = np.flatnonzero(unsettled)
+        part = slice(int(among[0]), int(among[-1]) + 1)
+        w, spare = [None if a is None else a[part] for a in self.w], self.spare[part]
+        functions = {k: v if np.ndim(v) == 0 else v[part] for k, v in self.functions.items()}
+        more = self.scratch.take("more", len(drops), len(spare))
+        more[:order.size] = first[:, part]
+        kernel.solve(w, list(more[:order.size]), spare, kernel.passes(unknowns=wanted, rest=True))
+        take_differences(differences, list(more))
+        more += drops[:, part]
+        second = self.plan.giving_again.remainder(more, self.s[part], functions)
+        for place, value in places.items():
+            second[place] += value if np.ndim(value) == 0 else value[part]
+        kernel.solve(w, list(second), spare, kernel.passes(unknowns=wanted))
+        change = self._outputs(outputs, second)
+        values[:, part] += change
+        last = error.copy()
+        last[:, part] = _ratio(change, values[:, part], self._blur(outputs, second))
+        return values, last, error
 
     def right_side(self, source: Source) -> Complexes:
         """Ordered as the kernel wants it."""
@@ -352,7 +368,7 @@ class _Block:
         self, b: Complexes, outputs: Sequence[Output], floor: Floats | None
     ) -> tuple[Complexes, Complexes, Complexes, Complexes, Floats]:
         """(x, small, outputs, their last change, its blur); x and small are apart for small differences."""
-        kernel = self.plan.kernel
+        kernel = self.plan.folded
         coefficients = self.plan.pattern.coefficients(self.s, self.functions)
         x = b.copy()
         kernel.solve(self.w, list(x), self.spare)
@@ -380,8 +396,11 @@ class _Block:
 
     def _blur(self, outputs: Sequence[Output], correction: Complexes) -> Floats:
         """How far the change of an output may be off for the rounding of the corrections it is made of."""
-        sizes = [{k: abs(w) for k, w in o.items()} for o in outputs]
-        return _EPSILON * self._outputs(sizes, np.abs(correction)).real
+        result = np.zeros((len(outputs), correction.shape[1]))
+        for k, output in enumerate(outputs):
+            for unknown, weight in output.items():
+                result[k] += np.abs(correction[unknown]) * abs(_EPSILON * weight)
+        return result
 
     def _outputs(self, outputs: Sequence[Output], x: Complexes) -> Complexes:
         result = np.zeros((len(outputs), x.shape[1]), dtype=complex)
@@ -392,8 +411,12 @@ class _Block:
 
 
 def _ratio(change: Complexes, values: Any, blur: Floats) -> Floats:
-    """(|change| + blur)/|values|, 0 where zero stayed zero, infinite where it is not a number."""
-    size = np.where((change == 0) & (values == 0), 0.0, np.abs(change) + blur)
+    """(|change| + blur)/|values|, 0 where all is zero, infinite where it is not a number.
+
+    A difference that stayed zero is not all: what it is made of may hide it in its rounding.
+    """
+    size = np.abs(change)
+    size += blur
     result: Floats = np.divide(size, np.abs(values), out=np.zeros(size.shape), where=size != 0)
     result[np.isnan(result)] = np.inf
     return result
