@@ -304,7 +304,7 @@ def compare(options: Options, designs: tuple[str, ...], as_git_driver: bool, exi
     if as_git_driver:
         from nodal.report import diffing
 
-        _for_git(lambda: diffing.driver(designs, _page(options)), options)
+        _for_git(lambda: diffing.driver(designs, lambda: _page(options)), options)
         return
     from nodal import revisions
     from nodal.report import comparison as report

@@ -8,19 +8,21 @@ from __future__ import annotations
 
 import difflib
 import os
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
+from typing import TYPE_CHECKING
 
 from nodal import blobs
 from nodal.blobs import Old
-from nodal.checks import RequirementResult, judge, requirement_items
-from nodal.figure_set import FigureRow, figures
-from nodal.figures import Result
+from nodal.design import Design
 from nodal.language.diagnostics import render, visible
 from nodal.language.units import show
-from nodal.report import comparison
-from nodal.report.terminal import Page
-from nodal.response import Response, Unavailable
-from nodal.studies.compare import compare, floor
+
+if TYPE_CHECKING:
+    from nodal.checks import RequirementResult
+    from nodal.figure_set import FigureRow
+    from nodal.figures import Result
+    from nodal.report.terminal import Page
+    from nodal.response import Response
 
 NOTHING = "/dev/null"
 _RULE = "# ---- "
@@ -44,17 +46,27 @@ def _below(old: Old) -> Iterable[str]:
         yield f"{_RULE}no figures"
         yield from render(old.error.diagnostics, old.error.sources).splitlines()
     elif old.design is not None:
-        responses = {case: old.design.network(case).response for case in old.design.cases}
-        yield f"{_RULE}figures"
-        yield from _figures(responses)
-        items = requirement_items(old.design)
-        if items:
-            yield f"{_RULE}requirements"
-        for item in items:
-            yield _requirement(judge(item, responses[item.case]), several=len(responses) > 1)
+        yield from _judged(old.design)
+
+
+def _judged(design: Design) -> Iterable[str]:
+    """What a design does; the solver is not needed, and not loaded, for files without figures."""
+    from nodal.checks import judge, requirement_items
+
+    responses = {case: design.network(case).response for case in design.cases}
+    yield f"{_RULE}figures"
+    yield from _figures(responses)
+    items = requirement_items(design)
+    if items:
+        yield f"{_RULE}requirements"
+    for item in items:
+        yield _requirement(judge(item, responses[item.case]), several=len(responses) > 1)
 
 
 def _figures(responses: dict[str, Response]) -> Iterable[str]:
+    from nodal.figure_set import figures
+    from nodal.response import Unavailable
+
     try:
         answer = figures(responses, None, None)
     except Unavailable as why:
@@ -68,26 +80,32 @@ def _figures(responses: dict[str, Response]) -> Iterable[str]:
 
 
 def _figure(row: FigureRow, result: Result) -> str:
+    from nodal.report.comparison import FRACTIONS
+    from nodal.studies.compare import floor
+
     if result.value is None:
         bound = "" if result.bound is None else f", {result.bound[0]} {show(result.bound[1], result.unit)}"
         return f"not reached{bound}" if result.reason == "not-reached" else ""
     value = 0.0 if abs(result.value) <= floor(row) else result.value
-    if row.call.name in comparison.FRACTIONS:
+    if row.call.name in FRACTIONS:
         return show(value * 100.0, "%")
     return show(value, result.unit)
 
 
 def _requirement(result: RequirementResult, *, several: bool) -> str:
+    from nodal.report import comparison
+
     found = result.reason if result.found is None else f"found {comparison.found(result)}"
     case = f" [{result.case}]" if several else ""
     return f"{result.name}{case}: {result.status}, {found} ({result.figure} {result.asked})"
 
 
-def driver(arguments: tuple[str, ...], page: Page) -> str:
+def driver(arguments: tuple[str, ...], make_page: Callable[[], Page]) -> str:
     """What git shows for a changed file whose external diff driver this is.
 
     `arguments` are those that git gives: path, old file, object and mode, new file, object and mode, and
-    perhaps a new path with a note; the path alone for a file that is not merged yet.
+    perhaps a new path with a note; the path alone for a file that is not merged yet. `make_page` gives the
+    page to write on.
     """
     if len(arguments) < 7:
         return f"{visible(arguments[0])}: not merged yet\n"
@@ -103,6 +121,10 @@ def driver(arguments: tuple[str, ...], page: Page) -> str:
         errors = [side.error for side in (old, new) if side.error is not None and not side.shared]
         said = "".join(render(error.diagnostics, error.sources) for error in errors)
         return head + said + _difference(old.text, new.text, path, new_path)
+    from nodal.report import comparison
+    from nodal.studies.compare import compare
+
+    page = make_page()
     comparison.text(page, compare(old.design, new.design))
     homes = {side.home.words: None for side in (old, new) if side.home is not None}
     note = f"includes are those of {' and '.join(homes)}\n" if homes else ""
