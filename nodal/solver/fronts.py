@@ -292,6 +292,7 @@ def _lattice(
     arrivals: list[float] = []
     before: list[list[Step]] = []
     waiting: list[tuple[float, int, int]] = [(0.0, -1, -1)]
+    window *= 1 + _SAME  # sums of delays are rounded
     while waiting and waiting[0][0] <= window:
         time = waiting[0][0]
         if arrivals and time - arrivals[-1] <= _SAME * time:
