@@ -34,40 +34,39 @@ class Program:
         self.constants: dict[int, float] = dict(constants or {})
         self._registers = registers
         self._operations: list[tuple[Any, int, int, int]] = []
-        self._viewed: dict[int, int] = {}
+        # What stands behind the registers: a view of the register (int), or a number (float).
+        self._extras: list[int | float] = []
+        self._views: dict[int, int] = {}
         self._numbers: dict[float, int] = {}
 
     def run(self, registers: list[Any]) -> None:
         """Takes the list over: views and numbers are appended."""
-        registers.extend([registers[k].view(float) for k in self._viewed])
-        registers.extend(self._numbers)
-        # Numbers were counted on from below zero, views from the registers.
+        registers.extend([registers[k].view(float) if type(k) is int else k for k in self._extras])
         for operation, first, second, out in self._operations:
             operation(registers[first], registers[second], registers[out])
-
-    def finish(self) -> Program:
-        """Numbers to their places behind the views; to be called once, when all operations are in."""
-        behind = self._registers + len(self._viewed)
-        place = {-1 - k: behind + k for k in range(len(self._numbers))}
-        self._operations = [
-            (f, place.get(a, a), place.get(b, b), out) for f, a, b, out in self._operations
-        ]
-        return self
 
     def _view(self, register: int) -> int:
         """The real view of an array: sums and products with numbers are quicker there."""
         if not self._real:
             return register
-        return self._registers + self._viewed.setdefault(register, len(self._viewed))
+        place = self._views.get(register)
+        if place is None:
+            place = self._views[register] = self._registers + len(self._extras)
+            self._extras.append(register)
+        return place
 
     def _number(self, value: float) -> int:
-        return -1 - self._numbers.setdefault(value, len(self._numbers))
+        place = self._numbers.get(value)
+        if place is None:
+            place = self._numbers[value] = self._registers + len(self._extras)
+            self._extras.append(value)
+        return place
 
     def invert(self, at: int) -> None:
         """at = 1 / at"""
         known = self.constants.get(at)
         if known is None:
-            self._operations.append((np.divide, self._number(1), at, at))
+            self._operations.append((np.divide, self._number(1.0), at, at))
         else:
             self.constants[at] = 1 / known if known else float("inf")
 
@@ -161,7 +160,7 @@ class Kernel:
             self._forward.append((col[k], down))
             self._backward.append((col[k], pivot[k], list(zip(upper[c:d], upper_col[c:d], strict=True))))
         self._backward.reverse()
-        self._factor = program.finish()
+        self._factor = program
         self._plain = constants is None
         self.constant = program.constants
         self._programs: dict[Any, Program] = {}
@@ -224,4 +223,4 @@ class Kernel:
             for slot, other in right:
                 program.subtract_product(y + unknown, slot, y + other)
             program.scale(y + unknown, pivot)
-        return program.finish()
+        return program

@@ -95,6 +95,7 @@ def eliminate(
         by_col[j][i] = slot
     lines = (by_row, by_col)
     open_lines = ([True] * size, [True] * size)
+    known: tuple[dict[int, list[Any]], dict[int, list[Any]]] = ({}, {})
     heap = [(len(line), kind, k) for kind in (0, 1) for k, line in enumerate(lines[kind]) if line]
     heapq.heapify(heap)
     flat: tuple[list[int], ...] = tuple([] for _ in range(10))
@@ -109,7 +110,7 @@ def eliminate(
         return Order(size, slots, *arrays)
 
     for _ in range(size):
-        found = _choose(heap, lines, open_lines, sizes)
+        found = _choose(heap, lines, open_lines, sizes, known)
         if found is None:
             raise NoPivot(order(), *([k for k in range(size) if open_lines[kind][k]] for kind in (0, 1)))
         p, q = found
@@ -139,15 +140,19 @@ def eliminate(
                 left.append(left_slot)
                 top.append(top_slot)
         target += targets
-        for numbers, magnitudes in zip(samples, sizes, strict=True):
-            numbers += [0] * (slots - before)
-            magnitudes += [0] * (slots - before)
-            # A sample at which the pivot is zero drops out: the run there finds out and plans again.
-            if numbers[slot]:
-                _update(numbers, magnitudes, slot, list(below.values()), list(right.values()), targets, flush)
+        if targets:
+            below_slots, right_slots = list(below.values()), list(right.values())
+            fill = [0] * (slots - before)
+            for numbers, magnitudes in zip(samples, sizes, strict=True):
+                numbers += fill
+                magnitudes += fill
+                # A sample at which the pivot is zero drops out: the run there finds out and plans again.
+                if numbers[slot]:
+                    _update(numbers, magnitudes, slot, below_slots, right_slots, targets, flush)
         open_lines[0][p] = open_lines[1][q] = False
         for kind, touched in ((0, below), (1, right)):
             for k in touched:
+                known[kind].pop(k, None)
                 if lines[kind][k]:
                     heapq.heappush(heap, (len(lines[kind][k]), kind, k))
         for start, array in zip(starts, (lower, upper, target), strict=True):
@@ -165,51 +170,62 @@ def _update(
     tops = [numbers[slot] for slot in upper]
     changes = [factor * top for factor in factors for top in tops]
     for at, change in zip(targets, changes, strict=True):
-        new = numbers[at] - change
+        numbers[at] = new = numbers[at] - change
         size = abs(new)
         if flush and size <= flush * magnitudes[at]:
-            new, size = new * 0, size * 0
-        numbers[at] = new
+            numbers[at], size = new * 0, size * 0
         magnitudes[at] = size
 
 
 def _choose(
     heap: list[tuple[int, int, int]], lines: tuple[list[dict[int, int]], list[dict[int, int]]],
     open_lines: tuple[list[bool], list[bool]], sizes: list[list[Any]],
+    known: tuple[dict[int, list[Any]], dict[int, list[Any]]],
 ) -> tuple[int, int] | None:
-    """The next pivot (row, col): the cheapest acceptable, else the largest; None where all is zero."""
-    best: tuple[int, float, int, int] | None = None
-    fallback: tuple[float, int, int] | None = None
+    """The next pivot (row, col): the cheapest acceptable, else the largest; None where all is zero.
+
+    `known`: shares of lines that have not changed since they were looked at.
+    """
+    best: tuple[int, int] | None = None
+    best_cost, best_share = 0, 0.0
+    fallback: tuple[int, int] | None = None
+    fallback_share = 0.0
     looked_at: list[tuple[int, int, int]] = []
     while heap:
-        count, kind, k = item = heapq.heappop(heap)
-        if not open_lines[kind][k] or len(lines[kind][k]) != count or (looked_at and item == looked_at[-1]):
+        item = heapq.heappop(heap)
+        count, kind, k = item
+        line = lines[kind][k]
+        if not open_lines[kind][k] or len(line) != count or (looked_at and item == looked_at[-1]):
             continue
-        enough = len(looked_at) >= _SEARCHED_IN_NEED and fallback is not None and fallback[0] > 0
-        if enough or (best is not None and (best[0] <= (count - 1) ** 2 or len(looked_at) >= _SEARCHED)):
+        enough = len(looked_at) >= _SEARCHED_IN_NEED and fallback_share > 0
+        if enough or (best is not None and (best_cost <= (count - 1) ** 2 or len(looked_at) >= _SEARCHED)):
             heapq.heappush(heap, item)
             break
         looked_at.append(item)
-        line = lines[kind][k]
-        for other, share in zip(line, _shares(list(line.values()), sizes), strict=True):
-            i, j = (k, other) if kind == 0 else (other, k)
+        shares = known[kind].get(k)
+        if shares is None:
+            shares = known[kind][k] = _shares(list(line.values()), sizes)
+        crossing = lines[1 - kind]
+        for other, share in zip(line, shares, strict=True):
             if share >= THRESHOLD:
-                cost = (len(lines[0][i]) - 1) * (len(lines[1][j]) - 1)
-                if best is None or (cost, -share) < best[:2]:
-                    best = (cost, -share, i, j)
-            elif (fallback is None or share > fallback[0]) and any(
+                cost = (count - 1) * (len(crossing[other]) - 1)
+                if best is None or cost < best_cost or (cost == best_cost and share > best_share):
+                    best, best_cost, best_share = (k, other), cost, share
+                    if kind:
+                        best = other, k
+            elif best is None and (fallback is None or share > fallback_share) and any(
                 at_sample[line[other]] for at_sample in sizes
             ):
-                fallback = (share, i, j)
+                fallback, fallback_share = ((other, k) if kind else (k, other)), share
     for item in looked_at:
         heapq.heappush(heap, item)
-    if best is not None:
-        return best[2], best[3]
-    return fallback[1:] if fallback is not None else None
+    return fallback if best is None else best
 
 
 def _shares(slots: list[int], sizes: list[list[Any]]) -> list[Any]:
     """Of each slot of a line: its part of the line's largest, at the sample where that is least."""
+    if len(slots) == 1:
+        return [float(all(at_sample[slots[0]] for at_sample in sizes))]
     result: list[Any] = []
     for at_sample in sizes:
         magnitudes = [at_sample[slot] for slot in slots]

@@ -230,28 +230,27 @@ class Giving:
     They are off on purpose, each by its own number. Currents that cancel in an equation leave a remainder
     that is rounded, and sums like to come out as zero just where the remainder decides about the solution: a
     correction computed from them would say that all is well. With these the correction shows what roundings
-    can do. A second correction needs numbers of another `stride` (2 or 3): with the same it would settle on
-    the spoilt system.
+    can do. A second correction needs other numbers: with the same it would settle on the spoilt system.
     """
 
-    def __init__(self, pattern: Pattern, place: Ints, stride: int) -> None:
+    def __init__(self, pattern: Pattern, place: Ints) -> None:
         equations, terms, weights = pattern.given
         rows = place[equations]
-        weights = weights * (-1 - (stride * pattern.spoils % 7 - 3) * _EPSILON)
         differences, at = pattern.differences
         columns = np.array(at, dtype=np.intp)[terms]
         constant, linear = pattern.g[terms], pattern.c[terms]
         # Rows of the product: what is constant by equation, then what goes with s where there is any.
-        self._size = pattern.size
-        followed, second = np.unique(rows[linear != 0], return_inverse=True)
-        self._followed = followed.tolist()
-        linear_rows = np.zeros_like(rows)
-        linear_rows[linear != 0] = self._size + second
-        self._matrix = compressed(
-            np.concatenate((rows, linear_rows)), np.concatenate((columns, columns)),
-            np.concatenate((weights * constant, weights * linear)),
-            (self._size + len(followed), self._size + len(differences)),
+        self._size = size = pattern.size
+        follows = np.zeros(size, dtype=bool)
+        follows[rows[linear != 0]] = True
+        self._followed = np.flatnonzero(follows).tolist()
+        behind = size - 1 + np.cumsum(follows)
+        self._summands = (
+            np.concatenate((rows, behind[rows])), np.concatenate((columns, columns)),
+            np.concatenate((-weights * constant, -weights * linear)),
+            (size + len(self._followed), size + len(differences)),
         )
+        self._spoils = np.concatenate((pattern.spoils, pattern.spoils))
         self._function = [
             (row, column, term, weight)
             for row, column, term, weight in zip(
@@ -259,9 +258,28 @@ class Giving:
             ) if term in pattern.functions
         ] if pattern.functions else []
 
-    def remainder(self, drops: Complexes, s: Complexes, values: dict[int, Any]) -> Complexes:
-        """-A x, (size, n_points), from the unknowns followed by `Pattern.differences` of them."""
-        total = product(self._matrix, drops)
+    @cached_property
+    def _first(self) -> Any:
+        return self._spoilt(3)
+
+    @cached_property
+    def _second(self) -> Any:
+        return self._spoilt(2)
+
+    def _spoilt(self, stride: int) -> Any:
+        # Numbers that differ do so multiplied by the stride too, by something else for another (modulo 7).
+        rows, columns, values, shape = self._summands
+        values = values * (1 + (stride * self._spoils % 7 - 3) * _EPSILON)
+        return compressed(rows, columns, values, shape)
+
+    def remainder(
+        self, drops: Complexes, s: Complexes, values: dict[int, Any], again: bool = False
+    ) -> Complexes:
+        """-A x, (size, n_points), from the unknowns followed by `Pattern.differences` of them.
+
+        `again`: for the second correction.
+        """
+        total = product(self._second if again else self._first, drops)
         for row, followed in enumerate(self._followed, self._size):
             at, with_s = total[followed], total[row]
             np.multiply(with_s, s, with_s)

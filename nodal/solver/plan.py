@@ -70,13 +70,8 @@ class Plan:
 
     @cached_property
     def giving(self) -> Giving:
-        """Sums for the first correction, equations where the kernel keeps right-hand sides."""
-        return Giving(self.pattern, self.order.place, 3)
-
-    @cached_property
-    def giving_again(self) -> Giving:
-        """Sums for the second correction."""
-        return Giving(self.pattern, self.order.place, 2)
+        """Sums for quick corrections, equations where the kernel keeps right-hand sides."""
+        return Giving(self.pattern, self.order.place)
 
     @cached_property
     def balance(self) -> Balance:

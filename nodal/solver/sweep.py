@@ -29,7 +29,9 @@ Output = Mapping[int, float]
 TOLERANCE = 1e-11
 """Largest relative correction of an output that is taken as settled."""
 
-_ROUNDING = 16 * float(np.finfo(float).eps)
+_EPSILON = float(np.finfo(float).eps)
+
+_ROUNDING = 16 * _EPSILON
 """A correction below this is noise."""
 
 # Once an allocation of this size was freed, the C library serves blocks from a heap that it keeps, not from
@@ -37,10 +39,8 @@ _ROUNDING = 16 * float(np.finfo(float).eps)
 np.empty(1 << 24, dtype=np.uint8)
 
 _STEPS = 8
-_EPSILON = float(np.finfo(float).eps)
-_SAMPLES = 3
-_BLOCK_BYTES = 1 << 22
-_BLOCK_POINTS = (192, 512)
+_BLOCK_BYTES = 1 << 27
+_BLOCK_POINTS = (64, 1024)
 _DIGITS = (50, 100, 200)
 
 
@@ -90,9 +90,9 @@ def plan_for(system: System, s: ArrayLike) -> Plan:
     """A plan from samples spread over the points s."""
     points = _points(s)
     levels = np.log(np.abs(points))
-    wanted = np.linspace(levels.min(), levels.max(), _SAMPLES)
-    nearest = {int(np.argmin(np.abs(levels - level))) for level in wanted}
-    return make_plan(system, points[sorted(nearest)])
+    ends = int(levels.argmin()), int(levels.argmax())
+    middle = int(np.abs(levels - levels[list(ends)].mean()).argmin())
+    return make_plan(system, points[sorted({*ends, middle})])
 
 
 def _points(s: ArrayLike) -> Complexes:
@@ -329,7 +329,7 @@ class _Block:
         kernel.solve(w, list(more[:order.size]), spare, kernel.passes(unknowns=wanted, rest=True))
         take_differences(differences, list(more))
         more += drops[:, part]
-        second = self.plan.giving_again.remainder(more, self.s[part], functions)
+        second = self.plan.giving.remainder(more, self.s[part], functions, again=True)
         for place, value in places.items():
             second[place] += value if np.ndim(value) == 0 else value[part]
         kernel.solve(w, list(second), spare, kernel.passes(unknowns=wanted))
