@@ -1,13 +1,15 @@
 """The response of outputs to a step or a ramp, by whichever method each of them can be trusted with.
 
-Lumped systems go by poles and residues (`realise`), each output accepted only where its transfer function comes out
-again; everything else, and what is not accepted, is inverted (`inversion`) front by front (`fronts`).
+Lumped systems go by poles and residues (`realise`), each output accepted only where its transfer function
+comes out again; everything else, and what is not accepted, is inverted (`inversion`) front by front
+(`fronts`).
 """
 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from itertools import pairwise
 
 import numpy as np
@@ -19,6 +21,7 @@ from nodal.solver.fronts import Fronts
 from nodal.solver.inversion import Inversion, NotInverted, invert, passed, usable_probes
 from nodal.solver.matrix import System
 from nodal.solver.pattern import Complexes, Floats, Pattern
+from nodal.solver.piecewise import Panels, panels
 from nodal.solver.plan import generic
 from nodal.solver.realise import AGREEMENT, NotRealised, Realisation, at_infinity, realise
 from nodal.solver.sweep import Output, solve
@@ -32,8 +35,8 @@ _ULPS = 8 * float(np.finfo(float).eps)
 """How far before an arrival, relatively, a time counts as the arrival: sums of delays are rounded."""
 
 _TRUST = 10.0
-"""A difference of H everywhere on the axis makes at most about this much in a step's response: ∫dω/(πω) over what
-decades there are."""
+"""A difference of H everywhere on the axis makes at most about this much in a step's response: ∫dω/(πω)
+over what decades there are."""
 
 
 _FOLLOWED = (16, 32, 64, 128, 256, 512, 1024)
@@ -43,6 +46,12 @@ _BLUNT = 1e-13
 """Of the largest |H|: what of the rest does not matter."""
 
 _ROUNDING = 1e-13
+
+INTERPOLATED = 3e-13
+"""What the polynomials that stand for what a front brings may leave out, as part of the largest |H|."""
+
+_FEW = 100
+"""Times times fronts that are worked out one by one."""
 
 _RESOLVED = 2000.0
 """Radians that the longest delay may turn through over what is left of the rest."""
@@ -95,14 +104,24 @@ class Edges:
         assert self._inversion is not None
         place = np.searchsorted(self._inverted, outputs)
         result = np.zeros((len(outputs), len(t)))
+        few = len(t) * len(self.arrivals) < _FEW and "_shapes" not in self.__dict__
+        shapes = self._inversion.edge if few else self._shapes
         for number, start in enumerate(self.arrivals):
             local = t - start
             local = np.where(np.abs(local) <= _ULPS * start, 0.0, local)
             on = local >= 0
             if on.any():
                 rows = number * len(self._inverted) + place
-                result[:, on] += self._inversion.edge(local[on], rows)
+                result[:, on] += shapes(local[on], rows)
         return result
+
+    @cached_property
+    def _shapes(self) -> Panels:
+        """What each front brings, from its arrival on: the integrals once, for all times and fronts."""
+        assert self._inversion is not None
+        measure, ramp = self._inversion.largest, self.ramp
+        bends = [ramp] if 0 < ramp < self.window else []
+        return panels(self._inversion.edge, [0.0, *bends, self.window], lambda _: INTERPOLATED * measure)
 
 
 def respond(
@@ -111,7 +130,8 @@ def respond(
 ) -> Edges:
     """Prepare the responses of outputs of A(s) x = source to an edge.
 
-    `frequencies` (Hz) are where a realisation is checked besides its own grid. Raises Impulse, NotInverted (no response that could be trusted) or Singular.
+    `frequencies` (Hz) are where a realisation is checked besides its own grid. Raises Impulse, NotInverted
+    (no response that could be trusted) or Singular.
     """
     count = len(outputs)
     methods = np.full(count, NOTHING, dtype=object)
@@ -132,7 +152,7 @@ def respond(
         inversion = _inverted(fronts, window, ramp, inverted)
         arrivals = fronts.starts
         shape = len(arrivals), len(inverted)
-        error[inverted] = inversion.error.reshape(shape).sum(axis=0)
+        error[inverted] = (inversion.error + INTERPOLATED * inversion.largest).reshape(shape).sum(axis=0)
         jumps = np.hstack([jumps, np.zeros((count, len(arrivals) - 1))])
         jumps[inverted] = inversion.jump.reshape(shape).T
     return Edges(ramp, window, tuple(methods), error, arrivals, jumps, found, alive, inversion, inverted)
@@ -141,7 +161,8 @@ def respond(
 def _alive(
     system: System, source: Mapping[int, float], outputs: Sequence[Output], window: float
 ) -> NDArray[np.intp]:
-    """Outputs that are not zero at every s, as a balanced bridge is: rounding would be all there is of them."""
+    """Outputs that are not zero at every s, as a balanced bridge is: rounding would be all there is of
+    them."""
     pattern = Pattern(system)
     arithmetic = MpArithmetic(50)
     alive = np.zeros(len(outputs), dtype=bool)
@@ -155,8 +176,8 @@ def _alive(
 
 
 def _realised(
-    system: System, source: Mapping[int, float], outputs: Sequence[Output], alive: NDArray[np.intp], ramp: float,
-    pace: float, frequencies: ArrayLike,
+    system: System, source: Mapping[int, float], outputs: Sequence[Output], alive: NDArray[np.intp],
+    ramp: float, pace: float, frequencies: ArrayLike,
 ) -> Realisation | None:
     """Poles and residues of the outputs that are `alive`; None where there are none or they are not known."""
     if system.functions or not len(alive):
@@ -224,10 +245,11 @@ def _inverted(
 
 
 def sampled(edges: Edges, points: int, over: float | None = None) -> Floats:
-    """Times, at most `points`, for a table or a plot up to `over` (the window if left out), by the responses.
+    """Times, at most `points`, for a table or a plot up to `over` (the window if left out), by the
+    responses.
 
-    The larger jumps have a sample just before them and one at them. Intervals are halved where a straight line
-    misses a curve most, so that fronts are dense, tails are sparse and decades get their share.
+    The larger jumps have a sample just before them and one at them. Intervals are halved where a straight
+    line misses a curve most, so that fronts are dense, tails are sparse and decades get their share.
     """
     end = edges.window if over is None else over
     knots = _knots(edges, end, points // 6)
@@ -235,7 +257,7 @@ def sampled(edges: Edges, points: int, over: float | None = None) -> Floats:
     if len(t) > points:
         return np.asarray(t[np.linspace(0, len(t) - 1, max(points, 0)).astype(int)], dtype=float)
     values = edges(t)
-    missed = np.full(len(t) - 1, np.inf)  # of every interval: what a straight line leaves out; inf: not known yet
+    missed = np.full(len(t) - 1, np.inf)  # of every interval: what a straight line leaves out, where known
     inner = np.zeros((len(values), len(t) - 1))
     while len(t) < points:
         swing = np.maximum(np.ptp(values, axis=1, keepdims=True), 1e-300)

@@ -1,15 +1,15 @@
 """From a transfer function at complex s to the response in time: the Bromwich integral on a line of s.
 
-y(t) = (e^(at)/π) ∫ Re[F(a + jω) e^(jωt)] dω over ω > 0. Away from ω = 0 F bends no faster than in proportion to ω
-unless the network rings, so the line is cut into panels that double in length, halved where a resonance asks for it.
-On each F is a sum of Legendre polynomials, whose integrals against e^(jωt) are spherical Bessel functions (Bakhvalov
-and Vasil'eva 1968): exact for every t, so that one set of panels serves from the first instant to the end of the
-window, and the error of a value is that of the polynomials alone. Nothing wraps round, as it would with equidistant
-frequencies, and slowly decaying F costs a few panels a decade.
+y(t) = (e^(at)/π) ∫ Re[F(a + jω) e^(jωt)] dω over ω > 0. Away from ω = 0 F bends no faster than in proportion
+to ω unless the network rings, so the line is cut into panels that double in length, halved where a resonance
+asks for it. On each F is a sum of Legendre polynomials, whose integrals against e^(jωt) are spherical Bessel
+functions (Bakhvalov and Vasil'eva 1968): exact for every t, so that one set of panels serves from the first
+instant to the end of the window, and the error of a value is that of the polynomials alone. Nothing wraps
+round, as it would with equidistant frequencies, and slowly decaying F costs a few panels a decade.
 
-Steps come in as F = (H - H(∞))/s, the jump being put back in closed form. A ramp of duration d multiplies it by
-(1 - e^(-sd))/(sd): as it stands on the panels where that is smooth (|s|d < 1), as two terms, the second delayed by d,
-on the others. Neither subtracts what nearly cancels.
+Steps come in as F = (H - H(∞))/s, the jump being put back in closed form. A ramp of duration d multiplies it
+by (1 - e^(-sd))/(sd): as it stands on the panels where that is smooth (|s|d < 1), as two terms, the second
+delayed by d, on the others. Neither subtracts what nearly cancels.
 """
 
 from __future__ import annotations
@@ -53,10 +53,12 @@ _PROBES = 6
 """Per decade, for finding where the line may end."""
 
 ROUNDING = 2e-14
-"""What rounding does to a response, as part of the largest |H|: some hundred panels of a few units each, times e²."""
+"""What rounding does to a response, as part of the largest |H|: some hundred panels of a few units each,
+times e²."""
 
 Transfer = Callable[[Complexes], tuple[Complexes, Floats, Floats]]
-"""(H, how far it may be off, size of what H is a sum of) at complex s, each (n, n_points), for any number n at once."""
+"""(H, how far it may be off, size of what H is a sum of) at complex s, each (n, n_points), for any number
+n at once."""
 
 _POINTS, _WEIGHTS = np.polynomial.legendre.leggauss(NODES)
 _TO_LEGENDRE: Floats = (
@@ -129,17 +131,18 @@ class Inversion:
         return result
 
     def _integral(self, values: Complexes, panels: Any, t: Floats) -> Floats:
-        coefficients = values @ _TO_LEGENDRE.T * _TURNS
+        coefficients = np.moveaxis(values @ _TO_LEGENDRE.T * _TURNS, 1, 0)
+        stacked = np.concatenate([coefficients.real, coefficients.imag], axis=1)
         centre, half = self.centre[panels], self.half[panels]
         result = np.zeros((len(values), len(t)))
         step = max(1, int(2e5 // max(len(centre), 1)))
         for first in range(0, len(t), step):
             part = t[first : first + step]
             bessel = spherical_bessel(np.multiply.outer(half, part))
-            phase = np.exp(1j * np.multiply.outer(centre, part)) * (2 * half[:, None])
-            stacked = np.moveaxis(coefficients, 1, 0)
-            sums = np.matmul(stacked.real, bessel) + 1j * np.matmul(stacked.imag, bessel)
-            result[:, first : first + step] = np.einsum("pnt,pt->nt", sums, phase).real
+            angle, length = np.multiply.outer(centre, part), 2 * half[:, None]
+            turned = np.concatenate([np.cos(angle) * length, -np.sin(angle) * length]).reshape(2, *angle.shape)
+            sums = np.matmul(stacked, bessel).reshape(len(centre), 2, len(values), -1)
+            result[:, first : first + step] = np.einsum("pcnt,cpt->nt", sums, turned)
         growth: Floats = np.exp(self.shift * t) / np.pi
         return result * growth
 
@@ -149,9 +152,9 @@ def invert(
 ) -> Inversion:
     """Prepare the responses of stable transfer functions for the times up to `window` (s).
 
-    `jump` (n,) is H(∞). The rows of `transfer` belong to `outputs` readings in turn (row k to reading k mod outputs),
-    whose largest |H| is the measure of all errors. Raises NotInverted for responses that grow by more than the window
-    can take, and where the transfer function cannot be had.
+    `jump` (n,) is H(∞). The rows of `transfer` belong to `outputs` readings in turn (row k to reading k mod
+    outputs), whose largest |H| is the measure of all errors. Raises NotInverted for responses that grow by
+    more than the window can take, and where the transfer function cannot be had.
     """
     shift = SHIFT / window
     omega = 10.0 ** np.arange(-1.0, _REACH, 1 / _PROBES) / window
@@ -187,7 +190,8 @@ def passed(omega: Any, ramp: float) -> Any:
 def usable_probes(
     probed: Complexes, noise: Floats, parts: Floats, jump: Floats, outputs: int
 ) -> tuple[int, Floats]:
-    """(how many of the probes, in rising order, are not lost in rounding, the measure of each row's errors)."""
+    """(how many of the probes, in rising order, are not lost in rounding, the measure of each row's
+    errors)."""
     count = len(probed) // outputs
 
     def by_output(x: Any) -> Floats:
@@ -213,8 +217,8 @@ def _tail(
 ) -> tuple[Tail, int]:
     """(what H - H(∞) = `smooth` goes over to, index of the s where panels may end).
 
-    They end where nothing is left, or, `cut`, where rounding takes over. There H - H(∞) goes with a power of s; that
-    much of it is put in in closed form.
+    They end where nothing is left, or, `cut`, where rounding takes over. There H - H(∞) goes with a power of
+    s; that much of it is put in in closed form.
     """
     weight = passed(s[: smooth.shape[1]].imag, ramp)
     there = ~(np.abs(smooth) * weight <= BEYOND * measure[:, None]).all(axis=0)

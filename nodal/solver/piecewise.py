@@ -1,4 +1,4 @@
-"""A function of time as polynomials on panels, fine enough to stand for it: crossings, extremes and
+"""Functions of time as polynomials on panels, fine enough to stand for them: crossings, extremes and
 integrals.
 
 Panels are split until the Chebyshev coefficients of each have died out (Boyd 2001; Battles and Trefethen
@@ -49,6 +49,7 @@ _FEW = 25
 
 _CLOSE: Floats = np.asarray(0.25 ** np.arange(3, 24), dtype=np.float64)
 """Where in a panel behind a break it is looked for what is too quick for the panel's points."""
+_CLOSE_TERMS: Floats = np.asarray(chebyshev.chebvander(2 * _CLOSE - 1, NODES - 1), dtype=np.float64)
 
 _LOOK: Floats = np.asarray(-np.cos(np.pi * np.arange(4 * NODES + 1) / (4 * NODES)), dtype=np.float64)
 
@@ -179,42 +180,73 @@ def piecewise(
 ) -> Piecewise:
     """`curve` from the first to the last of the ascending `breaks`, smooth between them.
 
-    `tolerance` is the absolute error that may be left, given the largest absolute value. It is called with
-    many times at once, never with the last break, where something else may begin.
+    `tolerance` is the absolute error that may be left, given the largest absolute value. The curve is asked
+    about many times at once, never about the last break, where something else may begin.
     """
+    found = panels(lambda t: curve(t)[None], breaks, lambda largest: np.array([tolerance(float(largest[0]))]))
+    return Piecewise(found.edges, found.coefficients[:, 0], float(found.left_out[0]))
+
+
+@dataclass(frozen=True)
+class Panels:
+    """Several functions on panels of their own: `coefficients` (m, n_functions, n), as `Piecewise` has
+    them."""
+
+    edges: Floats
+    coefficients: Floats
+    left_out: Floats
+    """(n_functions,) about the largest absolute error."""
+
+    def __call__(self, times: Floats, which: NDArray[np.intp]) -> Floats:
+        """(len(which), n_times); at an edge the values after it, at the last one those before it."""
+        result = np.empty((len(which), len(times)))
+        panel = np.clip(np.searchsorted(self.edges, times, side="right") - 1, 0, len(self.coefficients) - 1)
+        low, high = self.edges[panel], self.edges[panel + 1]
+        terms = chebyshev.chebvander(np.clip((2 * times - low - high) / (high - low), -1.0, 1.0), NODES - 1)
+        for row, function in enumerate(which):
+            result[row] = np.einsum("tn,tn->t", terms, self.coefficients[panel, function])
+        return result
+
+
+def panels(
+    curves: Callable[[Floats], Floats], breaks: Sequence[float] | Floats, tolerance: Callable[[Floats], Floats]
+) -> Panels:
+    """Several functions at once, (n_functions, n_times), as `piecewise` does it with one; tolerances for
+    each."""
     given = np.unique(np.asarray(breaks, dtype=np.float64))
     low, high, behind = _first_panels(given)
-    kept: list[tuple[Floats, Floats, Floats]] = []
-    left_out = largest = 0.0
+    kept: list[tuple[Floats, Floats]] = []
+    left_out = largest = np.zeros(1)
     settled = 0
     while len(low):
         centre, half = (low + high) / 2, (high - low) / 2
         close = low[behind, None] + (high - low)[behind, None] * _CLOSE
         inner = centre[:, None] + half[:, None] * _X
-        values = curve(np.concatenate([inner.ravel(), close.ravel()]))
-        inner, found = values[: inner.size].reshape(inner.shape), values[inner.size :].reshape(close.shape)
-        largest = max(largest, float(np.abs(inner).max()))
-        coefficients = inner @ _FIT.T
-        rough = np.abs(coefficients[:, -4:]).max(axis=1)
-        missed = np.abs(chebyshev.chebval(2 * _CLOSE - 1, coefficients[behind].T) - found)
-        rough[behind] = np.maximum(rough[behind], missed.max(axis=1, initial=0.0))
-        split = (rough > tolerance(largest)) & (high - low > 64 * _EPS * high)
+        values = curves(np.concatenate([inner.ravel(), close.ravel()]))
+        count = len(values)
+        found = values[:, inner.size :].reshape(count, *close.shape)
+        values = values[:, : inner.size].reshape(count, *inner.shape)
+        largest = np.maximum(largest, np.abs(values).max(axis=(1, 2)))
+        coefficients = np.moveaxis(values @ _FIT.T, 0, 1)
+        rough = np.abs(coefficients[..., -4:]).max(axis=2)
+        if behind.any():
+            there = np.einsum("prn,cn->rpc", coefficients[behind], _CLOSE_TERMS)
+            rough[behind] = np.maximum(rough[behind], np.abs(there - found).max(axis=2).T)
+        split = (rough > tolerance(largest)).any(axis=1) & (high - low > 64 * _EPS * high)
         if settled + 2 * int(split.sum()) > MOST_PANELS:
             split[:] = False
-        kept.append((low[~split], high[~split], coefficients[~split]))
+        kept.append((low[~split], coefficients[~split]))
         settled += int((~split).sum())
-        left_out = max(left_out, float(rough[~split].max(initial=0.0)))
+        left_out = np.maximum(left_out, rough[~split].max(axis=0, initial=0.0))
         middle = low + (high - low) * np.where(behind, 0.25, 0.5)
         low, high, behind = (
             np.concatenate([low[split], middle[split]]),
             np.concatenate([middle[split], high[split]]),
             np.concatenate([behind[split], np.zeros(int(split.sum()), dtype=bool)]),
         )
-    low = np.concatenate([k[0] for k in kept])
+    low = np.concatenate([start for start, _ in kept])
     order = np.argsort(low)
-    return Piecewise(
-        np.append(low[order], given[-1]), np.concatenate([k[2] for k in kept])[order], left_out
-    )
+    return Panels(np.append(low[order], given[-1]), np.concatenate([c for _, c in kept])[order], left_out)
 
 
 def _first_panels(breaks: Floats) -> tuple[Floats, Floats, NDArray[np.bool_]]:
