@@ -1,8 +1,9 @@
-"""The edge of a network: readings and contacts after a step or a ramp, in volts, and when they were measured at all.
+"""The edge of a network: readings and contacts after a step or a ramp, in volts, and when they were measured
+at all.
 
-The stimulus is the drive's sources with the amplitudes that the text gives them, all moving together from 0 at t = 0.
-Curves are functions that can be asked for any time up to the end of the window; the samples of a table or a plot come
-from them and are placed by them.
+The stimulus is the drive's sources with the amplitudes that the text gives them, all moving together from 0
+at t = 0. Curves are functions that can be asked for any time up to the end of the window; the samples of a
+table or a plot come from them and are placed by them.
 """
 
 from __future__ import annotations
@@ -45,8 +46,8 @@ _ON_THE_AXIS = 1e-9
 class Trace:
     """One quantity after the edge. Call it with times (s, any shape) for volts, 0 before t = 0.
 
-    `before` is its value before the edge, `final` the limit for t → ∞ (infinite where it grows, not a number where
-    there is none), `error` the estimated largest absolute error, `method` how it was found.
+    `before` is its value before the edge, `final` the limit for t → ∞ (infinite where it grows, not a number
+    where there is none), `error` the estimated largest absolute error, `method` how it was found.
     """
 
     name: str
@@ -113,7 +114,8 @@ class EdgeResponse:
     def grid(self, points: int = POINTS, over: float | None = None) -> Floats:
         """Times for a table or a plot, at most `points`, up to `over` s (the window if left out).
 
-        Dense where the traces move and next to their jumps, sparse where they do not; decades get their share.
+        Dense where the traces move and next to their jumps, sparse where they do not; decades get their
+        share.
         """
         end = self.stimulus.window if over is None else over
         if not 0 < end <= self.stimulus.window:
@@ -131,8 +133,9 @@ def edge_response(
 ) -> EdgeResponse:
     """Readings and contacts (all of them where left out) after the network's edge or another `stimulus`.
 
-    Raises Unavailable where there is no stimulus, no drive to choose, where a step makes an impulse or where no
-    response can be trusted; SingularNetwork where there is no solution; KeyError for names that do not exist.
+    Raises Unavailable where there is no stimulus, no drive to choose, where a step makes an impulse or where
+    no response can be trusted; SingularNetwork where there is no solution; KeyError for names that do not
+    exist.
     """
     stimulus = stimulus if stimulus is not None else network.stimulus
     if stimulus is None:
@@ -182,7 +185,8 @@ def _drive(network: Network, name: str | None) -> Drive:
 def _amplitudes(network: Network, drive: Drive) -> list[tuple[str, float]]:
     """(source, volts or amperes): the drive's weights times the amplitudes as written."""
     written = {
-        part.name: part.value.nominal for part in network.parts if isinstance(part, VoltageSource | CurrentSource)
+        part.name: part.value.nominal
+        for part in network.parts if isinstance(part, VoltageSource | CurrentSource)
     }
     return [(source, weight * written[source]) for source, weight in drive.weights]
 
@@ -205,15 +209,16 @@ def _traces(
     frequencies = np.geomspace(grid.low, grid.high, 101) if grid and 0 < grid.low < grid.high else np.zeros(0)
     try:
         edges = respond(
-            assembly.system, source, outputs, ramp=stimulus.ramp, window=stimulus.window, frequencies=frequencies
+            assembly.system, source, outputs, ramp=stimulus.ramp, window=stimulus.window,
+            frequencies=frequencies,
         )
         final = _final(assembly, source, outputs)
     except Impulse as impulse:
         which = ", ".join(names[k] for k in impulse.outputs)
         kind = "ramp" if stimulus.ramp > 0 else "ideal step"
         raise Unavailable(
-            f"the {kind} drives {which} to an impulse, which has no height: nothing in its way limits the current; "
-            "add the resistance or inductance that is there, or use a ramp"
+            f"the {kind} drives {which} to an impulse, which has no height: nothing in its way limits the "
+            "current; add the resistance or inductance that is there, or use a ramp"
         ) from impulse
     except NotInverted as trouble:
         raise Unavailable(f"no edge response that could be trusted: {trouble}") from trouble

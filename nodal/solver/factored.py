@@ -1,4 +1,5 @@
-"""A(s) factored at a block of points, and all unknowns of a solution: for those that need more than outputs."""
+"""A(s) factored at a block of points, and all unknowns of a solution: for those that need more than
+outputs."""
 
 from __future__ import annotations
 

@@ -1,14 +1,14 @@
 """Transfer functions front by front: what pure delays carry, with the delays taken out.
 
-A(s) = A0(s) + sum over k of A_k(s) exp(-s T_k): cables in their travelling waves and amplifiers with a delay are of
-this form. x(s) = sum of x_τ(s) exp(-s τ) over all sums τ of delays, with
+A(s) = A0(s) + sum over k of A_k(s) exp(-s T_k): cables in their travelling waves and amplifiers with a delay
+are of this form. x(s) = sum of x_τ(s) exp(-s τ) over all sums τ of delays, with
 
     A0 x_0 = b,    A0 x_τ = -sum over k of A_k x_(τ - T_k),
 
-and no x_τ has a delay left in it: an edge arrives at each τ in a shape that is smooth after it. For lines without
-loss this is the lattice of reflections (Bewley 1933). Within a window the sum is finite; where it would be long, what
-comes after some time is kept together: A x_rest = -sum of A_k x_τ exp(-s(τ + T_k)) over all steps that leave what was
-summed.
+and no x_τ has a delay left in it: an edge arrives at each τ in a shape that is smooth after it. For lines
+without loss this is the lattice of reflections (Bewley 1933). Within a window the sum is finite; where it
+would be long, what comes after some time is kept together: A x_rest = -sum of A_k x_τ exp(-s(τ + T_k)) over
+all steps that leave what was summed.
 """
 
 from __future__ import annotations
@@ -96,9 +96,8 @@ class Fronts:
         self._terms = [self._terms_of(group) for group in self._groups]
         self._entries = sorted({self._base.pattern.term_rows[t] for terms in self._terms for t in terms})
         """What delayed terms give to: columns 1, 2, … of `_amounts`."""
-        self._entry_of = {
-            t: 1 + self._entries.index(self._base.pattern.term_rows[t]) for terms in self._terms for t in terms
-        }
+        columns = {rows: column for column, rows in enumerate(self._entries, 1)}
+        self._entry_of = {t: columns[self._base.pattern.term_rows[t]] for terms in self._terms for t in terms}
         arrivals, self._before, self._leaving = _lattice(self._delays, window, most)
         self.arrivals: Floats = np.array(arrivals)
         """(n,) s, in order: the fronts that are followed."""
@@ -116,10 +115,11 @@ class Fronts:
         return np.append(self.arrivals, [] if self.rest is None else [self.rest])
 
     def evaluate(self, s: Complexes) -> tuple[Complexes, Floats, Floats]:
-        """(values, noise, parts), each (n, n_outputs, n_points): transfer functions without delays, then the rest.
+        """(values, noise, parts), each (n, n_outputs, n_points): transfer functions without delays, then the
+        rest.
 
-        `noise` is how far rounding may have put them off, absolutely; `parts` the sum of the sizes of what an output
-        is made of, which says how far it must.
+        `noise` is how far rounding may have put them off, absolutely; `parts` the sum of the sizes of what
+        an output is made of, which says how far it must.
         """
         shape = len(self.starts), len(self.outputs), len(s)
         values: Complexes = np.empty(shape, dtype=complex)
@@ -165,9 +165,9 @@ class Fronts:
     def _amounts(self, s: Any, arithmetic: Arithmetic, drops: Sequence[Any]) -> list[dict[int, Any]]:
         """x_τ of every arrival as {column: factor} of the solutions for the source (0) and for each entry.
 
-        `drops[column][term]` is what a term takes from those solutions. What delayed terms give to the equations
-        has few forms, the entries, so that no arrival needs a solution of its own. The last item is the right-hand
-        side of the rest, where there is one.
+        `drops[column][term]` is what a term takes from those solutions. What delayed terms give to the
+        equations has few forms, the entries, so that no arrival needs a solution of its own. The last item
+        is the right-hand side of the rest, where there is one.
         """
         functions = self._base.pattern.functions
         fronts = [self._front(group, s, arithmetic) for group in self._groups]
@@ -194,10 +194,11 @@ class Fronts:
         return found
 
     def at_infinity(self) -> tuple[Floats, Floats]:
-        """(limits, orders) of what `evaluate` gives for s → ∞, each (n, n_outputs): by how much an edge jumps.
+        """(limits, orders) of what `evaluate` gives for s → ∞, each (n, n_outputs): by how much an edge
+        jumps.
 
-        Orders are multiples of 1/2; positive ones, impulses, have an infinite limit. From two huge s, with many
-        digits.
+        Orders are multiples of 1/2; positive ones, impulses, have an infinite limit. From two huge s, with
+        many digits.
         """
         arithmetic = MpArithmetic(_DIGITS)
         points = [arithmetic.context.mpf(10) ** exponent for exponent in _FAR]
@@ -221,7 +222,10 @@ class Fronts:
         amounts = self._amounts(s, arithmetic, [base.drops(x) for x in solutions])
         zero = arithmetic.number(0)
         result = [
-            [sum((f * shown[column][k] for column, f in amount.items()), zero) for k in range(len(self.outputs))]
+            [
+                sum((f * shown[column][k] for column, f in amount.items()), zero)
+                for k in range(len(self.outputs))
+            ]
             for amount in amounts[: len(self.arrivals)]
         ]
         if self.rest is not None:
@@ -285,7 +289,8 @@ def _by_delay(system: System) -> tuple[list[float], list[list[int]]]:
 def _lattice(
     delays: Sequence[float], window: float, most: int
 ) -> tuple[list[float], list[list[Step]], list[tuple[float, Step]]]:
-    """(arrivals, the steps that lead to each, the steps that leave what is followed with the time they end at).
+    """(arrivals, the steps that lead to each, the steps that leave what is followed with the time they end
+    at).
 
     Steps that end after the window are left out altogether unless arrivals had to be cut short.
     """

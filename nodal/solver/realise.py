@@ -145,8 +145,8 @@ def realise(
 ) -> Realisation:
     """Realise every output of A(s) x = source; checked against the solver, also at `frequencies` (Hz).
 
-    `pace` (rad/s) is what is slow or fast where all poles are at the origin. Raises NotRealised where the poles
-    cannot be told reliably, ValueError for a system with functions of s.
+    `pace` (rad/s) is what is slow or fast where all poles are at the origin. Raises NotRealised where the
+    poles cannot be told reliably, ValueError for a system with functions of s.
     """
     if system.functions:
         raise ValueError("a system with functions of s has no finite set of poles")
@@ -220,7 +220,8 @@ def _at_origin(
     origin = round((_log_det(exacts[0]) - _log_det(exacts[1])) / (_FAR[1] - _FAR[0]))
     far, near = ([exact.output(o, x) for o in outputs]
                  for exact, x in ((exact, exact.solve(source)[0]) for exact in exacts))
-    resting = [abs(b) < abs(a) * 10 ** ((_FAR[1] - _FAR[0]) // 2) or b == 0 for a, b in zip(far, near, strict=True)]
+    growth = 10 ** ((_FAR[1] - _FAR[0]) // 2)
+    resting = [b == 0 or abs(b) < growth * abs(a) for a, b in zip(far, near, strict=True)]
     return origin, np.array(resting, dtype=bool)
 
 
@@ -290,7 +291,8 @@ def _bands(
 def _band_edges(pattern: Pattern, degree: int, origin: int, pace: float) -> list[float]:
     """Limits of bands of |pole| (rad/s), none wide, set where few poles are.
 
-    d log |det A|/d log |s| is about the number of poles below s, along a ray on which poles are not likely to lie.
+    d log |det A|/d log |s| is about the number of poles below s, along a ray on which poles are not likely
+    to lie.
     """
     exponents = np.arange(-16.0, 26.0, 0.25)
     points = 10.0**exponents * np.exp(0.7j)
@@ -378,8 +380,8 @@ def _band(form: _Shifted, chosen: NDArray[np.bool_]) -> _Band:
 def _at_rest(band: _Band, origin: int) -> _Band:
     """The slowest `origin` poles are known to be exactly zero.
 
-    Several stand in the Schur form as a cluster around zero, whose mean is right and whose members are not: to
-    change them one by one would change their sum by more than rounding did.
+    Several stand in the Schur form as a cluster around zero, whose mean is right and whose members are not:
+    to change them one by one would change their sum by more than rounding did.
     """
     slowest = np.argsort(np.abs(band.poles))[:origin]
     poles, t = band.poles.copy(), band.t.copy()

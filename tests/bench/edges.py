@@ -1,7 +1,7 @@
 """How long the edge of a 200-section lumped ladder takes, against a sweep of it by dense stacked solving.
 
-Run: env -u OPENBLAS_CORETYPE -u OPENBLAS_L2_SIZE python tests/bench/edges.py
-Prints the seconds of both, in the same process, and their ratio: below 1 the edge at 2,000 points is the faster one.
+Run: env -u OPENBLAS_CORETYPE -u OPENBLAS_L2_SIZE python tests/bench/edges.py Prints the seconds of both, in
+the same process, and their ratio: below 1 the edge at 2,000 points is the faster one.
 """
 
 from __future__ import annotations
@@ -10,6 +10,7 @@ import time
 
 import numpy as np
 import threadpoolctl
+from numpy.typing import NDArray
 
 from nodal.solver.edges import respond
 from nodal.solver.matrix import System, Term
@@ -29,7 +30,7 @@ def ladder(sections: int) -> System:
     return System(2 * sections + 1, tuple(terms))
 
 
-def matrices(system: System) -> tuple[np.ndarray, np.ndarray]:
+def matrices(system: System) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     g, c = np.zeros((2, system.size, system.size))
     for term in system.terms:
         for i, row in term.rows:
@@ -49,8 +50,8 @@ def main() -> None:
     prepared = time.perf_counter()
     edges(np.linspace(0, window, POINTS))
     done = time.perf_counter()
-    print(f"edge, {POINTS} points: {done - start:.2f} s ({prepared - start:.2f} s to prepare), {edges.methods[0]}, "
-          f"estimated error {edges.error[0]:.1e}")
+    print(f"edge, {POINTS} points: {done - start:.2f} s ({prepared - start:.2f} s to prepare)")
+    print(f"by {edges.methods[0]}, estimated error {edges.error[0]:.1e}")
     g, c = matrices(system)
     b = np.zeros((system.size, 1))
     b[0] = 1 / 50

@@ -1,4 +1,5 @@
-"""The edge of whole networks, from their text, against closed forms and against a plain quadrature of the sweep."""
+"""The edge of whole networks, from their text, against closed forms and against a plain quadrature of the
+sweep."""
 
 from __future__ import annotations
 
@@ -10,13 +11,13 @@ import numpy as np
 import pytest
 from numpy.testing import assert_allclose
 from scipy import integrate, optimize, special
+from support.run import load
 
 import nodal
 from nodal.edge import EdgeResponse, edge_response
 from nodal.network import Stimulus
 from nodal.response import Unavailable
 from nodal.solver.edges import INVERSION, POLES
-from support.run import load
 
 CIRCUITS = Path(__file__).parents[2] / "circuits"
 
@@ -39,7 +40,8 @@ reading out: out to ground
 
 
 def test_bounce() -> None:
-    """25 Ω, 50 Ω, 100 Ω: 8/9 at T, 64/81 at 3T, 584/729 at 5T, finally 4/5 (textbook); nothing before, no ringing."""
+    """25 Ω, 50 Ω, 100 Ω: 8/9 at T, 64/81 at 3T, 584/729 at 5T, finally 4/5 (textbook); nothing before, no
+    ringing."""
     out = edge(BOUNCE, 12e-9).readings["out"]
     t = 1e-9
     assert_allclose(out([t, 3 * t, 5 * t]), [8 / 9, 64 / 81, 584 / 729], rtol=1e-15)
@@ -53,7 +55,8 @@ def test_bounce() -> None:
 def test_bounce_of_a_ramp() -> None:
     """Half way up the ramp after each arrival is half of the step there (superposition)."""
     out = edge(BOUNCE, 12e-9, ramp=0.2e-9).readings["out"]
-    assert_allclose(out([1.1e-9, 1.2e-9, 3.1e-9, 3.2e-9]), [4 / 9, 8 / 9, (8 / 9 + 64 / 81) / 2, 64 / 81], rtol=1e-12)
+    expected = [4 / 9, 8 / 9, (8 / 9 + 64 / 81) / 2, 64 / 81]
+    assert_allclose(out([1.1e-9, 1.2e-9, 3.1e-9, 3.2e-9]), expected, rtol=1e-12)
 
 
 def test_grid_has_both_sides_of_a_jump() -> None:
@@ -72,7 +75,8 @@ def test_grid_has_both_sides_of_a_jump() -> None:
 
 
 def test_grid_follows_decades() -> None:
-    """A pole of 1 µs watched for 1 s: straight lines between 200 samples miss the curve by less than 0.1 %."""
+    """A pole of 1 µs watched for 1 s: straight lines between 200 samples miss the curve by less than 0.1
+    %."""
     response = edge("""
     source s: in to ground = 1 V behind 1 kΩ
     branch c: in to ground = 1 nF
@@ -85,8 +89,8 @@ def test_grid_follows_decades() -> None:
 
 
 def test_matched_square_root_line() -> None:
-    """An RC line followed by one 1000 times longer: erfc(α/(2√t)), t50 = 1.09905466916 α², t90/t50 = 28.8102673389
-    (Wigington and Nahman 1957): the long tail does not wrap round."""
+    """An RC line followed by one 1000 times longer: erfc(α/(2√t)), t50 = 1.09905466916 α², t90/t50 =
+    28.8102673389 (Wigington and Nahman 1957): the long tail does not wrap round."""
     out = edge("""
     stock rc { resistance 1 kΩ/m; capacitance 1 nF/m }
     source s: in to ground = 1 V
@@ -102,11 +106,12 @@ def test_matched_square_root_line() -> None:
 
 
 def test_front_of_a_lossy_line() -> None:
-    """A long line of L, C and R from an ideal source: a jump of exp(-RT/2L) at T and, after it, the integral of the
-    modified Bessel function I1 (Carson, Electric Circuit Theory and the Operational Calculus, 1926)."""
-    r, l, c = 20.0, 250e-9, 100e-12
-    t_line = 2 * math.sqrt(l * c)
-    a = r / (2 * l)
+    """A long line of L, C and R from an ideal source: a jump of exp(-RT/2L) at T and, after it, the
+    integral of the modified Bessel function I1 (Carson, Electric Circuit Theory and the Operational
+    Calculus, 1926)."""
+    r, inductance, c = 20.0, 250e-9, 100e-12
+    t_line = 2 * math.sqrt(inductance * c)
+    a = r / (2 * inductance)
     out = edge("""
     stock lossy { resistance 20 Ω/m; inductance 250 nH/m; capacitance 100 pF/m }
     source s: in to ground = 1 V
@@ -132,8 +137,8 @@ def test_front_of_a_lossy_line() -> None:
 
 
 def test_skin_effect_of_a_long_matched_line() -> None:
-    """Lossless inductance and capacitance with a √s resistance far above its corner: erfc(k/(2√(t - T))), k = R_k l
-    √(2/ω_k)/(2 Z0) to first order in the loss (Wigington and Nahman 1957)."""
+    """Lossless inductance and capacitance with a √s resistance far above its corner: erfc(k/(2√(t - T))),
+    k = R_k l √(2/ω_k)/(2 Z0) to first order in the loss (Wigington and Nahman 1957)."""
     response = edge("""
     stock skin { impedance 50 Ω; velocity 0.66; skin 0.1 Ω/m at 1 GHz }
     source s: in to ground = 1 V behind 50 Ω
@@ -248,7 +253,7 @@ def test_impulse_names_the_reading() -> None:
     branch coil: in to ground = 1 µH
     reading out: in to ground
     """
-    with pytest.raises(Unavailable, match='drives reading "out".* to an impulse'):
+    with pytest.raises(Unavailable, match=r'drives reading "out".* to an impulse'):
         edge(body, 1e-6)
     assert_allclose(edge(body, 1e-6, ramp=1e-7).readings["out"]([0, 0.5e-7, 1.5e-7]), [10, 10, 0], atol=1e-12)
 
@@ -266,7 +271,8 @@ def test_growing_network_follows_its_poles() -> None:
 
 
 def plain_quadrature(network: Any, drive: str, reading: str, stimulus: Stimulus, times: Any) -> Any:
-    """The trapezoidal rule for the Bromwich integral with the solver's H, a far to the right (aliases below e^-14)."""
+    """The trapezoidal rule for the Bromwich integral with the solver's H, a far to the right (aliases
+    below e^-14)."""
     from nodal.assemble import assemble, excitation
     from nodal.solver.sweep import solve
 
@@ -285,7 +291,8 @@ def plain_quadrature(network: Any, drive: str, reading: str, stimulus: Stimulus,
 
 @pytest.mark.parametrize("name", ["bench_probe", "resistive_probe", "active_probe", "current_shunt"])
 def test_shipped_circuits(name: str) -> None:
-    """Real chains with cables, skin effect and amplifiers, against the plain quadrature (which stops early: 1e-4)."""
+    """Real chains with cables, skin effect and amplifiers, against the plain quadrature (which stops
+    early: 1e-4)."""
     path = CIRCUITS / f"{name}.nodal"
     network = nodal.load(str(path)).network().network
     assert network.stimulus is not None

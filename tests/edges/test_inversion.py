@@ -36,7 +36,8 @@ def second_order(zeta: float, w: float) -> Curve:
 
 
 def column(t: Any) -> Any:
-    """Of √s/sinh √s: 1 + 2 Σ (-1)ⁿ exp(-n²π²t), and for short t from the images 2/√(πt) Σ exp(-(2k+1)²/4t)."""
+    """Of √s/sinh √s: 1 + 2 Σ (-1)ⁿ exp(-n²π²t), and for short t from the images 2/√(πt) Σ
+    exp(-(2k+1)²/4t)."""
     t = np.asarray(t, dtype=float)[:, None]
     n = np.arange(1, 40)
     late = 1 + 2 * ((-1.0) ** n * np.exp(-((n * np.pi) ** 2) * np.maximum(t, 0.05))).sum(axis=1)
@@ -85,8 +86,9 @@ CASES: dict[str, tuple[Curve, Curve, float]] = {
 
 @pytest.mark.parametrize("name", CASES)
 def test_estimate_is_true(name: str) -> None:
-    """actual error <= estimate <= 1000 max(actual, 1e-12), over twelve decades of time (erfc: Wigington and Nahman
-    1957; the RC line: exact series; the column: Kuffel, Zaengl and Kuffel, ch. 3, and theta functions)."""
+    """actual error <= estimate <= 1000 max(actual, 1e-12), over twelve decades of time (erfc: Wigington
+    and Nahman 1957; the RC line: exact series; the column: Kuffel, Zaengl and Kuffel, ch. 3, and theta
+    functions)."""
     h, expected, jump = CASES[name]
     found = inverted(h, jump=jump)
     actual = float(np.abs(found.edge(T)[0] - expected(T)).max())
