@@ -206,6 +206,20 @@ def test_a_node_with_another_name_is_told_once() -> None:
     assert not found.moved
 
 
+def test_nodes_that_are_joined_are_no_renaming() -> None:
+    base = """nodal 1
+source drive: p to ground = 1 V
+branch one: p to m = 1 Ω; branch two: p to n = 1 Ω
+branch three: m to ground = 2 Ω; branch four: n to ground = 3 Ω
+reading out: p to ground
+"""
+    found = changes(("to m", "to q"), ("to n", "to q"), (": m", ": q"), (": n", ": q"), base=base)
+    assert {(c.name, c.what, c.new) for c in found} == {
+        ("one.R", "between", "p to q"), ("two.R", "between", "p to q"),
+        ("three.R", "between", "q to ground"), ("four.R", "between", "q to ground"),
+    }  # fmt: skip
+
+
 def test_moved_under_test() -> None:
     base = BASE.replace("branch comp", "branch pad: tip to ground = 1 pF; branch comp")
     split = base.replace("source drive", "under test { source drive").replace("50 Ω", "50 Ω }")
