@@ -34,11 +34,13 @@ class NetworkBuilder:
     def node(self, name: str, span: Span) -> int:
         """Index of a node, new where nothing has named it yet."""
         index = self.nodes.get(name)
-        if index is None:
-            index = self.nodes[name] = len(self.nodes)
-            place = self.place(span)
-            if place is not None:
-                self.node_places[index] = place
+        return self.node_at(name, self.place(span)) if index is None else index
+
+    def node_at(self, name: str, place: Place | None) -> int:
+        """Index of a node first named at a place, of the existing one if there is one."""
+        index = self.nodes.setdefault(name, len(self.nodes))
+        if place is not None:
+            self.node_places.setdefault(index, place)
         return index
 
     def find_node(self, name: str) -> int | None:

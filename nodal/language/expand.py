@@ -25,6 +25,7 @@ from nodal.language.frame import Frame
 from nodal.language.networks import expand_network
 from nodal.language.program import Item, Program, case_items, name_of
 from nodal.language.quantity import Quantity, number, randomised
+from nodal.language.repeat import Mark, Section, repeatable
 from nodal.language.requirements import resolve_requirement
 from nodal.language.scope import Binding, Rejected, Scope, nearest
 from nodal.network import Contact, Drive, Network, Reading, Stimulus, SweepGrid
@@ -34,6 +35,10 @@ from nodal.parts.inductor import Inductor
 from nodal.parts.source import CurrentSource, VoltageSource
 
 MOST_POINTS = 2_000_000
+MOST_TEXT = 16_777_216
+"""Characters of assemblies worked out, each as often as it is used; equal sections of a chain count once."""
+MOST_JOINED = 2_000_000
+"""Nodes that uses of assemblies are connected by."""
 FREEZING = 273.15
 """0 °C in K."""
 ROOM = 296.15
@@ -81,11 +86,18 @@ class _Expansion:
         self.arguments: dict[str, tuple[syntax.Word | None, Quantity | float | None]] = {}
         """Values for the arguments of places, by their dotted name, and where each was written."""
         self.known_arguments: set[str] = set()
+        self.singled_out: set[str] = set()
+        """Places and sections for whose inside a value is given."""
         self.couplings: list[tuple[syntax.Coupling, Frame]] = []
         self.inside: dict[str, list[Part]] = {}
         """Parts of each branch, once couplings ask."""
         self.pending = 1
         """How many times what is being expanded will be repeated by the chains around it."""
+        self.pending_text = 1
+        """How many times it will be worked out anew."""
+        self.written = 0
+        self.joined = 0
+        """Characters and nodes of the assemblies used so far; see `check_effort`."""
         self.contacts: dict[str, Contact] = {}
         self.readings: dict[str, Reading] = {}
         self.sources: dict[str, str] = {}
@@ -145,6 +157,9 @@ class _Expansion:
         for name, override in self.overrides.items():
             if "." in name:
                 self.arguments[name] = (None, self.argument(override))
+        for name in self.arguments:
+            steps = name.split(".")
+            self.singled_out.update(".".join(steps[:depth]) for depth in range(1, len(steps)))
         for name in check_assemblies(self.assemblies, self.collector):
             del self.assemblies[name]
         check_size(self.assemblies, (item.statement for item in self.items), self.collector)
@@ -270,6 +285,7 @@ class _Expansion:
         assembly = self.assembly(place.use)
         arguments = evaluate_arguments(place.use, assembly, frame, self.overridden(name, assembly))
         left, right, shared = bind_nodes(place.use, assembly, frame)
+        self.check_effort(assembly, 1, place.use.span)
         self.evaluator.uses.append((place.use.span, f"used here as {name}"))
         try:
             self.section(assembly, f"{name}.", frame, left, right, shared, arguments)
@@ -290,33 +306,83 @@ class _Expansion:
             )
         own_overrides = self.overridden(name, assembly)
         arguments = evaluate_arguments(chain.use, assembly, frame, own_overrides)
-        left, right, shared = bind_nodes(chain.use, assembly, frame)
-        errors = len(self.collector.found)
-        parts = len(self.builder.parts)
+        ends = bind_nodes(chain.use, assembly, frame)
+        self.check_effort(assembly, count, chain.count.span)
         self.evaluator.uses.append((chain.use.span, f"used here as {name}"))
-        self.pending *= count
         try:
-            for position in range(1, count + 1):
-                inner = f"{name}.{position}."
-                ends = right
-                if position < count:
-                    ends = [self.builder.node(inner + word.text, chain.use.span) for word in assembly.right]
-                own = arguments
-                if self.arguments:
-                    here = {**own_overrides, **self.overridden(inner[:-1], assembly)}
-                    own = evaluate_arguments(chain.use, assembly, frame, here)
-                self.section(assembly, inner, frame, left, ends, shared, own)
-                left = ends
-                if position == 1:
-                    self.pending //= count
-                    added = max(1, len(self.builder.parts) - parts)
-                    if parts + added * count * self.pending > MOST_PARTS:
-                        self.evaluator.report("too-many-parts", chain.count.span, limit=f"{MOST_PARTS:,}")
-                        raise TooLarge
-                if len(self.collector.found) > errors:
-                    break  # the other sections would say the same
+            self.sections(chain, assembly, count, frame, ends, arguments, own_overrides)
         finally:
             self.evaluator.uses.pop()
+
+    def sections(
+        self,
+        chain: syntax.Chain,
+        assembly: syntax.Assembly,
+        count: int,
+        frame: Frame,
+        ends_of_chain: tuple[list[int], list[int], list[int]],
+        arguments: Mapping[str, Quantity | None],
+        own_overrides: Mapping[str, Quantity | float | None],
+    ) -> None:
+        """All sections of a chain. The second is the pattern of those behind it but the last.
+
+        Not of those for which a value comes from outside. The first and the last have outer nodes, which may
+        be shared ones too, so that an index would not tell what a node is to them.
+        """
+        left, right, shared = ends_of_chain
+        name = frame.prefix + chain.name.text
+        errors, parts = len(self.collector.found), len(self.builder.parts)
+        pattern: Section | None = None
+        pattern_ends: list[int] = []
+        alike = repeatable(assembly, self.assemblies)
+        anew = 1 if alike else count
+        self.pending *= count
+        self.pending_text *= anew
+        for position in range(1, count + 1):
+            inner = f"{name}.{position}."
+            ends = right
+            if position < count:
+                ends = [self.builder.node(inner + word.text, chain.use.span) for word in assembly.right]
+            special = inner[:-1] in self.singled_out
+            if pattern is not None and position < count and not special:
+                pattern.repeat(inner, dict(zip(pattern_ends, (*left, *ends), strict=True)))
+            else:
+                own = arguments
+                if special:
+                    here = {**own_overrides, **self.overridden(inner[:-1], assembly)}
+                    own = evaluate_arguments(chain.use, assembly, frame, here)
+                before = Mark.of(self.builder)
+                self.section(assembly, inner, frame, left, ends, shared, own)
+                if alike and 1 < position < count and not special:
+                    pattern, pattern_ends = Section(self.builder, before, inner), [*left, *ends]
+            left = ends
+            if position == 1:
+                self.pending //= count
+                self.pending_text //= anew
+                added = max(1, len(self.builder.parts) - parts)
+                if parts + added * count * self.pending > MOST_PARTS:
+                    self.evaluator.report("too-many-parts", chain.count.span, limit=f"{MOST_PARTS:,}")
+                    raise TooLarge
+            if len(self.collector.found) > errors:
+                break  # the other sections would say the same
+
+    def check_effort(self, assembly: syntax.Assembly, count: int, span: syntax.Span) -> None:
+        """TooLarge, reported, where assemblies are used more than a design of the largest size needs."""
+        nodes = len(assembly.left) + len(assembly.right) + len(assembly.shared)
+        text = assembly.span.end - assembly.span.start
+        if count * self.pending > MOST_PARTS:
+            self.evaluator.report("too-many-parts", span, limit=f"{MOST_PARTS:,}")
+            raise TooLarge
+        if not repeatable(assembly, self.assemblies):
+            text *= count
+        self.written += text
+        self.joined += nodes * count
+        if self.written + text * (self.pending_text - 1) > MOST_TEXT:
+            self.evaluator.report("too-much-text", span, limit=f"{MOST_TEXT:,}")
+            raise TooLarge
+        if self.joined + nodes * count * (self.pending - 1) > MOST_JOINED:
+            self.evaluator.report("too-many-nodes", span, limit=f"{MOST_JOINED:,}")
+            raise TooLarge
 
     def section(
         self,

@@ -13,6 +13,8 @@ from nodal.language.scope import nearest
 from nodal.language.syntax import Span
 
 NOMINAL = "nominal"
+SUFFIX = ".nodal"
+"""What the names of files end in. Nothing else is included: an error would show lines of it."""
 
 Parser = Callable[[str, str, Collector], syntax.File]
 
@@ -217,7 +219,10 @@ class _Gathering:
         except Unusable as why:
             self.collector.add("include-unreadable", include.span, target=target, reason=str(why))
             return
-        if key in self.open:
+        if not key.endswith(SUFFIX):  # of the file that a link leads to
+            reason = f"its name does not end in {SUFFIX}"
+            self.collector.add("include-unreadable", include.span, target=target, reason=reason)
+        elif key in self.open:
             circle = [*self.open[self.open.index(key) :], key]
             names = " -> ".join(os.path.basename(step) for step in circle)
             self.collector.add("include-loop", include.span, names=names)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 
 import pytest
@@ -103,6 +104,87 @@ def test_a_toleranced_argument_is_drawn_once_per_section() -> None:
     assert randoms["c.2.x.R1"] == {"c.2.v"}
     assert randoms["c.1.y.R"] == {"c.1.w"}
     assert randoms["d.x.R1"] == randoms["e.x.R2"] == {"common"}
+
+
+PIECE = """stock coax { impedance 50 Ω; velocity 0.7 }
+let common = 3 Ω ± 1 %
+assembly cell(p, g to q; v) { branch x: p to inner = v ∥ v; branch y: inner to q = common -- 2 * v
+  branch z: q to g = 1 Ω ± 2 % rated 5 V as shunt }
+assembly piece(top, low to top_out, low_out with ref; r, share = 0.5 ± 1 %) {
+  let half = r * share
+  place a: cell(top, ref to mid; v = half)
+  place b: cell(mid, low to top_out; v = 7 Ω ± 1 %)
+  cable c: top_out, ref to low_out, ref = 1 m of coax
+  amplifier u: mid, low to out, ref { gain 1; input 1 MΩ ± 1 %; output r }
+  branch load: out to ref = r
+}
+"""
+
+
+def test_many_sections_equal_places_one_after_another() -> None:
+    """What is repeated from the second section on, part by part, random quantities and places in the text."""
+    use = "piece({0} to {1} with a; r = 5 Ω ± 1 %)"  # a is the left node of the first section too
+    count = 6
+    chain = network(SOURCE + PIECE + f"chain s: {count} of " + use.format("a, b", "y, z"))
+    joints = ["a, b", *(f"j{i}, k{i}" for i in range(1, count)), "y, z"]
+    uses = [f"place s{i}: " + use.format(joints[i - 1], joints[i]) + "\n" for i in range(1, count + 1)]
+    places = network(SOURCE + PIECE + "".join(uses))
+
+    def plain(name: str) -> str:
+        name = re.sub(r"^s\.(\d+)\.(top_out|low_out)$", lambda m: "jk"[m[2] == "low_out"] + m[1], name)
+        return re.sub(r"^s\.(\d+)\.", r"s\1.", name)
+
+    def listed(n: Network) -> list[tuple[object, ...]]:
+        found = []
+        for part in n.parts:
+            values = [v for _, v, _ in part.describe()]
+            randoms = [
+                sorted((plain(name), r.nominal, r.tolerance) for name, r in v.formula.randoms().items())
+                for v in values if v.formula is not None
+            ]  # fmt: skip
+            drawn = [
+                v.formula.evaluate({name: 1.5 for name in v.formula.randoms() if plain(name) == "s4.r"})
+                for v in values if v.formula is not None
+            ]  # fmt: skip
+            nodes = [plain(n.nodes[i]) for i in part.nodes]
+            nominal = [(v.nominal, v.tolerance, v.ratings) for v in values]
+            found.append((plain(part.name), part.kind, nodes, nominal, randoms, drawn, part.place))
+        return found
+
+    assert listed(chain) == listed(places)
+    assert {plain(name) for name in chain.nodes} == set(places.nodes)
+    inner = [(i, node) for i in range(1, count + 1) for node in ("top", "mid", "b.p", "low")]
+    read = {f"s.{i}.{node}": f"s{i}.{node}" for i, node in inner}
+    more = "".join(f"reading r{i}: {{{i}}} to ground\n" for i in range(len(read)))
+    written = SOURCE + PIECE + f"chain s: {count} of " + use.format("a, b", "y, z") + "\n"
+    chained = network(written + more.format(*read))
+    placed = network(SOURCE + PIECE + "".join(uses) + more.format(*read.values()))
+    here = [plain(chained.nodes[r.a]) for r in chained.readings]
+    assert here == [placed.nodes[r.a] for r in placed.readings]
+
+
+def test_a_section_with_a_value_of_its_own_is_not_a_pattern() -> None:
+    text = SECTION + SOURCE + "chain c: 6 of section(tip to low with ground; r = 5 MΩ ± 1 %)\n"
+    n = network(text + "case x { let c.2.r = 6 MΩ; let c.4.r = 7 MΩ ± 2 % }", "x")
+    values = [n.part(f"c.{i}.body.R").value for i in range(1, 7)]  # type: ignore[attr-defined]
+    assert [v.nominal for v in values] == [5e6, 6e6, 5e6, 7e6, 5e6, 5e6]
+    assert [list(v.formula.randoms()) if v.formula else [] for v in values] == [
+        ["c.1.r"], [], ["c.3.r"], ["c.4.r"], ["c.5.r"], ["c.6.r"],
+    ]  # fmt: skip
+
+
+def test_couplings_in_every_section() -> None:
+    text = """assembly x(p to q; k) { branch a: p to q = 1 nH; branch b: p to q = 1 nH
+      coupling m: a with b = k }
+    chain c: 5 of x(a to ground; k = 0.5 ± 1 %)
+    """
+    n = network(text)
+    found = {
+        p.name: (p.first, p.second, set(p.value.formula.randoms()))  # type: ignore[attr-defined]
+        for p in n.parts
+        if p.kind == "coupling"
+    }
+    assert found == {f"c.{i}.m": (f"c.{i}.a.L", f"c.{i}.b.L", {f"c.{i}.k"}) for i in range(1, 6)}
 
 
 def test_nested_assemblies_see_the_file_and_not_their_user() -> None:
@@ -307,6 +389,19 @@ def test_includes_stay_inside(tmp_path: Path) -> None:
     assert codes('include "round.nodal"', path=main) == ["include-unreadable"]
     (tmp_path / ".git").mkdir()
     assert codes('include "../out.nodal"', path=main) == []
+
+
+def test_only_designs_are_included(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Another file would be shown in excerpts, and `-` would be standard input."""
+    (tmp_path / "secret.txt").write_text("password = 1\n")
+    (tmp_path / "link.nodal").symlink_to(tmp_path / "secret.txt")
+    (tmp_path / ".nodal").write_text("nodal 1\n")
+    monkeypatch.chdir(tmp_path)
+    for target in ("secret.txt", "link.nodal", "-", ".", ""):
+        (finding,) = run(f'include "{target}"', path="main.nodal")[1]
+        assert finding.code == "include-unreadable"
+        assert "password" not in finding.message
+    assert codes('include ".nodal"', path="main.nodal") == []
 
 
 def test_include_loops(tmp_path: Path) -> None:

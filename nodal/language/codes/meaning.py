@@ -579,6 +579,34 @@ MEANING: tuple[Code, ...] = (
         ),
     ),
     Code(
+        "too-much-text",
+        "error",
+        "the assemblies used here have more than {limit} characters, each counted as often as it is used",
+        "make the assemblies shorter, or use them less often",
+        "What assemblies say is worked out anew for every place, and for every section of a chain that "
+        "differs from the others. The length of all that is limited, so that a short text cannot ask for "
+        "endless work.",
+        (
+            _FRAME + "assembly x(p to q) { branch r: p to q = 1 Ω" + " + 0 Ω" * 2000 + " }\n"
+            + "assembly y(p to q) { " + "; ".join(f"place u{i}: x(p to q)" for i in range(40)) + " }\n"
+            + "assembly z(p to q) { " + "; ".join(f"place u{i}: y(p to q)" for i in range(40)) + " }\n"
+            + "place c: z(a to ground)",
+        ),
+    ),
+    Code(
+        "too-many-nodes",
+        "error",
+        "the assemblies used here are connected by more than {limit} nodes",
+        "",
+        "The nodes by which places and sections of chains are connected are counted, each as often as it is "
+        "named. Their number is limited.",
+        (
+            _FRAME + "assembly x(" + ", ".join(f"p{i}" for i in range(60)) + " to "
+            + ", ".join(f"q{i}" for i in range(60)) + ") { branch r: p1 to q1 = 1 Ω }\nchain c: 100000 of x("
+            + ", ".join(["a"] * 60) + " to " + ", ".join(["b"] * 60) + ")",
+        ),
+    ),
+    Code(
         "require-without-tolerance",
         "error",
         "`=` needs a tolerance",
