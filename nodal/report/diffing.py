@@ -81,15 +81,15 @@ def _figures(responses: dict[str, Response]) -> Iterable[str]:
 
 def _figure(row: FigureRow, result: Result) -> str:
     from nodal.report.comparison import FRACTIONS
-    from nodal.studies.compare import floor
+    from nodal.studies.compare import settled
 
+    result = settled(row, result)
     if result.value is None:
         bound = "" if result.bound is None else f", {result.bound[0]} {show(result.bound[1], result.unit)}"
         return f"not reached{bound}" if result.reason == "not-reached" else ""
-    value = 0.0 if abs(result.value) <= floor(row) else result.value
     if row.call.name in FRACTIONS:
-        return show(value * 100.0, "%")
-    return show(value, result.unit)
+        return show(result.value * 100.0, "%")
+    return show(result.value, result.unit)
 
 
 def _requirement(result: RequirementResult, *, several: bool) -> str:

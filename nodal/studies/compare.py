@@ -331,7 +331,7 @@ def _moved(
     for case in was:
         for row in rows:
             before, after = (side[case] for side in (was, now))
-            old, new = row.evaluate(before, drive), row.evaluate(after, drive)
+            old, new = (settled(row, row.evaluate(response, drive)) for response in (before, after))
             if old.reason == new.reason == "unavailable":
                 continue
             count += 1
@@ -381,6 +381,13 @@ def has_moved(row: FigureRow, old: Result, new: Result) -> bool:
     if not math.isfinite(largest):
         return True
     return not abs(new.value - old.value) <= max(MOVED * largest, floor(row))
+
+
+def settled(row: FigureRow, result: Result) -> Result:
+    """A figure without what rounding leaves of nothing."""
+    if result.value is None or abs(result.value) > floor(row):
+        return result
+    return replace(result, value=0.0)
 
 
 def floor(row: FigureRow) -> float:

@@ -29,7 +29,7 @@ from nodal.parts.inductor import Inductor
 from nodal.parts.resistor import Resistor
 from nodal.parts.source import CurrentSource, VoltageSource
 from nodal.studies import facts
-from nodal.studies.compare import Change, Comparison, changes_of_text, compare, has_moved, relative
+from nodal.studies.compare import Change, Comparison, changes_of_text, compare, has_moved, relative, settled
 from nodal.values import Drift, Rating, Tolerance, Trim, Value
 
 BASE = """nodal 1
@@ -381,6 +381,14 @@ NOT_REACHED = Result(None, "Hz", "not-reached", bound=(">=", 1e9))
 def test_what_counts_as_moved(figure: FigureRow, old: Result, new: Result, moved: bool) -> None:
     assert has_moved(figure, old, new) is moved
     assert has_moved(figure, new, old) is moved
+
+
+def test_what_rounding_leaves_of_nothing_is_nothing() -> None:
+    delay = row("group_delay", 1e8)
+    assert settled(delay, Result(3e-30, "s")) == Result(0.0, "s")
+    assert settled(delay, Result(-3e-12, "s")) == Result(-3e-12, "s")
+    assert settled(delay, NOT_REACHED) is NOT_REACHED
+    assert settled(row("gain", 1e3), Result(1e-300)).value == 1e-300
 
 
 def test_relative_changes() -> None:

@@ -143,6 +143,32 @@ def test_copies_are_told_by_their_names(converted: Repository, tmp_path: Path, n
     assert old.home.label.endswith(f":{FILE}")
 
 
+def test_which_tree_an_external_driver_gets(converted: Repository, tmp_path: Path) -> None:
+    copy = tmp_path / "git-blob-a1B2c3" / "probe.nodal"
+    copy.parent.mkdir()
+
+    def words(text: str, *, newest: bool) -> str:
+        copy.write_text(text)
+        name = converted.git("hash-object", str(copy)).strip()
+        home = blobs.load(str(copy), path=FILE, name=name, newest=newest).home
+        assert home is not None
+        return home.words
+
+    first = converted.git("rev-parse", "HEAD~1").strip()[:8]
+    last = converted.git("rev-parse", "HEAD").strip()[:8]
+    assert words(PROBE, newest=False) == f"commit {first}"
+    assert words(PROBE, newest=True) == f"commit {last}"
+    staged = PROBE.replace("10 pF", "11 pF")
+    converted.write(FILE, staged)
+    converted.git("add", "-A")
+    assert words(staged, newest=True) == words(staged, newest=False) == "the index"
+    converted.commit("second")
+    converted.write(FILE, PROBE.replace("10 pF", "12 pF"))
+    converted.commit("third")
+    assert words(PROBE, newest=True) == f"commit {last}"  # the one before it was replaced
+    assert words("nodal 1\n" + PROBE.partition("\n")[2] + "# new\n", newest=True) == "the work tree"
+
+
 def test_a_copy_with_other_line_ends_is_known(converted: Repository, tmp_path: Path) -> None:
     converted.write(".gitattributes", "*.nodal diff=nodal text eol=crlf\n")
     copy = tmp_path / "git-blob-a1B2c3" / "probe.nodal"
