@@ -140,7 +140,7 @@ class Inversion:
             part = t[first : first + step]
             bessel = spherical_bessel(np.multiply.outer(half, part))
             angle, length = np.multiply.outer(centre, part), 2 * half[:, None]
-            turned = np.concatenate([np.cos(angle) * length, -np.sin(angle) * length]).reshape(2, *angle.shape)
+            turned = np.stack([np.cos(angle) * length, -np.sin(angle) * length])
             sums = np.matmul(stacked, bessel).reshape(len(centre), 2, len(values), -1)
             result[:, first : first + step] = np.einsum("pcnt,cpt->nt", sums, turned)
         growth: Floats = np.exp(self.shift * t) / np.pi

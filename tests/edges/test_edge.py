@@ -169,6 +169,19 @@ def test_delayed_feedback(gain: float) -> None:
     assert_allclose(out(10e-9 * np.arange(21) + 9e-9), terms, rtol=1e-12)
 
 
+def test_front_at_the_end_of_the_window() -> None:
+    """A front that arrives with the last instant is there, though sums of delays are rounded."""
+    out = edge("""
+    source s: in to ground = 1 V
+    branch a: in to sum = 1 kΩ
+    branch b: sum to back = 1 kΩ
+    amplifier loop: sum, ground to back, ground { gain 1; delay 10 ns }
+    reading out: sum to ground times 2
+    """, 200e-9).readings["out"]
+    assert sum([10e-9] * 20) > 200e-9
+    assert out(200e-9) == pytest.approx(2 - 0.5**20, rel=1e-14)
+
+
 SERIES = """
 source s: in to ground = 1 V
 branch path: in to out = 25 Ω -- 278.5116 nH
