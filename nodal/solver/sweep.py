@@ -189,6 +189,7 @@ class _Run:
         self.error[which, source][:, points] = np.where(better, error, old)
 
     def _extend(self, plan: Plan, point: int) -> None:
+        before: list[list[list[complex]]] | None = None  # by source, then values or slopes
         for attempt, digits in enumerate(_DIGITS):
             try:
                 order = None if attempt else plan.order
@@ -198,14 +199,18 @@ class _Run:
                 self.values[:, :, :, point] = np.inf
                 self.error[:, :, :, point] = np.inf
                 return
-            before = self.values[..., point].copy()
+            found: list[list[list[complex]]] = []
             for k, source in enumerate(self.sources):
-                results = self._exact_results(exact, self._source(source, point), before[:, k])
+                results = self._exact_results(exact, self._source(source, point))
+                found.append([values for values, _ in results])
                 for which, (values, error) in enumerate(results):
+                    if before is not None:
+                        _settle_vanished(values, error, before[k][which])
                     self.values[which, k, :, point] = values
                     self.error[which, k, :, point] = error
             if (self.error[..., point] <= TOLERANCE).all():
                 return
+            before = found
 
     def _settle_zeros(self, plan: Plan, point: int) -> None:
         """An output that is exactly zero at `point` and at a frequency with nothing special about it is zero
@@ -224,7 +229,7 @@ class _Run:
                     self.values[:, k, j], self.error[:, k, j] = 0.0, 0.0
 
     def _exact_results(
-        self, exact: Exact, source: Source, before: Complexes
+        self, exact: Exact, source: Source
     ) -> list[tuple[list[complex], list[float]]]:
         """(values, errors) of all outputs for one source, and those of the slopes where asked for."""
         x, correction = exact.solve(source)
@@ -232,7 +237,7 @@ class _Run:
         errors = [
             _relative(exact.output(o, correction), v, v) for o, v in zip(self.outputs, values, strict=True)
         ]
-        results = [_rounded(values, errors, before[0])]
+        results = [([complex(v) for v in values], errors)]
         if self.slopes:
             slopes = exact.pattern.exact_slopes(exact.s, exact.arithmetic)
             b = exact.spread([-k * d for k, d in zip(slopes, exact.drops(x), strict=True)])
@@ -242,7 +247,7 @@ class _Run:
                 _relative(exact.output(o, correction), d, v / exact.s)
                 for o, d, v in zip(self.outputs, slope_values, values, strict=True)
             ]
-            results.append(_rounded(slope_values, errors, before[1]))
+            results.append(([complex(v) for v in slope_values], errors))
         return results
 
 
@@ -253,13 +258,14 @@ def _relative(change: Any, value: Any, other: Any) -> float:
     return float(abs(change) / scale) if scale else float("inf")
 
 
-def _rounded(values: list[Any], errors: list[float], before: Complexes) -> tuple[list[complex], list[float]]:
-    """Doubles; an output that shrank with the digits it is computed with is rounding around an exact zero."""
-    result = [complex(v) for v in values]
+def _settle_vanished(values: list[complex], errors: list[float], before: list[complex]) -> None:
+    """What shrank with the digits it is computed with is rounding around an exact zero.
+
+    `before`: with fifty digits fewer at least. Compared with doubles it might be small, and no zero.
+    """
     for k, error in enumerate(errors):
-        if error > TOLERANCE and (values[k] == 0 or abs(result[k]) < 1e-20 * abs(before[k])):
-            result[k], errors[k] = 0j, 0.0
-    return result, errors
+        if error > TOLERANCE and abs(values[k]) <= 1e-30 * abs(before[k]):
+            values[k], errors[k] = 0j, 0.0
 
 
 class _Scratch:

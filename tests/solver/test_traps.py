@@ -208,3 +208,14 @@ def test_a_balanced_bridge_is_exactly_zero():
     solution = solve(net.system(), OMEGA * np.geomspace(1e3, 1e9, 4), [{drive: 1.0}], [{1: 1.0, 2: -1.0}])
     np.testing.assert_array_equal(solution.values, 0)
     np.testing.assert_array_equal(solution.error, 0)
+
+
+def test_a_difference_fifty_digits_below_its_voltages():
+    """Small where fifty digits are not enough, but no zero: the current of C2 through R (closed form)."""
+    net = Sketch(2)
+    net.capacitor(1, 0, 1e-9)
+    net.resistor(1, 2, 1e-21)
+    net.capacitor(2, 0, 1e-25)
+    solution = solve(net.system(), OMEGA * np.array([1e-6, 1e-5, 1e-4]), [{0: 1.0}], [{1: 1.0, 0: -1.0}])
+    np.testing.assert_allclose(solution.values[0, 0], -1e-21 * 1e-25 / 1e-9, rtol=1e-12)
+    assert solution.error.max() <= 1e-11
