@@ -240,7 +240,8 @@ def _without_value(item: RequirementItem, result: Result) -> RequirementResult:
     if side == asked.relation and margin >= 0.0:
         reason = f"not reached, so {_BEYOND[side]} {shown}"
         return _result(item, "pass", value, margin, unit, bound=side, reason=reason)
-    reason = f"not reached within the sweep, so {_BEYOND[side]} {shown}, which proves nothing here"
+    where = "window" if BY_NAME[asked.figure.name].domain == "edge" else "sweep"
+    reason = f"not reached within the {where}, so {_BEYOND[side]} {shown}, which proves nothing here"
     return _result(item, "error", bound=side, reason=reason)
 
 

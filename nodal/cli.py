@@ -11,7 +11,7 @@ import dataclasses
 import itertools
 import os
 import sys
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import IO, TYPE_CHECKING, Any, NoReturn, TypeVar
 
@@ -290,6 +290,120 @@ def figures(options: Options, file: str, low: str | None, high: str | None, for_
 
 
 @main.command()
+@click.argument("file")
+@click.option("--edge", "ramp", metavar="T", help="A linear ramp of whole duration T, in seconds or as 1ns.")
+@click.option("--step", "step", is_flag=True, help="An ideal step.")
+@click.option("--over", metavar="T", help="How long it is watched.")
+@click.option("--points", type=click.IntRange(min=2, max=100_000), metavar="N",
+              help="Most samples: 500 unless given; the text table has fewer.")  # fmt: skip
+@_options(_DESIGN, _OUTPUT)
+def edge(
+    options: Options, file: str, ramp: str | None, step: bool, over: str | None, points: int | None
+) -> None:
+    """What readings and contacts do after an edge, in volts, and the figures of it.
+
+    Every reading, and every contact loaded and undisturbed, in all cases, for the `edge` or `step` of FILE
+    unless given. Samples stand where the curves move. --case chooses cases.
+    """
+    from dataclasses import replace
+
+    from nodal.figure_set import edge_figures
+    from nodal.report import data, terminal
+    from nodal.report import edge as report
+    from nodal.response import Response, Unavailable
+
+    if ramp is not None and step:
+        raise click.UsageError("--edge does not go with --step")
+    design = _load(file)
+    models = _models(design, options, default_all=True)
+    wanted = "0" if step else ramp
+    found: dict[str, report.EdgeAnswer] = {}
+    for case, model in _slow(models.items(), len(models), options):
+        network = replace(model.network, stimulus=_stimulus(model.network, wanted, over))
+        try:
+            drive = _drive(network, options.drive)
+            found[case] = report.answer(Response(network), drive, points, text=options.form == "text")
+        except Unavailable as why:
+            _fail("no-solution", reason=f"case {case}: {why}" if len(models) > 1 else str(why))
+    if options.form == "json":
+        text = data.dumps(data.envelope(file, {case: report.edge_case(a) for case, a in found.items()}))
+    elif options.form == "csv":
+        text = report.edge_csv(found)
+    else:
+        page = _page(options)
+        for case, answer in found.items():
+            report.edge_text(page, case, design.title, answer)
+        figures = edge_figures({case: answer.response for case, answer in found.items()}, options.drive)
+        if figures.rows:
+            terminal.figure_table(page, figures)
+        caution = terminal.caution(answer.response.network for answer in found.values())
+        if caution:
+            page.add("", caution)
+        text = page.text()
+    _finish(design, options, text)
+
+
+def _stimulus(network: Any, ramp: str | None, over: str | None) -> Any:
+    """The edge of the call, what is left out taken from the file's."""
+    from nodal.network import Stimulus
+
+    own = network.stimulus
+    if own is None and ramp is None:
+        _fail("no-edge", reason="the file has no edge and the call gives none",
+              hint="add --edge 1ns --over 100ns, or the statement: edge 1 ns over 100 ns")  # fmt: skip
+    if own is None and over is None:
+        _fail("no-edge", reason="the file does not say how long the edge is watched", hint="add --over 100ns")
+    rises = own.ramp if ramp is None else _time(ramp)
+    window = own.window if over is None else _time(over)
+    top = own.top_at if own is not None else None
+    if not window > 0.0:
+        _fail("bad-edge", problem="the edge is watched for no time", hint="give --over more than zero")
+    if rises > window:
+        _fail("bad-edge", problem="the edge takes longer than it is watched", hint="give --over more")
+    if top is not None and top > window:
+        _fail("bad-edge", problem="the top is read after the time watched", hint="give --over more")
+    return Stimulus(rises, window, top)
+
+
+@main.command()
+@click.argument("file")
+@click.option("--lumped", is_flag=True, help="Take cables, loss and delays for lumped parts, as a guide.")
+@_options(_DESIGN, _OUTPUT)
+def poles(options: Options, file: str, lumped: bool) -> None:
+    """Poles of the network and zeros of each reading.
+
+    With natural frequency, damping ratio and time constant; unstable ones are flagged. Networks with cables,
+    dielectric loss or delays have no finite set of them: --lumped gives what the lumped parts make.
+    """
+    from nodal.poles import PolesAndZeros, poles_and_zeros, unlumped
+    from nodal.report import data
+    from nodal.report import edge as report
+    from nodal.response import Unavailable
+
+    design = _load(file)
+    models = _models(design, options, default_all=False)
+    found: dict[str, PolesAndZeros] = {}
+    for case, model in models.items():
+        network = model.network
+        try:
+            found[case] = poles_and_zeros(network, _drive(network, options.drive), lumped=lumped)
+        except Unavailable as why:
+            hint = "add --lumped for what the lumped parts make" if unlumped(network) and not lumped else ""
+            _fail("no-poles", reason=str(why), hint=hint)
+    if options.form == "json":
+        cases = {case: report.poles_case(each) for case, each in found.items()}
+        text = data.dumps(data.envelope(file, cases))
+    elif options.form == "csv":
+        text = report.poles_csv(found)
+    else:
+        page = _page(options)
+        for case, each in found.items():
+            report.poles_text(page, case, design.title, each)
+        text = page.text()
+    _finish(design, options, text)
+
+
+@main.command()
 @click.argument("designs", nargs=-1, required=True, metavar="OLD NEW")
 @click.option("--as-git-driver", is_flag=True, help="Take what git gives an external diff driver.")
 @click.option("--exit-code", is_flag=True, help="Status 1 where anything differs.")
@@ -520,6 +634,35 @@ def _progress(answers: Iterator[_Answer], total: int, options: Options) -> Itera
         yield from bar.track(answers, total=total, description="")
 
 
+_Item = TypeVar("_Item")
+
+
+def _slow(items: Iterable[_Item], total: int, options: Options) -> Iterator[_Item]:
+    """The same items, with a bar on the terminal for what takes beyond a second."""
+    import time
+
+    if options.quiet or not sys.stderr.isatty():
+        yield from items
+        return
+    from rich.console import Console
+    from rich.progress import Progress
+
+    console = Console(stderr=True, no_color=not _colored(sys.stderr, options.color))
+    bar = Progress(console=console, transient=True)
+    started = time.monotonic()
+    try:
+        for done, item in enumerate(items):
+            if done and not bar.tasks and time.monotonic() - started > 1.0:
+                bar.add_task("", total=total)
+                bar.start()
+            if bar.tasks:
+                bar.update(bar.tasks[0].id, completed=done)
+            yield item
+    finally:
+        if bar.tasks:
+            bar.stop()
+
+
 def _brush(color: str) -> Callable[[str, str], str]:
     """Paints words where color is wanted on standard output."""
     colored = _colored(sys.stdout, color)
@@ -587,6 +730,27 @@ def _check_nodes(network: Any, names: Sequence[str]) -> None:
             _fail("unknown-node", name=name, hint=_nearest(name, network.nodes))
 
 
+_NUMBER = r"\s*([0-9]+(?:\.[0-9]+)?(?:[eE][-+]?[0-9]{1,3})?)\s*(\S*)\s*"
+
+
+def _time(text: str) -> float:
+    """Seconds from "1e-9", "10ns", "0"."""
+    import math
+    import re
+
+    from nodal.language import units
+
+    found = re.fullmatch(_NUMBER, text)
+    scanned = units.scan_unit(found[2]) if found and found[2] else "s"
+    if found is None or scanned is None or units.dimension_of(scanned) != units.SECOND:
+        hint = "write seconds or a number in s, ms, µs, ns or ps"
+        _fail("bad-edge", problem=f'"{text}" is not a time', hint=hint)
+    value = units.to_number(found[1], scanned)
+    if not math.isfinite(value):
+        _fail("bad-edge", problem=f'"{text}" is not a time', hint="it is beyond any number")
+    return value
+
+
 def _frequency(text: str) -> float:
     """Hertz from "1e6", "10MHz", "10 kHz", "0"."""
     import math
@@ -594,7 +758,7 @@ def _frequency(text: str) -> float:
 
     from nodal.language import units
 
-    found = re.fullmatch(r"\s*([0-9]+(?:\.[0-9]+)?(?:[eE][-+]?[0-9]{1,3})?)\s*(\S*)\s*", text)
+    found = re.fullmatch(_NUMBER, text)
     if found is None:
         _fail("bad-frequency", text=text, hint="write hertz or a number with a unit: 1e6, 10MHz, 0")
     digits, unit = found.groups()

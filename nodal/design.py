@@ -29,7 +29,9 @@ from nodal.network import Network
 from nodal.place import Place
 
 if TYPE_CHECKING:
+    from nodal.edge import EdgeResponse
     from nodal.language.quantity import Quantity
+    from nodal.poles import PolesAndZeros
     from nodal.response import Response
     from nodal.topology import Finding
 
@@ -232,6 +234,37 @@ class Model:
         Raises KeyError for a drive that does not exist, ValueError where a drive has to be chosen.
         """
         return Sweep(self, np.asarray(frequencies, dtype=np.float64), self.drive(drive))
+
+    def edge(
+        self, *, drive: str | None = None, ramp: float | None = None, window: float | None = None
+    ) -> EdgeResponse:
+        """Readings and contacts after an edge, in volts: the file's, or one of duration `ramp` (s, 0 for an
+        ideal step) watched for `window` seconds.
+
+        Raises `nodal.response.Unavailable` where there is none, and as `sweep` does.
+        """
+        from nodal.edge import edge_response
+        from nodal.figures import edge as figures
+        from nodal.network import Stimulus
+        from nodal.response import Unavailable
+
+        chosen, own = self.drive(drive), self.network.stimulus
+        if ramp is None and window is None:
+            found = edge_response(self.network, drive=chosen)
+            figures.keep(self.response, found)
+            return found
+        if own is None and window is None:
+            raise Unavailable("the file has no edge, so that `window` has to be given")
+        stimulus = Stimulus(
+            ramp if ramp is not None else own.ramp if own else 0.0, window or (own.window if own else 0.0)
+        )
+        return edge_response(self.network, drive=chosen, stimulus=stimulus)
+
+    def poles(self, *, drive: str | None = None, lumped: bool = False) -> PolesAndZeros:
+        """Poles of the network and zeros of its readings. See `nodal.poles.poles_and_zeros`."""
+        from nodal.poles import poles_and_zeros
+
+        return poles_and_zeros(self.network, self.drive(drive), lumped=lumped)
 
     def drive(self, name: str | None = None) -> str:
         """The drive of that name, or the default one; ValueError where there is none."""

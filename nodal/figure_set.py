@@ -87,6 +87,38 @@ def figures(responses: Mapping[str, Response], drive: str | None, span: Span | N
     return FiguresAnswer(kept, shown, spans)
 
 
+def edge_figures(responses: Mapping[str, Response], drive: str | None) -> FiguresAnswer:
+    """What is asked about the edges of the cases: the same for every reading, and whatever requirements ask.
+
+    Rows that no case can fill are left out, unless required.
+    """
+    networks = [response.network for response in responses.values()]
+    wanted = [row for row in required(networks) if BY_NAME[row.call.name].domain == "edge"]
+    rows: list[FigureRow] = []
+    for name in dict.fromkeys(reading.name for network in networks for reading in network.readings):
+        rows += (FigureRow(name, call) for call in _edge_calls(name))
+        rows += (row for row in wanted if row.subject == name)
+    rows = list(dict.fromkeys(rows))
+    cases = {
+        case: {row.label: row.evaluate(response, drive) for row in rows}
+        for case, response in responses.items()
+    }
+    kept = tuple(
+        row for row in rows
+        if row.required or any(results[row.label].reason != "unavailable" for results in cases.values())
+    )
+    shown = {case: {row.label: results[row.label] for row in kept} for case, results in cases.items()}
+    return FiguresAnswer(kept, shown, {})
+
+
+def _edge_calls(name: str) -> Iterable[FigureCall]:
+    for figure in ("rise", "fall", "overshoot", "preshoot"):
+        yield FigureCall(figure, (name,), f"{figure}({name})")
+    yield FigureCall("settling", (name, 0.02), f"settling({name}, 2 %)")
+    for figure in ("droop", "propagation_delay", "response_time"):
+        yield FigureCall(figure, (name,), f"{figure}({name})")
+
+
 def choose(
     responses: Mapping[str, Response], drive: str | None, spans: Mapping[str, Span], explicit: Span | None
 ) -> Iterable[FigureRow]:

@@ -40,6 +40,9 @@ _FINE = 1e-11
 _NOTABLE = 1e-9
 """Jumps and bends below this part of the largest are left to the polynomials to find."""
 
+_ROUNDING = 1e-12
+"""Of an instant."""
+
 _MOST_BREAKS = 100
 _FIRST_ARRIVALS = 12
 
@@ -185,8 +188,8 @@ def _at_contact(response: Response, contact: str, reading: str) -> EdgeResponse:
     for node in (shown.a, shown.b):
         if node not in present:
             raise Unavailable(
-                f'reading "{reading}" is taken at "{network.nodes[node]}" in the circuit under test, which an '
-                f'edge at contact "{contact}" replaces; leave the contact out'
+                f'reading "{reading}" is taken at "{network.nodes[node]}" in the circuit under test, which '
+                f'an edge at contact "{contact}" replaces; leave the contact out'
             )
     return edge_response(network, readings=[reading], contacts=())
 
@@ -321,7 +324,8 @@ def propagation_delay(asked: Asked) -> Result:
     found = _of(asked)
     if not len(found.up(MIDDLE)):
         return Result(None, "s", "not-reached", bound=(">=", found.window - found.stimulus.ramp / 2))
-    return Result(found.middle - found.stimulus.ramp / 2)
+    delay = found.middle - found.stimulus.ramp / 2
+    return Result(delay if abs(delay) > _ROUNDING * found.middle else 0.0)
 
 
 @dataclass(frozen=True)

@@ -79,8 +79,8 @@ def figure(result: Result) -> dict[str, Any]:
     """{"value", "unit"}, with "reason" and "bound" or "message" where there is no value; extras where
     they exist.
 
-    An infinite value is null with the reason "infinite". Extras: "at_hz" (where an extreme stands) and
-    "crossings".
+    An infinite value is null with the reason "infinite". Extras: "at_hz" or "at_s" (where an
+    extreme stands) and "crossings".
     """
     answer: dict[str, Any] = {"value": number(result.value), "unit": result.unit}
     if result.reason is not None:
@@ -93,6 +93,8 @@ def figure(result: Result) -> dict[str, Any]:
         answer["message"] = result.message
     if result.frequency is not None:
         answer["at_hz"] = number(result.frequency)
+    if result.instant is not None:
+        answer["at_s"] = number(result.instant)
     if result.crossings:
         answer["crossings"] = [
             {"frequency_hz": c.frequency, "direction": c.direction} for c in result.crossings

@@ -195,10 +195,15 @@ def _polar(values: NDArray[np.complex128]) -> tuple[NDArray[np.float64], NDArray
 
 
 def figures(page: Page, file: str, title: str, drive: str | None, answer: FiguresAnswer) -> None:
-    """A table of figures with the cases side by side, then what needs a sentence."""
+    """A heading and the table of figures."""
     spans = dict.fromkeys(answer.spans.values())
     sweeps = [f"{numbers.frequency(low)} to {numbers.frequency(high)}" for low, high in spans]
     _heading(page, title, [file, f"drive {drive}" if drive else "", " and ".join(sweeps)])
+    figure_table(page, answer)
+
+
+def figure_table(page: Page, answer: FiguresAnswer) -> None:
+    """The cases side by side, then what needs a sentence."""
     sections: dict[int, str] = {}
     for number, row in enumerate(answer.rows):
         if number == 0 or answer.rows[number - 1].subject != row.subject:
@@ -221,7 +226,7 @@ def figure(row: FigureRow, result: Result) -> str:
     if result.value is None:
         return numbers.NOTHING
     name = row.call.name
-    if name in ("flatness", "peaking", "error"):
+    if name in ("flatness", "peaking", "error", "overshoot", "preshoot", "droop"):
         return numbers.part_of_one(result.value if abs(result.value) > _ROUNDING else 0.0)
     if name == "disturbance":  # computed without a difference, right however small
         return numbers.part_of_one(result.value)
@@ -245,7 +250,7 @@ def _notes_on(label: str, result: Result) -> Iterable[str]:
     """What was not reached, all crossings of a bandwidth, why a cell is empty."""
     if result.reason == "not-reached" and result.bound is not None:
         word = "above" if result.bound[0] == ">=" else "below"
-        yield f"{label}: not reached, so {word} {numbers.quantity(result.bound[1], 'Hz', trim=True)}"
+        yield f"{label}: not reached, so {word} {numbers.quantity(result.bound[1], result.unit, trim=True)}"
     if result.message:
         yield f"{label}: {result.message}"
     if len(result.crossings) > 1:

@@ -209,10 +209,10 @@ class Panels:
 
 
 def panels(
-    curves: Callable[[Floats], Floats], breaks: Sequence[float] | Floats, tolerance: Callable[[Floats], Floats]
+    curves: Callable[[Floats], Floats], breaks: Sequence[float] | Floats,
+    tolerance: Callable[[Floats], Floats],
 ) -> Panels:
-    """Several functions at once, (n_functions, n_times), as `piecewise` does it with one; tolerances for
-    each."""
+    """Several functions at once, (n_functions, n_times), as `piecewise` does one; a tolerance each."""
     given = np.unique(np.asarray(breaks, dtype=np.float64))
     low, high, behind = _first_panels(given)
     kept: list[tuple[Floats, Floats]] = []

@@ -70,6 +70,32 @@ CALL: tuple[Code, ...] = (
         "The frequencies come from the options --at or --from and --to, else from the `sweep` of the file.",
     ),
     Code(
+        "no-edge",
+        "error",
+        "{reason}",
+        "{hint}",
+        "The edge comes from the statement `edge` or `step` of the file, or from the options --edge or "
+        "--step together with --over.",
+    ),
+    Code(
+        "bad-edge",
+        "error",
+        "{problem}",
+        "{hint}",
+        "Times on the command line are seconds (1e-9) or carry a unit (1ns). The edge lies within the time "
+        "it is watched for, which is above zero.",
+    ),
+    Code(
+        "no-poles",
+        "error",
+        "{reason}",
+        "{hint}",
+        "A network of lumped parts has as many poles as it has independent capacitors and inductors. "
+        "Cables, dielectric loss and delays have infinitely many, or none. With --lumped a cable counts as "
+        "one section of inductance and capacitance, dielectrics as without loss, amplifiers as without "
+        "delay: a guide to resonances far below the cable's quarter wave.",
+    ),
+    Code(
         "bad-span",
         "error",
         "a sweep from {low} to {high} is empty",
