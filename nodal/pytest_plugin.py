@@ -92,11 +92,9 @@ def _matches(path: str, pattern: str) -> bool:
 def pytest_xdist_make_scheduler(config: pytest.Config, log: Any) -> Generator[None, Any, Any]:
     """Keep what stands in one file on one worker where xdist would deal out items singly."""
     scheduler = yield
-    if type(scheduler).__module__ != "xdist.scheduler.load":
-        return scheduler
-    from nodal.pytest_xdist import LoadScheduling
+    from nodal.pytest_xdist import by_design
 
-    return LoadScheduling(scheduler, config, log)
+    return by_design(scheduler, config, log)
 
 
 def pytest_terminal_summary(terminalreporter: pytest.TerminalReporter) -> None:

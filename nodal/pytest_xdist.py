@@ -5,16 +5,26 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Any
 
-from xdist.scheduler import LoadScopeScheduling
+from xdist import scheduler as xdist
 
 SUFFIX = ".nodal"
+
+
+def by_design(scheduler: Any, config: Any, log: Any) -> Any:
+    """In place of one of xdist's schedulers that deal out single items, one that knows designs; any other is
+    left as it is."""
+    if type(scheduler) is xdist.LoadScheduling:
+        return LoadScheduling(scheduler, config, log)
+    if type(scheduler) is xdist.LoadGroupScheduling:
+        return LoadGroupScheduling(config, log)
+    return scheduler
 
 
 class LoadScheduling:
     """xdist's scheduler of that name until all items are known, and for good if none belongs to a design;
     otherwise one that keeps the items of each design together.
 
-    It bears the name of the other because xdist prints it.
+    It bears the name of the other because xdist prints that before a choice can be made.
     """
 
     def __init__(self, scheduler: Any, config: Any, log: Any) -> None:
@@ -36,23 +46,24 @@ class LoadScheduling:
         if not self._settled:
             self._settled = True
             if any(_file(item).endswith(SUFFIX) for items in self._collections.values() for item in items):
-                self._scheduler = self._by_file()
+                self._scheduler = self._grouped()
         self._scheduler.schedule()
 
-    def _by_file(self) -> ByDesign:
-        scheduler = ByDesign(self._config, self._log)
+    def _grouped(self) -> LoadGroupScheduling:
+        scheduler = LoadGroupScheduling(self._config, self._log)
         for node in self._scheduler.nodes:
             scheduler.add_node(node)
             scheduler.add_node_collection(node, self._collections[node])
         return scheduler
 
 
-class ByDesign(LoadScopeScheduling):  # type: ignore[misc]
-    """The items of a design are one piece of work; every other item is one by itself."""
+class LoadGroupScheduling(xdist.LoadGroupScheduling):  # type: ignore[misc]
+    """xdist's scheduler of that name, to which the items of a design are a group whether or not their names
+    say so (they do not with every pair of versions of pytest and xdist)."""
 
-    def _split_scope(self, nodeid: str) -> str:
+    def _split_scope(self, nodeid: str) -> Any:
         file = _file(nodeid)
-        return file if file.endswith(SUFFIX) else nodeid
+        return file if file.endswith(SUFFIX) else super()._split_scope(nodeid)
 
 
 def _file(nodeid: str) -> str:
