@@ -22,6 +22,7 @@ Shares = list[tuple[int, int, float]]
 """(row or entry, term, weight)"""
 
 _ALL = 0b1111111
+_STRIDES = (3, 2)
 
 _EPSILON = float(np.finfo(float).eps)
 
@@ -251,26 +252,25 @@ class Giving:
             (size + len(self._followed), size + len(differences)),
         )
         self._spoils = np.concatenate((pattern.spoils, pattern.spoils))
+        # (row, column, term, weight, number that spoils it)
         self._function = [
-            (row, column, term, weight)
-            for row, column, term, weight in zip(
-                rows.tolist(), columns.tolist(), terms.tolist(), weights.tolist(), strict=True
-            ) if term in pattern.functions
+            share for share in zip(
+                rows.tolist(), columns.tolist(), terms.tolist(), weights.tolist(), pattern.spoils.tolist(),
+                strict=True,
+            ) if share[2] in pattern.functions
         ] if pattern.functions else []
 
     @cached_property
     def _first(self) -> Any:
-        return self._spoilt(3)
+        return self._matrix(_STRIDES[0])
 
     @cached_property
     def _second(self) -> Any:
-        return self._spoilt(2)
+        return self._matrix(_STRIDES[1])
 
-    def _spoilt(self, stride: int) -> Any:
-        # Numbers that differ do so multiplied by the stride too, by something else for another (modulo 7).
+    def _matrix(self, stride: int) -> Any:
         rows, columns, values, shape = self._summands
-        values = values * (1 + (stride * self._spoils % 7 - 3) * _EPSILON)
-        return compressed(rows, columns, values, shape)
+        return compressed(rows, columns, values * _spoilt(self._spoils, stride), shape)
 
     def remainder(
         self, drops: Complexes, s: Complexes, values: dict[int, Any], again: bool = False
@@ -284,8 +284,9 @@ class Giving:
             at, with_s = total[followed], total[row]
             np.multiply(with_s, s, with_s)
             np.add(at, with_s, at)
-        for row, column, term, weight in self._function:
-            total[row] += drops[column] * values[term] * weight
+        stride = _STRIDES[again]
+        for row, column, term, weight, spoil in self._function:
+            total[row] -= drops[column] * values[term] * (weight * _spoilt(spoil, stride))
         return total[:self._size]
 
 
@@ -301,6 +302,12 @@ def take_differences(differences: list[Weights], drops: Sequence[Complexes]) -> 
             at[:] = 0
             for unknown, weight in weights:
                 at += drops[unknown] * weight
+
+
+def _spoilt(numbers: Any, stride: int) -> Any:
+    """Factors off by up to three roundings. Numbers that differ give factors that do, apart by something else
+    for another stride (modulo 7)."""
+    return 1 + (stride * numbers % 7 - 3) * _EPSILON
 
 
 class Balance:

@@ -357,8 +357,8 @@ class _Block:
         self, b: Complexes, outputs: Sequence[Output], slopes: bool
     ) -> list[tuple[Complexes, Floats]]:
         """Corrections for as long as they help; (values, errors), and those of the slopes."""
-        x, small, values, change, blur = self._refine(b, outputs, None)
-        results = [(values, _ratio(change, values, blur))]
+        x, small, values, error = self._refine(b, outputs, None)
+        results = [(values, error)]
         if slopes:
             pattern = self.plan.pattern
             slopes_of_terms = np.repeat(pattern.c[:, None], len(self.s), axis=1).astype(complex)
@@ -366,20 +366,24 @@ class _Block:
                 slopes_of_terms[term] += value
             b = self.plan.balance.remainder(np.zeros_like(b), slopes_of_terms * self._drops(x, small))
             floor = np.abs(values / self.s)
-            _, _, slope, change, blur = self._refine(b, outputs, floor)
-            results.append((slope, _ratio(change, np.maximum(np.abs(slope), floor), blur)))
+            _, _, slope, error = self._refine(b, outputs, floor)
+            results.append((slope, error))
         return results
 
     def _refine(
         self, b: Complexes, outputs: Sequence[Output], floor: Floats | None
-    ) -> tuple[Complexes, Complexes, Complexes, Complexes, Floats]:
-        """(x, small, outputs, their last change, its blur); x and small are apart for small differences."""
+    ) -> tuple[Complexes, Complexes, Complexes, Floats]:
+        """(x, small, outputs, their errors); x and small are kept apart for small differences.
+
+        Where the first correction was not enough, two in a row must be: where even sums of twice the
+        precision are rounding, some correction comes out small by chance.
+        """
         kernel = self.plan.folded
         coefficients = self.plan.pattern.coefficients(self.s, self.functions)
         x = b.copy()
         kernel.solve(self.w, list(x), self.spare)
         small = np.zeros_like(x)
-        error: Floats | None = None
+        change: Floats | None = None
         for _ in range(_STEPS):
             correction = self.plan.balance.remainder(b, coefficients * self._drops(x, small))
             kernel.solve(self.w, list(correction), self.spare)
@@ -387,15 +391,15 @@ class _Block:
             total = x + small
             small -= total - x
             x = total
-            change = self._outputs(outputs, correction)
             values = self._outputs(outputs, x) + self._outputs(outputs, small)
             scale = values if floor is None else np.maximum(np.abs(values), floor)
             blur = self._blur(outputs, correction)
-            last, error = error, _ratio(change, scale, blur)
+            last, change = change, _ratio(self._outputs(outputs, correction), scale, blur)
+            error = change if last is None else np.maximum(change, last)
             waiting = error > TOLERANCE
-            if not waiting.any() or (last is not None and not (error[waiting] < 0.25 * last[waiting]).any()):
+            if not waiting.any() or (last is not None and not (change[waiting] < 0.25 * last[waiting]).any()):
                 break
-        return x, small, values, change, blur
+        return x, small, values, error
 
     def _drops(self, x: Complexes, small: Complexes) -> Complexes:
         return product(self.plan.pattern.taking, x) + product(self.plan.pattern.taking, small)

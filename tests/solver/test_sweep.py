@@ -252,3 +252,21 @@ def test_points_that_cannot_be_solved_for(s):
 def test_indices_outside_the_system():
     with pytest.raises(IndexError):
         solve(System(1, (Term(((1, 1.0),), ((0, 1.0),), g=1.0),)), [1j], [{0: 1.0}], [{0: 1.0}])
+
+
+def test_a_function_beside_constants_in_one_equation():
+    """1/(1/R + √s): the correction must take the function with its sign (closed form)."""
+
+    class SquareRoot:
+        count = 1
+
+        def evaluate(self, s, arithmetic):
+            return (arithmetic.sqrt(s),)
+
+    node = ((0, 1.0),)
+    system = System(1, (Term(node, node, g=1 / 50), Term(node, node, f=0)), (SquareRoot(),))
+    s = 2j * math.pi * np.geomspace(1e-9, 1e9, 400)
+    solution = solve(system, s, [{0: 1.0}], [{0: 1.0}])
+    np.testing.assert_allclose(solution.values[0, 0], 1 / (1 / 50 + np.sqrt(s)), rtol=1e-14)
+    assert solution.error.max() <= 1e-13
+    assert not solution.refined.any()
