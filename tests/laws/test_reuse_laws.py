@@ -94,6 +94,8 @@ def test_a_place_equals_its_statements_written_out(text: str, chooser: random.Ra
     assembly, nodes = as_assembly(text, chooser)
     used = nominal(assembly + f"place inner: all({', '.join(nodes)})\n")
     assert listed(used, without("inner.")) == listed(nominal(text))
+    outer = {"ground", *nodes, *NODE.findall("\n".join(divided(text)[1]))}
+    assert {name for name in used.nodes if not name.startswith("inner.")} <= outer
 
 
 @settings(max_examples=25)
