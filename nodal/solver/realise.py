@@ -299,10 +299,13 @@ def _band_edges(pattern: Pattern, degree: int, origin: int, pace: float) -> list
     plan = make_plan(pattern.system, points[[40, 80, 110, 140]], pattern)
     log_det = Factored(plan, points).log_det()
     below = np.gradient(log_det, exponents)
-    inside = (np.abs(below - origin) > 0.02) & (np.abs(below - degree) > 0.02)
-    if not inside.any():
+    if degree == origin:
         return [pace / 10, pace * 10]
-    low, high = float(exponents[inside][0]), float(exponents[inside][-1])
+    # Where four samples in a row count only those at the origin, or all: rounding spoils what lies beyond.
+    none, all_of_them = (_runs(np.abs(below - count) <= 0.02) for count in (origin, degree))
+    last = int(all_of_them[0]) if len(all_of_them) else len(exponents) - 1
+    none = none[none < last]
+    low, high = float(exponents[none[-1] + 3 if len(none) else 0]), float(exponents[last])
     count = max(1, math.ceil((high - low) / _BAND))
     edges = [low]
     density = np.gradient(below, exponents)
@@ -311,6 +314,11 @@ def _band_edges(pattern: Pattern, degree: int, origin: int, pace: float) -> list
         near = np.flatnonzero(np.abs(exponents - wanted) <= 0.75)
         edges.append(float(exponents[near[np.argmin(density[near])]]))
     return [10.0**e for e in [*edges, high]]
+
+
+def _runs(good: NDArray[np.bool_]) -> NDArray[np.intp]:
+    """Indices from which four in a row are good."""
+    return np.flatnonzero(good[:-3] & good[1:-2] & good[2:-1] & good[3:])
 
 
 def _gap(sizes: Floats, edge: float) -> float:

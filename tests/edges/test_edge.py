@@ -4,6 +4,7 @@ sweep."""
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -224,6 +225,39 @@ def test_both_methods_agree(monkeypatch: pytest.MonkeyPatch, body: str, ramp: fl
     difference = float(np.abs(direct(t) - other(t)).max())
     assert difference < 1e-12
     assert difference <= direct.error + other.error
+
+
+def test_estimate_of_poles_counts_the_mismatch(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Residues off by 3e-10 still pass; the estimate is then no less than what it does to the edge."""
+    from nodal.solver import edges, realise
+
+    exact = edge(SERIES, 100e-9).readings["out"]
+
+    def spoilt(system: Any, source: Any, outputs: Any, frequencies: Any, pace: float) -> Any:
+        found = realise.realise(system, source, outputs, frequencies, pace)
+        found = replace(found, residues=found.residues * (1 + 3e-10))
+        return realise._checked(found, system, source, outputs, np.zeros(0))
+
+    monkeypatch.setattr(edges, "realise", spoilt)
+    out = edge(SERIES, 100e-9).readings["out"]
+    assert out.method == POLES
+    t = np.linspace(0, 100e-9, 500)
+    actual = float(np.abs(out(t) - exact(t)).max())
+    assert actual > 1e-10
+    assert actual <= out.error <= 1000 * actual
+
+
+def test_slow_filter_behind_a_source() -> None:
+    """1 kΩ into 2 nF with 50 Ω: from 1/21 to 1 with 2.1 µs (elementary), though far above its pole
+    rounding spoils the determinant that tells where poles are."""
+    out = edge("""
+    source s: in to ground = 1 V behind 1 kΩ
+    branch filter: in to ground = 2 nF -- 50 Ω
+    reading out: in to ground
+    """, 1e-3).readings["out"]
+    assert out.method == POLES
+    t = np.concatenate([[0.0], np.geomspace(1e-9, 1e-3, 50)])
+    assert_allclose(out(t), 1 - 20 / 21 * np.exp(-t / 2.1e-6), rtol=1e-13)
 
 
 def test_values_at_both_ends() -> None:

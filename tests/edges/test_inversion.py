@@ -11,6 +11,7 @@ from numpy.testing import assert_allclose
 from scipy import special
 from scipy.optimize import brentq
 
+from nodal.solver import inversion
 from nodal.solver.inversion import NODES, Inversion, NotInverted, invert, spherical_bessel
 
 T = np.concatenate([[0.0], np.geomspace(1e-12, 1, 800)])
@@ -94,6 +95,18 @@ def test_estimate_is_true(name: str) -> None:
     actual = float(np.abs(found.edge(T)[0] - expected(T)).max())
     assert actual <= found.error[0] <= 1000 * max(actual, 1e-12)
     assert actual < 1e-12
+
+
+@pytest.mark.parametrize("most", [60, 70, 80])
+def test_estimate_is_true_where_panels_run_out(monkeypatch: pytest.MonkeyPatch, most: int) -> None:
+    """A delay that is left in H asks for more panels than there may be: the estimate says so, and not too
+    much."""
+    monkeypatch.setattr(inversion, "MOST_PANELS", most)
+    late, tau = 0.3, 5e-3
+    found = inverted(lambda s: np.exp(-late * s) / (1 + tau * s) ** 4)
+    actual = float(np.abs(found.edge(T)[0] - special.gammainc(4, np.maximum(T - late, 0) / tau)).max())
+    assert actual > 1e-11
+    assert actual <= found.error[0] <= 1000 * actual
 
 
 def test_times_of_the_open_rc_line() -> None:
