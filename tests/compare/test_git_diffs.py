@@ -167,6 +167,10 @@ def test_which_tree_an_external_driver_gets(converted: Repository, tmp_path: Pat
     converted.commit("third")
     assert words(PROBE, newest=True) == f"commit {last}"  # the one before it was replaced
     assert words("nodal 1\n" + PROBE.partition("\n")[2] + "# new\n", newest=True) == "the work tree"
+    converted.write(FILE, PROBE)
+    converted.git("add", "-A")
+    assert words(PROBE, newest=True) == "the index"  # put back, and not committed yet
+    assert words(PROBE, newest=False) == f"commit {first}"
 
 
 def test_a_copy_with_other_line_ends_is_known(converted: Repository, tmp_path: Path) -> None:
