@@ -684,9 +684,9 @@ class Response:
     def lightly_damped(self) -> Floats:
         """Frequencies (Hz) of poles with a damping ratio below 0.5, for search grids; may be empty.
 
-        In networks of more than 400 unknowns only the few poles nearest to each of some frequencies over the
-        sweep are sought. Cables count as one section of inductance and capacitance here, dielectrics as without
-        loss.
+        In networks of more than 400 unknowns only the few poles nearest to each of some frequencies over
+        the sweep are sought. Cables count as one section of inductance and capacitance here, dielectrics as
+        without loss.
         """
         return self._resonances
 

@@ -56,11 +56,11 @@ def poles(system: System, ignoring_functions: bool = False) -> Complexes:
 
 
 def poles_near(system: System, shifts: Complexes) -> Complexes:
-    """Some finite poles (rad/s) of a large lumped system: the few nearest to each shift, by inverse iteration.
+    """Some finite poles (rad/s) of a large lumped system: the few nearest to each shift.
 
-    Arnoldi's method on (G + σC)⁻¹C, whose eigenvalues are 1/(σ - s) (Ericsson and Ruhe 1980); only poles closer
-    to a shift than half its size are kept. What stands off the shifts is not found: for search grids. Functions
-    of s are left out.
+    Arnoldi's method on (G + σC)⁻¹C, whose eigenvalues are 1/(σ - s) (Ericsson and Ruhe 1980); only poles
+    closer to a shift than half its size are kept. What stands off the shifts is not found: for search grids.
+    Functions of s are left out.
     """
     pattern = Pattern(system)
     size = pattern.size

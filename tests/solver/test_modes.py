@@ -106,14 +106,14 @@ def test_poles_near_shifts_of_a_long_ladder():
 
     Textbook (the chain of beads, one end fixed, one free); value from memory.
     """
-    count, l, c = 300, 2e-7, 1e-11
+    count, henries, farads = 300, 2e-7, 1e-11
     net = Sketch(count + 1)
     net.source(1, 0)
     for k in range(1, count + 1):
-        net.inductor(k, k + 1, l)
-        net.capacitor(k + 1, 0, c)
+        net.inductor(k, k + 1, henries)
+        net.capacitor(k + 1, 0, farads)
     k = np.arange(1, count + 1)
-    expected = 2 / math.sqrt(l * c) * np.sin((2 * k - 1) * math.pi / (4 * count + 2))
+    expected = 2 / math.sqrt(henries * farads) * np.sin((2 * k - 1) * math.pi / (4 * count + 2))
     shifts = 1j * np.geomspace(expected[0], expected[-1], 12) * (1 + 0.01j)
     found = poles_near(net.system(), shifts)
     found = found[found.imag > 0]
