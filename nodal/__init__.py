@@ -1,7 +1,7 @@
 """nodal: the transfer function of a voltage-measuring chain, from a text description of it.
 
-`load` and `loads` read a design; see `nodal.design` for what can be asked of it. The public names are imported
-on first use, so that importing the package costs nothing.
+`load` and `loads` read a design; see `nodal.design` for what can be asked of it. The public names are
+imported on first use, so that importing the package costs nothing.
 """
 
 from __future__ import annotations
