@@ -149,6 +149,7 @@ class DesignFile(pytest.File):
 
         try:
             self._design: Design = load(self.label)
+            self._doubtful: set[str] = set()
         except DesignError:
             if is_shared(self.label):
                 return
@@ -182,6 +183,16 @@ class DesignFile(pytest.File):
                 if found.span is not None:
                     path, line = found.span.path, span_position(found.span, self._design.sources)[0][0]
                 warnings.warn_explicit(_said(found), NodalWarning, path, line)
+
+    def warn_of_error(self, case: str) -> None:
+        """Warns, once a case, where the curves behind its figures are less exact than they should be."""
+        from nodal.report.checks import NOTEWORTHY
+
+        worst = self.checks.response(case).quality.worst_estimated_error
+        if worst > NOTEWORTHY and case not in self._doubtful:
+            self._doubtful.add(case)
+            said = f"{case}: worst estimated relative error of the curves behind its figures: {worst:.1e}"
+            warnings.warn_explicit(said, NodalWarning, self.label, 1)
 
     def source_line(self, path: str, line: int) -> str:
         """Where a line stands, and its text as an excerpt shows it if that is known."""
@@ -242,6 +253,7 @@ class RequirementTest(_Test):
         from nodal.report.checks import found_text, margin_text
 
         result = self.file.checks.result(self.asked)
+        self.file.warn_of_error(self.asked.case)
         if result.status == "pass":
             return
         found, margin = found_text(result), margin_text(result)
@@ -280,6 +292,8 @@ class RecordTest(_Test):
         checks = self.file.checks
         known = checks.design.cases
         measured = measure(checks, [self.case]) if self.case in known else {}
+        if measured:
+            self.file.warn_of_error(self.case)
         changes = [c for c in records.compare(self.record, measured, known) if c.case == self.case]
         if not changes:
             return

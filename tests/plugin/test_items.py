@@ -289,6 +289,19 @@ def test_warnings_are_warnings(run, pytester) -> None:
     run(probe=ODD + "allow unused-let: spare\n").assert_outcomes(passed=3, failed=1)
 
 
+def test_doubtful_curves_are_warned_of_once_a_case(run, monkeypatch) -> None:
+    first = Response.__init__
+
+    def doubt(self: Response, *arguments: object) -> None:
+        first(self, *arguments)
+        self.quality.worst_estimated_error = 2.5e-7
+
+    monkeypatch.setattr(Response, "__init__", doubt)
+    result = run("--nodal-record", probe=LOW_PASS)
+    result.assert_outcomes(passed=5, failed=1, warnings=2)
+    result.stdout.fnmatch_lines(["*NodalWarning: slow: worst estimated relative error of *: 2.5e-07"])
+
+
 # Recorded figures
 
 
