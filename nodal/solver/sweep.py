@@ -42,6 +42,8 @@ _STEPS = 8
 _BLOCK_BYTES = 1 << 27
 _BLOCK_POINTS = (64, 1024)
 _DIGITS = (50, 100, 200)
+_MARGIN = 256.0
+"""How much more than the end of its digits a pair is trusted with."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -393,7 +395,9 @@ class _Block:
             x = total
             values = self._outputs(outputs, x) + self._outputs(outputs, small)
             scale = values if floor is None else np.maximum(np.abs(values), floor)
-            blur = self._blur(outputs, correction)
+            # A difference far below both of its unknowns ends where the digits of their pairs do, and before:
+            # the drops that make it end there too, and what they lose goes through the network.
+            blur = self._blur(outputs, correction) + _MARGIN * self._blur(outputs, small)
             last, change = change, _ratio(self._outputs(outputs, correction), scale, blur)
             error = change if last is None else np.maximum(change, last)
             waiting = error > TOLERANCE

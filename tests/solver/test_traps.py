@@ -219,3 +219,36 @@ def test_a_difference_fifty_digits_below_its_voltages():
     solution = solve(net.system(), OMEGA * np.array([1e-6, 1e-5, 1e-4]), [{0: 1.0}], [{1: 1.0, 0: -1.0}])
     np.testing.assert_allclose(solution.values[0, 0], -1e-21 * 1e-25 / 1e-9, rtol=1e-12)
     assert solution.error.max() <= 1e-11
+
+
+def test_a_difference_beyond_the_digits_of_its_pair():
+    """Nodes alike to 22 digits at the top of a plan for 16 decades: flagged or right (many-digit reference)."""
+    net = Sketch(12)
+    net.inductor(1, 0, 4.465363456351825e-05)
+    net.inductor(2, 1, 0.1595823594175724)
+    net.resistor(3, 2, 1 / 2.1265698438742196e-05)
+    net.capacitor(4, 0, 1.1979088101938787e-15)
+    net.inductor(5, 2, 0.0057952329831471566)
+    net.resistor(6, 0, 1 / 4.155492607785581)
+    net.inductor(7, 0, 2.9055533723678406e-06)
+    net.inductor(8, 7, 0.022205694645991085)
+    net.capacitor(9, 1, 5.175444985867266e-11)
+    net.inductor(10, 4, 5.27146340464624e-06)
+    net.capacitor(11, 2, 1.1173720719042806e-06)
+    net.resistor(12, 1, 1 / 3.4257319946151917e-09)
+    net.resistor(1, 6, 1 / 413.94950125271924)
+    net.capacitor(5, 9, 5.7118426768831514e-05)
+    net.capacitor(11, 7, 9.136558157835393e-06)
+    net.capacitor(5, 12, 1.0168150903983284e-05)
+    net.capacitor(5, 8, 5.371167664866411e-07)
+    net.inductor(4, 2, 7.739889506946928e-07)
+    net.resistor(11, 6, 1 / 52.47184396674687)
+    net.resistor(9, 1, 1 / 1.1743074471910297e-07)
+    net.inductor(3, 7, 0.00012511922731247145)
+    system, output = net.system(), {11: 1.0, 0: -1.0}
+    s = 1j * np.array([1.94823244e12, 1.91685141e-1, 4.03896773e1, 4.87955569e15])
+    solution = solve(system, s, [{0: 1.0}], [output])
+    for k, at in enumerate(s):
+        expected = reference(system, complex(at), {0: 1.0}, [output])[0]
+        off = abs(complex(solution.values[0, 0, k]) - expected) / abs(expected)
+        assert off <= 1e-10 or solution.error[0, 0, k] > 1e-11
