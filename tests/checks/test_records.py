@@ -219,6 +219,11 @@ def test_what_moved_what_is_new_stale_or_no_longer_reached() -> None:
     assert [c.change for c in found] == [None, None, pytest.approx(0.1, rel=1e-6), None, None, None]
 
 
+def test_a_bound_is_no_value() -> None:
+    (found,) = compare(TEXT, changed("bare", "bandwidth(m)", Measured(1e9, "Hz")))
+    assert (found.kind, found.before, found.after) == ("moved", ">= 1 GHz", "1 GHz")
+
+
 def test_a_case_that_is_not_asked_for_is_not_stale() -> None:
     record = records.parse(TEXT, PATH)
     some = {"nominal": FIGURES["nominal"]}
@@ -265,6 +270,10 @@ def test_what_can_be_zero_has_a_floor() -> None:
     assert not moved(0.9e-9, " ± 1 %")
     assert moved(1.1e-9, " ± 1 %")
     assert not moved(0.9e-8, " ± 1e-8")
+    for now, holds in ((1.000009e-4, True), (1.000011e-4, False)):
+        figures = changed("bare", "peaking(m)", Measured(now, "", floor=1e-9))
+        text = TEXT.replace('"peaking(m)" = "0"', '"peaking(m)" = "0.0001"')
+        assert (compare(text, figures) == []) == holds
 
 
 @pytest.mark.parametrize(
