@@ -346,6 +346,14 @@ def test_figures_that_are_gone_or_new(run, pytester) -> None:
     run().assert_outcomes(passed=5, failed=1)
 
 
+def test_a_record_is_written_once_for_all_cases(run, monkeypatch) -> None:
+    calls = []
+    first = checking.record_design
+    monkeypatch.setattr(checking, "record_design", lambda *given: calls.append(given) or first(*given))
+    run("--nodal-record", probe=LOW_PASS).assert_outcomes(passed=5, failed=1)
+    assert len(calls) == 1
+
+
 def test_nothing_is_recorded_unless_asked_for(run, pytester) -> None:
     run(probe=LOW_PASS)
     run("--nodal-record", "--collect-only")

@@ -42,17 +42,17 @@ def test_nothing_heavy_is_imported_before_a_design_is_met(pytester) -> None:
         """
         import sys
         def test_modules():
-            print([name for name in sys.modules if name.partition(".")[0] in
+            print([name for name in sorted(sys.modules) if name.partition(".")[0] in
                   ("nodal", "numpy", "scipy", "lark", "networkx", "mpmath", "rich", "quantiphy", "click")])
         """
     )
     # By way of the installed entry point, in a process of its own.
-    result = pytester.runpytest_subprocess("-s", "-p", "no:hypothesispytest", "-p", "no:xdist")
+    result = pytester.runpytest_subprocess("-s", "-p", "no:xdist")
     result.assert_outcomes(passed=1)
-    result.stdout.fnmatch_lines(["*['nodal', 'nodal.pytest_plugin']*"])
+    assert "['nodal', 'nodal.pytest_plugin']" in result.stdout.str()
     (pytester.path / "bench.nodal").write_text(DESIGN)
     result = pytester.runpytest_subprocess("-s", "-p", "no:xdist")
-    result.stdout.fnmatch_lines(["*'nodal.design'*"])
+    assert "'nodal.design'" in result.stdout.str()
 
 
 @pytest.mark.parametrize("options", [(), ("-n", "2")])
