@@ -696,7 +696,10 @@ def _models(design: Design, options: Options, *, default_all: bool) -> dict[str,
         if case not in design.cases:
             _fail("unknown-case", name=case, hint=_nearest(case, design.cases))
     cases = options.case or (design.cases if options.all_cases or default_all else design.cases[:1])
-    return {case: design.network(case, **lets) for case in dict.fromkeys(cases)}
+    models = {case: design.network(case, **lets) for case in dict.fromkeys(cases)}
+    for model in models.values():
+        design.diagnostics += [d for d in model.diagnostics if d not in design.diagnostics]
+    return models
 
 
 def _lets(options: Options) -> dict[str, str]:

@@ -104,7 +104,11 @@ class Design:
             topology(network, collector)
         if network is None or collector.failed:
             raise DesignError(distinct(collector.found), collector.sources)
-        return Model(network, case)
+        self.sources.update(collector.sources)
+        known = set(map(_key, self.diagnostics))
+        fresh = [finding for finding in distinct(collector.found) if _key(finding) not in known]
+        allowed = self._allowed() | network.allowed
+        return Model(network, case, tuple(f for f in fresh if (f.code, f.name) not in allowed))
 
     def lets(self, case: str = NOMINAL) -> Mapping[str, Quantity]:
         """What each `let` comes to in a case, by name."""
@@ -127,8 +131,12 @@ class Design:
         found = distinct(collector.found)
         if collector.failed:
             raise DesignError(found, self.sources)
-        allowed = frozenset().union(*(network.allowed for network in self._networks.values()))
+        allowed = self._allowed()
         self.diagnostics = [finding for finding in found if (finding.code, finding.name) not in allowed]
+
+    def _allowed(self) -> frozenset[tuple[str, str]]:
+        """What `allow` silences in any case."""
+        return frozenset().union(*(network.allowed for network in self._networks.values()))
 
     def _expand(self, case: str, collector: Collector, overrides: Mapping[str, Override]) -> Expanded:
         return expand(self.program, case, collector, overrides)
@@ -202,16 +210,15 @@ def span_of(place: Place, sources: Mapping[str, str]) -> Span | None:
 
 def distinct(found: Iterable[Diagnostic]) -> list[Diagnostic]:
     """Each finding once: cases share most of their statements, and so most of their mistakes."""
-    seen: set[tuple[Any, ...]] = set()
-    kept = []
+    kept: dict[tuple[Any, ...], Diagnostic] = {}
     for finding in found:
-        span = finding.span
-        place = (span.path, span.start, span.end) if span is not None else None
-        key = (finding.code, place, finding.message)
-        if key not in seen:
-            seen.add(key)
-            kept.append(finding)
-    return kept
+        kept.setdefault(_key(finding), finding)
+    return list(kept.values())
+
+
+def _key(finding: Diagnostic) -> tuple[Any, ...]:
+    span = finding.span
+    return finding.code, (span.path, span.start, span.end) if span is not None else None, finding.message
 
 
 @dataclass(frozen=True)
@@ -220,6 +227,8 @@ class Model:
 
     network: Network
     case: str = NOMINAL
+    diagnostics: tuple[Diagnostic, ...] = field(default=(), compare=False)
+    """Warnings and notes that the design has not, because of values given in a call."""
 
     @cached_property
     def response(self) -> Response:

@@ -131,6 +131,7 @@ def _fields(
                 evaluator.reject("beyond-one", expression.span, what=f"the {name} of a stock")
             if name in _AT:
                 at[name] = evaluator.positive(field.values[0][1], scope, units.HERTZ, "a frequency").nominal
+            evaluator.check_spread(quantity, expression.span, stock.name.text)
             fields[name] = randomised(quantity, f"{scope.prefix}{stock.name.text}.{name}")
         except Rejected:
             failed = True
@@ -211,6 +212,7 @@ def expand_cable(cable: syntax.Cable, data: StockData, frame: Frame) -> None:
     length = evaluator.positive(
         cable.length, frame.scope, units.METRE, "the length of a cable", zero=True, qualifiers=SPREAD
     )
+    evaluator.check_spread(length, cable.length.span, frame.prefix + cable.name.text)
     core1, shield1 = (frame.node(word) for word in cable.near)
     core2, shield2 = (frame.node(word) for word in cable.far)
     shielded = any(

@@ -8,6 +8,8 @@ from collections.abc import Iterable, Sequence
 from dataclasses import replace
 from typing import Any, NoReturn
 
+import numpy as np
+
 from nodal import geometry
 from nodal.language import syntax, units
 from nodal.language.diagnostics import Collector
@@ -19,6 +21,8 @@ from nodal.values import Drift, Rating, Tolerance, Trim
 
 FUNCTIONS = ("sqrt", "min", "max", *geometry.SHAPES)
 
+MOST_TRIED = 100
+"""Operations of a formula, and random quantities in it, up to which its spread is looked at."""
 MOST_GUESSES = 50
 """Unknown names for which the nearest known one is looked for."""
 
@@ -126,6 +130,13 @@ class Evaluator:
                 value=shown,
                 bound="zero or more" if zero else "more than zero",
             )
+
+    def check_spread(self, quantity: Quantity, span: Span, name: str) -> None:
+        """Warn of a value that its tolerances, one at a time, let fall below zero."""
+        lowest = _lowest(quantity)
+        if lowest < 0:
+            unit = units.unit_name(quantity.dimension)
+            self.report("spread-below-zero", span, name=name, lowest=units.show(lowest, unit), allowed=name)
 
     def let(self, binding: Binding, scope: Scope) -> Quantity:
         """The value of a let, its own tolerance not yet a random quantity."""
@@ -421,6 +432,25 @@ class Evaluator:
                 )
             rates[rate.dimension] = rate.nominal
         return Drift(rates.get(_PER_KELVIN, 0.0), rates.get(_PER_VOLT, 0.0))
+
+
+def _lowest(quantity: Quantity) -> float:
+    """The value with each tolerance in turn at either end, the others at their middle; the least of those."""
+    value, lowest = quantity.value, quantity.nominal
+    if value.tolerance is not None:
+        lowest -= value.tolerance.half_width
+    if value.formula is None or quantity.size > MOST_TRIED:
+        return lowest
+    randoms = value.formula.randoms()
+    for name, random in list(randoms.items())[:MOST_TRIED]:
+        for sign in (-1, 1):
+            end = random.nominal + sign * random.tolerance.half_width
+            with np.errstate(all="ignore"):
+                try:
+                    lowest = min(lowest, float(value.formula.evaluate({name: end})))
+                except (ArithmeticError, ValueError):
+                    continue  # 1/x where x reaches zero: what the value may be has no lower end to show
+    return lowest
 
 
 def _circle_text(names: list[str]) -> str:

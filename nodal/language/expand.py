@@ -114,6 +114,7 @@ class _Expansion:
             self.check_arguments()
             self.observers()
             network = self.network()
+            self.idle_stocks()
         except TooLarge:
             network = None
         failed = any(finding.severity == "error" for finding in self.collector.found[self.before :])
@@ -227,6 +228,14 @@ class _Expansion:
         if data is None:
             raise Rejected
         return data
+
+    def idle_stocks(self) -> None:
+        """Reports what is wrong with stocks that no cable is cut from; what they name counts as unused."""
+        used = set(self.scope.used)
+        for name, stock in self.stocks.items():
+            if name not in self.stock_data:
+                self.guarded(work_out_stock, stock, self.evaluator, self.scope)
+        self.scope.used = used
 
     def source(self, source: syntax.Source, item: Item) -> None:
         name = source.name.text
@@ -363,7 +372,7 @@ class _Expansion:
                 if parts + added * count * self.pending > MOST_PARTS:
                     self.evaluator.report("too-many-parts", chain.count.span, limit=f"{MOST_PARTS:,}")
                     raise TooLarge
-            if len(self.collector.found) > errors:
+            if any(finding.severity == "error" for finding in self.collector.found[errors:]):
                 break  # the other sections would say the same
 
     def check_effort(self, assembly: syntax.Assembly, count: int, span: syntax.Span) -> None:

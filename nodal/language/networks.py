@@ -111,6 +111,7 @@ def _names(leaves: list[_Leaf], name: str) -> list[str]:
 
 def _add(leaf: _Leaf, name: str, frame: Frame, noiseless: bool) -> None:
     value, side, place = leaf.quantity.value, frame.side, frame.builder.place(leaf.span)
+    frame.evaluator.check_spread(leaf.quantity, leaf.span, name)
     a, b = leaf.a.index, leaf.b.index
     part: Resistor | Capacitor | Inductor
     if leaf.letter == "C":

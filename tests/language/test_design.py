@@ -79,6 +79,35 @@ def test_what_nothing_uses_is_warned_of_and_can_be_allowed() -> None:
     assert [f.name for f in nodal.loads(allowed).diagnostics] == ["topp"]
 
 
+def test_a_stock_that_nothing_is_cut_from_is_looked_at() -> None:
+    idle = DIVIDER + "let per = 1 pF/m\nstock k { capacitance 2 * per; inductance 1 pF/m; speed 3 }\n"
+    assert sorted(codes(idle)) == ["unknown-name", "wrong-dimension"]
+    right = idle.replace("inductance 1 pF/m; speed 3", "inductance 1 nH/m")
+    assert [f.name for f in nodal.loads(right).diagnostics] == ["per", "k"]
+
+
+def test_values_from_outside_are_warned_of_too() -> None:
+    """What they make of the connections and of tolerances; what the file has already is not repeated."""
+    text = DIVIDER.replace("9 MΩ", "9 MΩ ± 1 %").replace("plug = top", "plug = top ∥ 9 MΩ") + "let idle = 1\n"
+    design = nodal.loads(text)
+    assert [f.code for f in design.diagnostics] == ["unused-let"]
+    assert design.network(top=1e6).diagnostics == ()
+    assert [f.code for f in design.network(top="0 Ω").diagnostics] == ["shorted-part"]
+    (wide,) = design.network(top="1 MΩ ± 2 MΩ").diagnostics
+    assert (wide.code, wide.name) == ("spread-below-zero", "upper.R1")
+    assert "-1 MΩ" in wide.message
+    allowed = nodal.loads(text + "allow spread-below-zero: upper.R1\n")
+    assert allowed.network(top="1 MΩ ± 2 MΩ").diagnostics == ()
+
+
+def test_spread_below_zero_is_said_once_for_all_sections() -> None:
+    text = DIVIDER + """assembly x(p to q; c) { branch b: p to q = c }
+    chain w: 9 of x(tip to plug; c = 1 Ω ± 3 Ω)
+    branch even: tip to plug = 1 pF ± 1 pF ∥ 1 pF ± 100 % with k = 2
+    """
+    assert [f.code for f in nodal.loads(text).diagnostics] == ["spread-below-zero"]
+
+
 def test_unknown_cases_and_drives() -> None:
     design = nodal.loads(DIVIDER + "source t: tap to ground = 1 V\nbranch u: tap to plug = 1 MΩ\n")
     with pytest.raises(KeyError, match="half"):

@@ -198,8 +198,8 @@ CALL: tuple[Code, ...] = (
         "error",
         "there is no file {path} in {revision}",
         "{hint}",
-        "As in git itself, the path behind the colon runs from the top of the repository, from the working "
-        "folder if it begins with ./ or ../",
+        "As in git itself, the path behind the colon runs from the top of the repository; one that begins "
+        "with ./ or ../ runs from the working folder.",
     ),
     Code(
         "outside-repository",

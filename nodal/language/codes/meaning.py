@@ -798,6 +798,20 @@ MEANING: tuple[Code, ...] = (
         ),
     ),
     Code(
+        "spread-below-zero",
+        "warning",
+        "the tolerance lets this value fall below zero, to {lowest}",
+        "write a narrower tolerance, or silence this with `allow spread-below-zero: {allowed}`",
+        "No resistance, capacitance, inductance or length is negative. The nominal value is used as it "
+        "stands; what spreads values would take negative ones too.",
+        (
+            _FRAME + "branch c: a to ground = 1 pF ± 2 pF",
+            _FRAME + "let x = 1 pF ± 60 %\nbranch c: a to ground = 2 * x - 1 pF",
+            _FRAME + "stock k { capacitance 1 pF/m ± 2 pF/m }\ncable c: a, ground to b, ground = 1 m of k\n"
+            "branch r: b to ground = 1 Ω",
+        ),
+    ),
+    Code(
         "unused-let",
         "warning",
         "the value \"{unused}\" is not used",
