@@ -282,6 +282,7 @@ def test_what_can_be_zero_has_a_floor() -> None:
         # Two equal RC products: the divider is flat, and its delay zero.
         ("9 MΩ ∥ 11 pF | 1 MΩ ∥ 99 pF", "flatness(m)", "0"),
         ("9 MΩ ∥ 11 pF | 1 MΩ ∥ 99 pF", "group_delay(m) at 100 kHz", "0 s"),
+        ("9 MΩ ∥ 11 pF | 1 MΩ ∥ 99 pF", "phase(m) at 1 kHz", "0 °"),
         # Resistors alone: no capacitance at the contact, no phase.
         ("900 Ω | 300 Ω -- 700 Ω", "capacitance(s) at 1 kHz", "0 F"),
         ("900 Ω | 300 Ω -- 700 Ω", "phase(m) at 1 kHz", "0 °"),
@@ -301,12 +302,28 @@ require still: phase(m) at 1 kHz <= 1 °
     assert records.value_text(measure(Checks(design))["nominal"][figure]) == exactly
 
 
+def test_a_matched_line_has_no_capacitance() -> None:
+    """A lossless line into its own impedance is a resistor at every frequency; what is left is rounding."""
+    design = nodal.loads("""nodal 1
+stock line { impedance 50 Ω; velocity 0.66 }
+source s: a to ground = 1 V behind 75 Ω
+cable k: a, ground to b, ground = 1.7 m of line
+branch load: b to ground = 50 Ω
+reading m: b to ground
+sweep 1 MHz to 1 GHz, 10 per decade
+""")
+    assert records.value_text(measure(Checks(design))["nominal"]["capacitance(s) at 1 MHz"]) == "0 F"
+
+
 def test_a_perfect_balance_is_recorded_as_such() -> None:
-    """Two equal dividers: nothing of the common drive reaches the difference but rounding."""
-    leg = "branch u{0}: {0} to o{0} = 4 MΩ ∥ 2.5 pF\nbranch l{0}: o{0} to ground = 40.4 kΩ ∥ 247.5 pF\n"
+    """Two dividers of one ratio: nothing of the common drive reaches the difference but rounding."""
+    leg = (
+        "branch u{0}: {0} to o{0} = {1} * 3.7 MΩ ∥ 2.5 pF / {1}\n"
+        "branch l{0}: o{0} to ground = {1} * 3.7 MΩ / 99 ∥ 247.5 pF / {1}\n"
+    )
     design = nodal.loads(
-        "nodal 1\nsource high: p to ground = 1 V behind 10 Ω\nsource low: n to ground = 1 V behind 10 Ω\n"
-        + leg.format("p") + leg.format("n") + "reading m: op to on times 100\n"
+        "nodal 1\nsource high: p to ground = 1 V\nsource low: n to ground = 1 V\n"
+        + leg.format("p", 1) + leg.format("n", 1.7) + "reading m: op to on times 100\n"
         "drive difference: high by 0.5, low by -0.5\ndrive common: high, low\n"
         "sweep 1 kHz to 1 MHz, 10 per decade\n"
         "require balance: rejection(m, difference, common) at 50 kHz >= 60 dB\n"
