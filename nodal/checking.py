@@ -121,7 +121,9 @@ def check_file(path: str, wanted: Wanted) -> CheckAnswer:
         answer = replace(answer, estimates=estimates)
     except DesignError as error:
         answer = replace(
-            answer, kind="broken", diagnostics=(*diagnostics, *error.diagnostics),
+            answer,
+            kind="broken",
+            diagnostics=(*diagnostics, *error.diagnostics),
             sources={**sources, **error.sources},
         )
     return answer
@@ -156,9 +158,7 @@ def record_design(checks: Checks, target: str) -> RecordAnswer:
     if written:
         _write(target, text)
     found = tuple(design.diagnostics)
-    return RecordAnswer(
-        design.path, "design", found, design.sources, target, count, tuple(changes), written
-    )
+    return RecordAnswer(design.path, "design", found, design.sources, target, count, tuple(changes), written)
 
 
 def is_shared(path: str) -> bool:
@@ -234,9 +234,7 @@ class _CheckWith:
         return check_file(path, self.wanted)
 
 
-def _each(
-    work: Callable[[str], _Answer], paths: Sequence[str], jobs: int | None
-) -> Iterator[_Answer]:
+def _each(work: Callable[[str], _Answer], paths: Sequence[str], jobs: int | None) -> Iterator[_Answer]:
     workers = min(jobs or _processors(), len(paths))
     if workers < 2 or len(paths) < _FEWEST:
         yield from map(work, paths)

@@ -249,14 +249,35 @@ _BEYOND = {">=": "at least", "<=": "at most"}
 
 
 def _result(
-    item: RequirementItem, status: Status, found: float | None = None, margin: float | None = None,
-    margin_unit: str = "", *, at: float | None = None, bound: Literal["<=", ">="] | None = None,
+    item: RequirementItem,
+    status: Status,
+    found: float | None = None,
+    margin: float | None = None,
+    margin_unit: str = "",
+    *,
+    at: float | None = None,
+    bound: Literal["<=", ">="] | None = None,
     reason: str = "",
 ) -> RequirementResult:
     asked = item.requirement
     return RequirementResult(
-        item.case, item.name, item.figure, item.asked, asked.relation, asked.limit, asked.tolerance,
-        asked.unit, status, found, bound, margin, margin_unit, at, reason, item.path, item.line,
+        item.case,
+        item.name,
+        item.figure,
+        item.asked,
+        asked.relation,
+        asked.limit,
+        asked.tolerance,
+        asked.unit,
+        status,
+        found,
+        bound,
+        margin,
+        margin_unit,
+        at,
+        reason,
+        item.path,
+        item.line,
     )
 
 

@@ -79,8 +79,10 @@ def figures(responses: Mapping[str, Response], drive: str | None, span: Span | N
         for name, response in responses.items()
     }
     kept = tuple(
-        row for row in rows
-        if row.required or row.call.name == "bandwidth"
+        row
+        for row in rows
+        if row.required
+        or row.call.name == "bandwidth"
         or any(results[row.label].reason != "unavailable" for results in cases.values())
     )
     shown = {name: {row.label: results[row.label] for row in kept} for name, results in cases.items()}
@@ -104,7 +106,8 @@ def edge_figures(responses: Mapping[str, Response], drive: str | None) -> Figure
         for case, response in responses.items()
     }
     kept = tuple(
-        row for row in rows
+        row
+        for row in rows
         if row.required or any(results[row.label].reason != "unavailable" for results in cases.values())
     )
     shown = {case: {row.label: results[row.label] for row in kept} for case, results in cases.items()}

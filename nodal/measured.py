@@ -59,7 +59,8 @@ def measure(checks: Checks, cases: Sequence[str] | None = None) -> dict[str, dic
 def _rows(responses: Mapping[str, Response]) -> list[FigureRow]:
     swept = {case: response for case, response in responses.items() if response.network.grid is not None}
     spans = {
-        case: (grid.low, grid.high) for case, response in swept.items()
+        case: (grid.low, grid.high)
+        for case, response in swept.items()
         if (grid := response.network.grid) is not None
     }
     rows: list[FigureRow] = []
@@ -70,7 +71,8 @@ def _rows(responses: Mapping[str, Response]) -> list[FigureRow]:
         names = dict.fromkeys(drive.name for network in networks for drive in network.drives)
         for name in names:
             known = {
-                case: response for case, response in swept.items()
+                case: response
+                for case, response in swept.items()
                 if name in {drive.name for drive in response.network.drives}
             }
             rows += (_driven(row, name) for row in choose(known, name, spans, None))

@@ -198,7 +198,10 @@ def _record_line(answer: RecordAnswer) -> str:
 
 
 def json_text(
-    answers: Sequence[CheckAnswer], diagnostics: Sequence[Diagnostic], sources: Mapping[str, str], *,
+    answers: Sequence[CheckAnswer],
+    diagnostics: Sequence[Diagnostic],
+    sources: Mapping[str, str],
+    *,
     single: bool,
 ) -> str:
     """The answer as JSON, with the diagnostics of all files.
