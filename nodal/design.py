@@ -25,7 +25,7 @@ from nodal.language.parse import parse, read
 from nodal.language.program import NOMINAL, Program, gather
 from nodal.language.scope import names_in_statements, nearest
 from nodal.language.syntax import Span
-from nodal.network import Network
+from nodal.network import Network, of_any_section
 from nodal.place import Place
 
 if TYPE_CHECKING:
@@ -99,16 +99,18 @@ class Design:
             return Model(self._networks[case], case)
         collector = Collector(sources=dict(self.sources))
         overrides = parse_overrides(lets, collector)
-        network = None if collector.failed else self._expand(case, collector, overrides).network
-        if network is not None:
-            topology(network, collector)
+        network = None
+        if not collector.failed:
+            expanded = self._expand(case, collector, overrides)
+            network = expanded.network
+            if network is not None:
+                topology(network, collector, expanded.uses)
         if network is None or collector.failed:
             raise DesignError(distinct(collector.found), collector.sources)
         self.sources.update(collector.sources)
         known = set(map(_key, self.diagnostics))
         fresh = [finding for finding in distinct(collector.found) if _key(finding) not in known]
-        allowed = self._allowed() | network.allowed
-        return Model(network, case, tuple(f for f in fresh if (f.code, f.name) not in allowed))
+        return Model(network, case, tuple(f for f in fresh if not self._allows(f, network)))
 
     def lets(self, case: str = NOMINAL) -> Mapping[str, Quantity]:
         """What each `let` comes to in a case, by name."""
@@ -126,17 +128,16 @@ class Design:
                 self._networks[case] = expanded.network
                 self._lets[case] = expanded.lets
                 if readable:
-                    topology(expanded.network, collector)
+                    topology(expanded.network, collector, expanded.uses)
         self._unused(used, collector)
         found = distinct(collector.found)
         if collector.failed:
             raise DesignError(found, self.sources)
-        allowed = self._allowed()
-        self.diagnostics = [finding for finding in found if (finding.code, finding.name) not in allowed]
+        self.diagnostics = [finding for finding in found if not self._allows(finding)]
 
-    def _allowed(self) -> frozenset[tuple[str, str]]:
-        """What `allow` silences in any case."""
-        return frozenset().union(*(network.allowed for network in self._networks.values()))
+    def _allows(self, finding: Diagnostic, *networks: Network) -> bool:
+        """Whether an `allow` of any case silences it."""
+        return any(n.allows(finding.code, finding.name) for n in (*self._networks.values(), *networks))
 
     def _expand(self, case: str, collector: Collector, overrides: Mapping[str, Override]) -> Expanded:
         return expand(self.program, case, collector, overrides)
@@ -179,18 +180,28 @@ def parse_overrides(lets: Mapping[str, float | str], collector: Collector) -> di
     return overrides
 
 
-def topology(network: Network, collector: Collector) -> None:
-    """Adds what is wrong or odd about the connections."""
+def topology(network: Network, collector: Collector, uses: Mapping[str, Span]) -> None:
+    """Adds what is wrong or odd about the connections, once for all sections of a chain. `uses` says where
+    places and chains were written."""
     from nodal.topology import check
 
+    alike: dict[tuple[Any, ...], list[Finding]] = {}
     for finding in check(network):
-        _add_finding(finding, network, collector)
+        names = tuple(of_any_section(name) for name in finding.names)
+        alike.setdefault((finding.code, finding.place, names), []).append(finding)
+    for findings in alike.values():
+        _add_finding(findings[0], len(findings), collector, uses)
 
 
-def _add_finding(finding: Finding, network: Network, collector: Collector) -> None:
+def _add_finding(finding: Finding, count: int, collector: Collector, uses: Mapping[str, Span]) -> None:
     span = span_of(finding.place, collector.sources) if finding.place is not None else None
     name = finding.names[0] if finding.names else ""
-    collector.add(finding.code, span, name=name, **finding.arguments)
+    steps = of_any_section(name).split(".")
+    around = (".".join(steps[:depth]) for depth in range(len(steps) - 1, 0, -1))
+    related = [(uses[use], f"used here as {use}") for use in around if use in uses]
+    if count > 1 and related:
+        related[-1] = (related[-1][0], f"{related[-1][1]}; the same in {count} sections")
+    collector.add(finding.code, span, name=name, related=related, **finding.arguments)
 
 
 def span_of(place: Place, sources: Mapping[str, str]) -> Span | None:

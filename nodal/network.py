@@ -7,6 +7,7 @@ values in SI units. Nothing here knows how a network is written or how it is sol
 
 from __future__ import annotations
 
+import re
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import Literal, Protocol, TypeVar
@@ -16,6 +17,13 @@ from nodal.place import Place as Place
 from nodal.values import Value
 
 GROUND = 0
+
+_SECTION = re.compile(r"\.[0-9]+(?=\.)")
+
+
+def of_any_section(name: str) -> str:
+    """A name inside a chain without the numbers of sections: "column.7.body.R" is "column.body.R"."""
+    return _SECTION.sub("", name)
 
 Side = Literal["test", "chain"]
 
@@ -125,10 +133,14 @@ class Network:
     """K"""
     requirements: tuple[Requirement, ...] = ()
     allowed: frozenset[tuple[str, str]] = frozenset()
-    """(warning code, name) pairs silenced by `allow`."""
+    """(warning code, name) pairs silenced by `allow`, names as `of_any_section` gives them."""
     title: str = ""
     node_places: dict[int, Place] = field(default_factory=dict, compare=False)
     """Where each node was first mentioned."""
+
+    def allows(self, code: str, name: str) -> bool:
+        """Whether a warning about a name is silenced; what is said of one section holds for all."""
+        return (code, of_any_section(name)) in self.allowed
 
     def node(self, name: str) -> int:
         """Index of a node; KeyError with the name if there is none."""

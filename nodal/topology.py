@@ -57,7 +57,7 @@ def check(network: Network) -> list[Finding]:
     found = [finding for one in CHECKS for finding in one(network)]
     if not any(finding.severity == "error" for finding in found):
         found += amplifier_loops(network)
-    return [f for f in found if f.severity == "error" or (f.code, f.names[0]) not in network.allowed]
+    return [f for f in found if f.severity == "error" or not network.allows(f.code, f.names[0])]
 
 
 def no_source(network: Network) -> Iterator[Finding]:

@@ -28,7 +28,7 @@ from nodal.language.quantity import Quantity, number, randomised
 from nodal.language.repeat import Mark, Section, repeatable
 from nodal.language.requirements import resolve_requirement
 from nodal.language.scope import Binding, Rejected, Scope, nearest
-from nodal.network import Contact, Drive, Network, Reading, Stimulus, SweepGrid
+from nodal.network import Contact, Drive, Network, Reading, Stimulus, SweepGrid, of_any_section
 from nodal.parts.base import Part
 from nodal.parts.coupling import Coupling
 from nodal.parts.inductor import Inductor
@@ -50,11 +50,13 @@ Override = float | syntax.Expression
 
 @dataclass(slots=True)
 class Expanded:
-    """A case's network, None where it has errors, which names it made use of, and what its lets come to."""
+    """A case's network, None where it has errors; which names it made use of, what its lets come to, and
+    where each place and chain was written (by its whole name without numbers of sections)."""
 
     network: Network | None
     used: set[str] = field(default_factory=set)
     lets: dict[str, Quantity] = field(default_factory=dict)
+    uses: dict[str, syntax.Span] = field(default_factory=dict)
 
 
 def expand(
@@ -85,10 +87,13 @@ class _Expansion:
         self.assemblies: dict[str, syntax.Assembly] = {}
         self.arguments: dict[str, tuple[syntax.Word | None, Quantity | float | None]] = {}
         """Values for the arguments of places, by their dotted name, and where each was written."""
+        self.uses: dict[str, syntax.Span] = {}
+        """Where each place and chain was written, by its whole name without numbers of sections."""
         self.known_arguments: set[str] = set()
         self.singled_out: set[str] = set()
         """Places and sections for whose inside a value is given."""
-        self.couplings: list[tuple[syntax.Coupling, Frame]] = []
+        self.couplings: list[tuple[syntax.Coupling, Frame, tuple[tuple[syntax.Span, str], ...]]] = []
+        """Each with its frame and the uses around it; worked out when all inductors are there."""
         self.inside: dict[str, list[Part]] = {}
         """Parts of each branch, once couplings ask."""
         self.pending = 1
@@ -119,7 +124,7 @@ class _Expansion:
             network = None
         failed = any(finding.severity == "error" for finding in self.collector.found[self.before :])
         lets = {name: let.value for name, let in self.scope.lets.items() if let.value is not None}
-        return Expanded(None if failed else network, self.used_names | self.scope.used, lets)
+        return Expanded(None if failed else network, self.used_names | self.scope.used, lets, self.uses)
 
     def each(self, *kinds: type) -> Iterable[Item]:
         return [item for item in self.items if isinstance(item.statement, kinds)]
@@ -210,7 +215,7 @@ class _Expansion:
             case syntax.Amplifier():
                 expand_amplifier(statement, frame)
             case syntax.Coupling():
-                self.couplings.append((statement, replace(frame)))
+                self.couplings.append((statement, replace(frame), tuple(self.evaluator.uses)))
             case syntax.Place():
                 self.place(statement, frame)
             case syntax.Chain():
@@ -296,6 +301,7 @@ class _Expansion:
         left, right, shared = bind_nodes(place.use, assembly, frame)
         self.check_effort(assembly, 1, place.use.span)
         self.evaluator.uses.append((place.use.span, f"used here as {name}"))
+        self.uses[of_any_section(name)] = place.use.span
         try:
             self.section(assembly, f"{name}.", frame, left, right, shared, arguments)
         finally:
@@ -318,6 +324,7 @@ class _Expansion:
         ends = bind_nodes(chain.use, assembly, frame)
         self.check_effort(assembly, count, chain.count.span)
         self.evaluator.uses.append((chain.use.span, f"used here as {name}"))
+        self.uses[of_any_section(name)] = chain.use.span
         try:
             self.sections(chain, assembly, count, frame, ends, arguments, own_overrides)
         finally:
@@ -442,8 +449,10 @@ class _Expansion:
         for part in self.builder.parts if self.couplings else ():
             self.inside.setdefault(part.name.rpartition(".")[0], []).append(part)
         pairs: dict[frozenset[str], syntax.Coupling] = {}
-        for coupling, frame in self.couplings:
+        for coupling, frame, uses in self.couplings:
+            self.evaluator.uses = list(uses)
             self.guarded(self.coupling, coupling, frame, pairs)
+        self.evaluator.uses = []
 
     def coupling(
         self, coupling: syntax.Coupling, frame: Frame, pairs: dict[frozenset[str], syntax.Coupling]
@@ -661,7 +670,7 @@ class _Expansion:
             assert isinstance(item.statement, syntax.Allow)
             code = item.statement.code
             if code.text in warnings:
-                allowed.add((code.text, item.statement.name.text))
+                allowed.add((code.text, of_any_section(item.statement.name.text)))
             else:
                 self.guarded(self.evaluator.unknown, "warning", code.span, code.text, warnings)
         return frozenset(allowed)

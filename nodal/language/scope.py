@@ -147,7 +147,7 @@ def nearest(name: str, known: Iterable[str]) -> str:
         close = difflib.get_close_matches(name, likely[:MANY], 1, 0.6)
     if close:
         return f"did you mean {close[0]}?"
-    if len(choices) <= 8:
+    if len(choices) <= 16:
         return "known: " + ", ".join(choices)
     return "check the spelling; names are case-sensitive"
 

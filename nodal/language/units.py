@@ -219,7 +219,8 @@ def _nearest(text: str, expected: Dimension | None) -> str | None:
     same = [unit for unit in same if UNITS[unit].dimension == expected] or same
     if same:
         return min(same, key=lambda unit: _LIKELY.index(unit) if unit in _LIKELY else len(_LIKELY))
-    close = difflib.get_close_matches(spelled, _BASE_UNITS, 1, 0.6)
+    # One letter is like any two with it among them: 90 mn was hardly meant for 90 m.
+    close = difflib.get_close_matches(spelled, [unit for unit in _BASE_UNITS if len(unit) > 1], 1, 0.6)
     return close[0] if close else None
 
 

@@ -108,6 +108,45 @@ def test_spread_below_zero_is_said_once_for_all_sections() -> None:
     assert [f.code for f in nodal.loads(text).diagnostics] == ["spread-below-zero"]
 
 
+STUB = """assembly stub(p to q) {
+  branch open: p to x = 1 Ω
+  branch short: q to q = 1 Ω; branch on: p to q = 1 Ω
+}
+assembly pair(p to q) { chain u: 2 of stub(p to q) }
+chain many: 4 of pair(tip to plug)
+"""
+
+
+def test_connections_inside_show_the_places_of_use_once_for_all_sections() -> None:
+    text = DIVIDER + STUB
+    found = nodal.loads(text).diagnostics
+    assert [f.code for f in found] == ["dangling-node", "shorted-part"]
+    for finding, inside in zip(found, ("x = 1 Ω", "1 Ω; branch on"), strict=True):
+        assert finding.span is not None
+        assert text[finding.span.start :].startswith(inside)
+        (inner, said), (outer, said_outer) = finding.related
+        assert text[inner.start : inner.end] == "stub(p to q)"
+        assert text[outer.start : outer.end] == "pair(tip to plug)"
+        assert (said, said_outer) == ("used here as many.u", "used here as many; the same in 8 sections")
+
+
+@pytest.mark.parametrize("name", ["many.u.x", "many.1.u.1.x", "many.3.u.2.x"])
+def test_allow_in_one_section_holds_for_all(name: str) -> None:
+    text = DIVIDER + STUB + f"allow dangling-node: {name}\nallow shorted-part: many.u.short.R\n"
+    assert nodal.loads(text).diagnostics == []
+    assert len(nodal.loads(text.replace("many.u.short", "many.short")).diagnostics) == 1
+
+
+def test_couplings_inside_show_the_place_of_use() -> None:
+    text = DIVIDER + """assembly x(p to q) { branch a: p to q = 1 Ω; coupling k: a with a = 0.1 }
+    chain c: 3 of x(tip to plug)
+    """
+    with pytest.raises(nodal.DesignError) as caught:
+        nodal.loads(text)
+    (finding,) = caught.value.diagnostics
+    assert [said for _, said in finding.related] == ["used here as c"]
+
+
 def test_unknown_cases_and_drives() -> None:
     design = nodal.loads(DIVIDER + "source t: tap to ground = 1 V\nbranch u: tap to plug = 1 MΩ\n")
     with pytest.raises(KeyError, match="half"):

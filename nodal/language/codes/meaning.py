@@ -688,7 +688,7 @@ MEANING: tuple[Code, ...] = (
     Code(
         "wrong-nodes-of-use",
         "error",
-        "{assembly} has {wanted} {where}; here are {found}",
+        "{assembly} has {wanted} {where}, here it has {found}",
         "",
         "An assembly is used with as many nodes before `to`, after `to` and after "
         "`with` as it declares.",
