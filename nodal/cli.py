@@ -111,14 +111,21 @@ _TO_FILE = click.option(
     "-o", "--output", metavar="FILE", help="Write the answer to FILE, whole or not at all."
 )
 _QUIET = click.option("-q", "--quiet", is_flag=True, help="Show no warnings and notes.")
-_OUTPUT = [
-    click.option("--format", type=click.Choice(["text", "json", "csv"]), default="text", show_default=True,
-                 help="How to print the answer."),
-    _AS_JSON,
-    _TO_FILE,
-    _QUIET,
-    _COLOR,
-]
+
+
+def _output(*forms: str) -> list[Callable[[Any], Any]]:
+    """How an answer is printed, in one of the forms that a command has."""
+    return [
+        click.option("--format", type=click.Choice(["text", *forms]), default="text", show_default=True,
+                     help="How to print the answer."),
+        _AS_JSON,
+        _TO_FILE,
+        _QUIET,
+        _COLOR,
+    ]  # fmt: skip
+
+
+_OUTPUT = _output("json", "csv")
 _TIDY = [
     click.option("--check", is_flag=True, help="Write nothing; name the files that are not tidy."),
     click.option("--diff", is_flag=True, help="Write nothing; show what would change."),
@@ -185,7 +192,11 @@ def _options(*groups: list[Callable[[Any], Any]]) -> Callable[[_Command], _Comma
     return declare
 
 
-@click.group(cls=Tool, context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})
+@click.group(
+    cls=Tool,
+    no_args_is_help=False,
+    context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100},
+)
 @click.version_option(__version__, prog_name="nodal", message="%(prog)s %(version)s")
 def main() -> None:
     """What a voltage probe and everything behind it shows, against what was there.
@@ -247,7 +258,7 @@ def sweep(
     _finish(design, options, text)
 
 
-@main.command()
+@main.command(short_help="Figures of merit of every reading and contact.")
 @click.argument("file")
 @click.option("--for-diff", is_flag=True, help="As git's diff shows it: the text, then a figure a line.")
 @_options(_SPAN, _DESIGN, _OUTPUT)
@@ -289,7 +300,7 @@ def figures(options: Options, file: str, low: str | None, high: str | None, for_
     _finish(design, options, text)
 
 
-@main.command()
+@main.command(short_help="What readings and contacts do after an edge.")
 @click.argument("file")
 @click.option("--edge", "ramp", metavar="T", help="A linear ramp of whole duration T, in seconds or as 1ns.")
 @click.option("--step", "step", is_flag=True, help="An ideal step.")
@@ -407,7 +418,7 @@ def poles(options: Options, file: str, lumped: bool) -> None:
 @click.argument("designs", nargs=-1, required=True, metavar="OLD NEW")
 @click.option("--as-git-driver", is_flag=True, help="Take what git gives an external diff driver.")
 @click.option("--exit-code", is_flag=True, help="Status 1 where anything differs.")
-@_options(_COMPARE, _OUTPUT)
+@_options(_COMPARE, _output("json"))
 def compare(options: Options, designs: tuple[str, ...], as_git_driver: bool, exit_code: bool) -> None:
     """What changed between two designs, or two states of one.
 
@@ -425,8 +436,6 @@ def compare(options: Options, designs: tuple[str, ...], as_git_driver: bool, exi
     from nodal.report import data
     from nodal.studies.compare import compare as compare_designs
 
-    if options.form == "csv":
-        raise click.UsageError("compare prints text or json")
     if len(designs) != 2:
         raise click.UsageError("compare takes two designs, OLD and NEW")
     before, after = revisions.load_both(*designs)
@@ -470,9 +479,9 @@ def _for_git(answer: Callable[[], str], options: Options) -> None:
         _write(answer(), options)
 
 
-@main.command()
+@main.command(short_help="What an error, warning or note means.")
 @click.argument("code", required=False)
-@_options(_OUTPUT)
+@_options(_output("json"))
 def explain(options: Options, code: str | None) -> None:
     """What an error, warning or note means; without CODE, a list of all."""
     from nodal.language.codes import BY_CODE, TABLE
@@ -484,8 +493,6 @@ def explain(options: Options, code: str | None) -> None:
     if options.form == "json":
         head = {"format": data.FORMAT, "tool": f"nodal {__version__}"}
         text = data.dumps({**head, "codes": listing.as_data(rows)})
-    elif options.form == "csv":
-        raise click.UsageError("explain prints text or json")
     elif code is None:
         page = _page(options)
         listing.overview(page, rows)
@@ -535,7 +542,7 @@ def tidy(options: Options, paths: tuple[str, ...], check: bool, diff: bool) -> N
         raise click.exceptions.Exit(FAILED)
 
 
-@main.command()
+@main.command(short_help="Hold designs to their requirements and recorded figures.")
 @click.argument("paths", nargs=-1, required=True, metavar="PATH...")
 @_options(_CHECK)
 def check(
@@ -591,7 +598,7 @@ def check(
         raise click.exceptions.Exit(status)
 
 
-@main.command()
+@main.command(short_help="Write figures beside each design, to compare with.")
 @click.argument("paths", nargs=-1, required=True, metavar="PATH...")
 @_options(_RECORD)
 def record(options: Options, paths: tuple[str, ...], jobs: int | None) -> None:

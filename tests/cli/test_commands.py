@@ -229,11 +229,20 @@ def test_other_wrong_calls():
     fails("sweep", PROBE, "--case", "nominal", "--all-cases", code="wrong-call")
     fails("sweep", PROBE, "--nod", "x", code="wrong-call")
     fails("sweep", code="wrong-call")
+    fails(code="wrong-call")
+    fails("explain", "--format", "csv", code="wrong-call")
+    fails("compare", PROBE, PROBE, "--format", "csv", code="wrong-call")
     fails("sweeep", PROBE, code="wrong-call")
     fails("sweep", PROBE + "x", code="no-file")
     no_sweep = TWO_SOURCES.replace("sweep 1 Hz to 1 MHz, 10 per decade\n", "drive d: high by 1\n")
     fails("sweep", "-", code="no-sweep", input=no_sweep)
     fails("figures", "-", code="no-sweep", input=no_sweep)
+
+
+def test_no_summary_of_a_command_is_cut_off():
+    listed = run("--help").stdout.partition("Commands:")[2]
+    assert "sweep" in listed
+    assert "..." not in listed
 
 
 def test_mistakes_in_a_file_end_with_status_2():
