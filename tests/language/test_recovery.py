@@ -34,6 +34,7 @@ def test_every_code_of_a_text_has_examples() -> None:
         ("branch tip: gate to core = 9 M ∥ 9.5 pF", "missing-unit", "9 M", "9 MΩ"),
         ("let a = 10 uf", "unknown-unit", "uf", "10 µF"),
         ("let a = 10 MHZ", "unknown-unit", "MHZ", "10 MHz"),
+        ("let a = 90 mn", "unknown-unit", "mn", "the units are"),
         ("let a = 1,5 V", "number-form", "1,5 V", "1.5 V"),
         ("let a = 1,000 V", "number-form", "1,000 V", "1000 V"),
         ("let a = 4k7", "number-form", "4k7", "4.7 kΩ"),
