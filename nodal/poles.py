@@ -103,7 +103,7 @@ def poles_and_zeros(network: Network, drive: str | None = None, *, lumped: bool 
     if others and not lumped:
         names = ", ".join(others[:6]) + (f" and {len(others) - 6} more" if len(others) > 6 else "")
         raise Unavailable(
-            f"cables, dielectric loss and delays have no finite set of poles, and here are some: {names}"
+            f"a network with cables, dielectric loss or delays has no finite set of poles; here: {names}"
         )
     whole = assemble(network, lumped=True)
     source = excitation(whole, chosen.weights)

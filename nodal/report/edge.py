@@ -269,14 +269,14 @@ def poles_text(page: Page, case: str, title: str, found: PolesAndZeros) -> None:
         if gone:
             listed = ", ".join(numbers.frequency(root.frequency) for root in gone[:6])
             more = f" and {len(gone) - 6} more" if len(gone) > 6 else ""
-            page.add(Text(f"zeros of {name} take out the poles at {listed}{more}", style="dim"), "")
+            page.add(Text(f"zeros of {name} cancel the poles at {listed}{more}", style="dim"), "")
     if not found.stable:
         page.add(Text("unstable: a pole right of the imaginary axis grows without bound", style="red"))
     if found.replaced:
         names = ", ".join(found.replaced)
         caution = (
-            f"{names}: a cable counts as one section of inductance and capacitance, dielectrics as without "
-            "loss, amplifiers as without delay, so that these are no more than a guide"
+            f"simplified here: {names}. A cable counts as one section of inductance and capacitance, a "
+            "dielectric has no loss and an amplifier no delay, so that these are no more than a guide"
         )
         page.add(Text(caution, style="yellow"))
 
