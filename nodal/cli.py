@@ -38,8 +38,12 @@ class Tool(click.Group):
     """The group of commands; whatever goes wrong ends here, as a diagnostic and an exit status."""
 
     def main(
-        self, args: Sequence[str] | None = None, prog_name: str | None = None,
-        complete_var: str | None = None, standalone_mode: bool = True, windows_expand_args: bool = True,
+        self,
+        args: Sequence[str] | None = None,
+        prog_name: str | None = None,
+        complete_var: str | None = None,
+        standalone_mode: bool = True,
+        windows_expand_args: bool = True,
         **extra: Any,
     ) -> NoReturn:
         arguments = list(sys.argv[1:] if args is None else args)
@@ -147,8 +151,13 @@ _CHECK = [
     click.option("--dependents", is_flag=True, help="Check the designs that include a PATH, too."),
     click.option("--no-solve", is_flag=True, help="Only read the files and check their connections: fast."),
     _JOBS,
-    click.option("--format", type=click.Choice(["text", "json", "github", "junit"]), default="text",
-                 show_default=True, help="How to print the answer; github: as annotations."),
+    click.option(
+        "--format",
+        type=click.Choice(["text", "json", "github", "junit"]),
+        default="text",
+        show_default=True,
+        help="How to print the answer; github: as annotations.",
+    ),
     _AS_JSON,
     _TO_FILE,
     _QUIET,
@@ -166,10 +175,12 @@ _SPAN = [
     click.option("--to", "high", metavar="F", help="Highest frequency."),
 ]
 _GRID = [
-    click.option("--per-decade", type=click.FloatRange(min=0, min_open=True), metavar="N",
-                 help="Points per decade."),
-    click.option("--at", multiple=True, metavar="F",
-                 help="Only this frequency (0 for the limit); may be repeated."),
+    click.option(
+        "--per-decade", type=click.FloatRange(min=0, min_open=True), metavar="N", help="Points per decade."
+    ),
+    click.option(
+        "--at", multiple=True, metavar="F", help="Only this frequency (0 for the limit); may be repeated."
+    ),
     click.option("--node", multiple=True, metavar="NODE", help="Show this node too; may be repeated."),
 ]
 
@@ -212,8 +223,13 @@ def main() -> None:
 @click.argument("file")
 @_options(_SPAN, _GRID, _DESIGN, _OUTPUT)
 def sweep(
-    options: Options, file: str, low: str | None, high: str | None, per_decade: float | None,
-    at: tuple[str, ...], node: tuple[str, ...],
+    options: Options,
+    file: str,
+    low: str | None,
+    high: str | None,
+    per_decade: float | None,
+    at: tuple[str, ...],
+    node: tuple[str, ...],
 ) -> None:
     """Transfer functions and loading over frequency.
 

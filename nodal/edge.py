@@ -128,8 +128,12 @@ class EdgeResponse:
 
 
 def edge_response(
-    network: Network, *, drive: str | None = None, stimulus: Stimulus | None = None,
-    readings: Sequence[str] | None = None, contacts: Sequence[str] | None = None,
+    network: Network,
+    *,
+    drive: str | None = None,
+    stimulus: Stimulus | None = None,
+    readings: Sequence[str] | None = None,
+    contacts: Sequence[str] | None = None,
 ) -> EdgeResponse:
     """Readings and contacts (all of them where left out) after the network's edge or another `stimulus`.
 
@@ -164,7 +168,8 @@ def edge_response(
         made.append(edges)
         undisturbed = dict(zip((c.name for c in before), found, strict=True))
     return EdgeResponse(
-        chosen.name, stimulus,
+        chosen.name,
+        stimulus,
         {r.name: trace for r, trace in zip(shown, traces, strict=False)},
         {
             c.name: ContactTraces(trace, undisturbed.get(c.name), missing[c.name])
@@ -186,7 +191,8 @@ def _amplitudes(network: Network, drive: Drive) -> list[tuple[str, float]]:
     """(source, volts or amperes): the drive's weights times the amplitudes as written."""
     written = {
         part.name: part.value.nominal
-        for part in network.parts if isinstance(part, VoltageSource | CurrentSource)
+        for part in network.parts
+        if isinstance(part, VoltageSource | CurrentSource)
     }
     return [(source, weight * written[source]) for source, weight in drive.weights]
 
@@ -201,15 +207,23 @@ def _no_undisturbed(network: Network, contact: Contact, drive: str) -> str:
 
 
 def _traces(
-    network: Network, assembly: Assembly, weights: Sequence[tuple[str, float]], outputs: Sequence[Functional],
-    names: Sequence[str], stimulus: Stimulus,
+    network: Network,
+    assembly: Assembly,
+    weights: Sequence[tuple[str, float]],
+    outputs: Sequence[Functional],
+    names: Sequence[str],
+    stimulus: Stimulus,
 ) -> tuple[Edges, list[Trace]]:
     source = excitation(assembly, weights)
     grid = network.grid
     frequencies = np.geomspace(grid.low, grid.high, 101) if grid and 0 < grid.low < grid.high else np.zeros(0)
     try:
         edges = respond(
-            assembly.system, source, outputs, ramp=stimulus.ramp, window=stimulus.window,
+            assembly.system,
+            source,
+            outputs,
+            ramp=stimulus.ramp,
+            window=stimulus.window,
             frequencies=frequencies,
         )
         final = _final(assembly, source, outputs)

@@ -25,6 +25,7 @@ def of_any_section(name: str) -> str:
     """A name inside a chain without the numbers of sections: "column.7.body.R" is "column.body.R"."""
     return _SECTION.sub("", name)
 
+
 Side = Literal["test", "chain"]
 
 

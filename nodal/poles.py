@@ -83,7 +83,8 @@ class PolesAndZeros:
 def unlumped(network: Network) -> list[str]:
     """Names of the parts that give a network infinitely many poles: cables, dielectric loss, delays."""
     return [
-        part.name for part in network.parts
+        part.name
+        for part in network.parts
         if isinstance(part, Cable)
         or (isinstance(part, Amplifier) and part.delay)
         or bool(getattr(part, "loss", 0.0))

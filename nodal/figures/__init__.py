@@ -61,7 +61,11 @@ _EXCESSES = ("disturbance", "error")
 
 
 def evaluate(
-    figure: FigureCall, response: Response, *, drive: str | None = None, at: float | None = None,
+    figure: FigureCall,
+    response: Response,
+    *,
+    drive: str | None = None,
+    at: float | None = None,
     span: Span | None = None,
 ) -> Result:
     """The figure at the frequency `at`, or over `span` (Hz; the file's sweep where left out).
@@ -73,7 +77,11 @@ def evaluate(
 
 
 def extreme(
-    figure: FigureCall, response: Response, *, which: Which = "max", drive: str | None = None,
+    figure: FigureCall,
+    response: Response,
+    *,
+    which: Which = "max",
+    drive: str | None = None,
     span: Span | None = None,
 ) -> Result:
     """The largest ("max"), smallest ("min") or largest absolute ("magnitude") value over `span`, and

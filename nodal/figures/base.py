@@ -124,7 +124,7 @@ def ask(call: FigureCall, row: FigureName, response: Response, drive: str | None
         raise Unavailable(f"{row.name} needs {' and '.join(row.required)}")
     fields: dict[str, str | float] = {}
     drives: list[str] = []
-    given = call.arguments[len(row.required):]
+    given = call.arguments[len(row.required) :]
     kinds = [*row.required, *(_kind(row, argument, known["contact"]) for argument in given)]
     for position, (kind, argument) in enumerate(zip(kinds, call.arguments, strict=True)):
         if position >= len(row.required) and (kind not in row.optional or kind in fields):
@@ -140,10 +140,17 @@ def ask(call: FigureCall, row: FigureName, response: Response, drive: str | None
         return float(fields[kind]) if kind in fields else None
 
     return Asked(
-        row, response, drive, str(fields.get("reading", "")),
+        row,
+        response,
+        drive,
+        str(fields.get("reading", "")),
         str(fields["contact"]) if "contact" in fields else None,
-        tuple(drives), number("frequency"), number("band"), str(fields.get("origin", ORIGINS[0])),
-        number("epoch"), call.text,
+        tuple(drives),
+        number("frequency"),
+        number("band"),
+        str(fields.get("origin", ORIGINS[0])),
+        number("epoch"),
+        call.text,
     )
 
 

@@ -215,8 +215,10 @@ def driven(network: Network, name: str) -> Network:
             f'an edge at contact "{name}" is not all that the chain gets: {more}; leave the contact out'
         )
     source = VoltageSource(_SOURCE, contact.a, contact.b, Value(1.0), side="test")
-    held = () if grounded[0] or GROUND in (contact.a, contact.b) else (
-        Resistor(f"{_SOURCE} reference", contact.b, GROUND, Value(0.0), side="test"),
+    held = (
+        ()
+        if grounded[0] or GROUND in (contact.a, contact.b)
+        else (Resistor(f"{_SOURCE} reference", contact.b, GROUND, Value(0.0), side="test"),)
     )
     drive = Drive(_SOURCE, ((_SOURCE, 1.0),), "V")
     return replace(

@@ -166,8 +166,17 @@ _WORDS = {
 _LIKELY = ("pF", "nF", "µF", "fF", "nH", "µH", "pH", "mH", "kΩ", "MΩ", "mΩ", "GΩ", "kHz", "MHz", "GHz", "ns",
     "ps",
            "ms", "µs", "mV", "kV", "mA", "µA", "mm", "mW", "kW", "mS", "µS", "MV")  # fmt: skip
-_PREFIX_MEANING = {"k": "kΩ", "K": "kΩ", "M": "MΩ", "G": "GΩ", "p": "pF", "n": "nF", "u": "µF", "µ": "µF",
-    "f": "fF"}
+_PREFIX_MEANING = {
+    "k": "kΩ",
+    "K": "kΩ",
+    "M": "MΩ",
+    "G": "GΩ",
+    "p": "pF",
+    "n": "nF",
+    "u": "µF",
+    "µ": "µF",
+    "f": "fF",
+}
 _NUMBER_FIRST = re.compile(
     r"\s*(?P<number>[-+]?[0-9][0-9.]*(?:[eE][-+]?[0-9]+)?)?\s*(?P<unit>.*?)\s*$", re.DOTALL
 )

@@ -47,9 +47,7 @@ class SweepAnswer:
     quality: Quality
 
 
-def sweep(
-    response: Response, frequencies: Floats, drive: str | None, nodes: Sequence[str]
-) -> SweepAnswer:
+def sweep(response: Response, frequencies: Floats, drive: str | None, nodes: Sequence[str]) -> SweepAnswer:
     """All readings and contacts, and the nodes asked for. `drive` None is the default drive, which must
     exist.
 
@@ -59,7 +57,9 @@ def sweep(
     chosen = network.drive(drive or network.default_drive or "")
     found = response.sweep(frequencies, drive=chosen.name, nodes=nodes, contacts=())
     return SweepAnswer(
-        chosen.name, chosen.unit, frequencies,
+        chosen.name,
+        chosen.unit,
+        frequencies,
         {name: curve.values for name, curve in found.readings.items()},
         {reading.name: ratio_unit(reading.unit, chosen.unit) for reading in network.readings},
         {name: curve.values for name, curve in found.nodes.items()},

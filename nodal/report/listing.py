@@ -41,8 +41,14 @@ def explanation(page: Page, row: Code) -> None:
 def as_data(rows: Sequence[Code]) -> list[dict[str, Any]]:
     """[{"code", "severity", "message", "help", "explanation", "examples"}] in the order of the codes."""
     return [
-        {"code": r.code, "severity": r.severity, "message": _shown(r.message), "help": _shown(r.help),
-         "explanation": r.explanation, "examples": list(r.examples)}
+        {
+            "code": r.code,
+            "severity": r.severity,
+            "message": _shown(r.message),
+            "help": _shown(r.help),
+            "explanation": r.explanation,
+            "examples": list(r.examples),
+        }
         for r in sorted(rows, key=lambda r: r.code)
     ]
 

@@ -10,7 +10,6 @@ INFINITE = "∞"
 NOTHING = "-"
 
 
-
 class _Measured(Quantity):
     """Quantities with preferences of their own, so that nobody else's are changed."""
 

@@ -39,9 +39,16 @@ class Page:
     def __init__(self, width: int = WIDEST, *, color: bool = False) -> None:
         self._out = io.StringIO()
         self.console = Console(
-            file=self._out, width=max(min(width, WIDEST), 40), force_terminal=color, no_color=not color,
-            color_system="standard" if color else None, highlight=False, markup=False, emoji=False,
-            legacy_windows=False, soft_wrap=False,
+            file=self._out,
+            width=max(min(width, WIDEST), 40),
+            force_terminal=color,
+            no_color=not color,
+            color_system="standard" if color else None,
+            highlight=False,
+            markup=False,
+            emoji=False,
+            legacy_windows=False,
+            soft_wrap=False,
         )
 
     def add(self, *things: RenderableType) -> None:
@@ -88,7 +95,10 @@ def _table(first: Group, groups: Sequence[Group], last: Group | None, sections: 
 
 
 def _packed(
-    page: Page, first: Group, groups: Sequence[Group], last: Callable[[Sequence[Group]], Group | None],
+    page: Page,
+    first: Group,
+    groups: Sequence[Group],
+    last: Callable[[Sequence[Group]], Group | None],
     sections: Mapping[int, str],
 ) -> list[Table]:
     """As few tables as hold all groups within the page's width, each with the first column and its last
@@ -117,7 +127,7 @@ def sweep(
 
     `total` is how many points the whole sweep has where these are only some of them, else None.
     """
-    drive = f'per {"volt" if answer.unit == "V" else "ampere"} of {answer.drive}'
+    drive = f"per {'volt' if answer.unit == 'V' else 'ampere'} of {answer.drive}"
     _heading(page, title, [f"case {case}", drive])
     first = Group(("frequency",), (tuple(numbers.frequency(f) for f in answer.frequency),))
     per_drive = "" if answer.unit == "V" else f"V/{answer.unit}"

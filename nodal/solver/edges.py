@@ -125,7 +125,12 @@ class Edges:
 
 
 def respond(
-    system: System, source: Mapping[int, float], outputs: Sequence[Output], *, ramp: float, window: float,
+    system: System,
+    source: Mapping[int, float],
+    outputs: Sequence[Output],
+    *,
+    ramp: float,
+    window: float,
     frequencies: ArrayLike = (),
 ) -> Edges:
     """Prepare the responses of outputs of A(s) x = source to an edge.
@@ -176,8 +181,13 @@ def _alive(
 
 
 def _realised(
-    system: System, source: Mapping[int, float], outputs: Sequence[Output], alive: NDArray[np.intp],
-    ramp: float, pace: float, frequencies: ArrayLike,
+    system: System,
+    source: Mapping[int, float],
+    outputs: Sequence[Output],
+    alive: NDArray[np.intp],
+    ramp: float,
+    pace: float,
+    frequencies: ArrayLike,
 ) -> Realisation | None:
     """Poles and residues of the outputs that are `alive`; None where there are none or they are not known."""
     if system.functions or not len(alive):
@@ -231,9 +241,7 @@ def _check(fronts: Fronts, window: float) -> None:
         raise NotInverted("the fronts do not add up to the transfer function")
 
 
-def _inverted(
-    fronts: Fronts, window: float, ramp: float, outputs: NDArray[np.intp]
-) -> Inversion:
+def _inverted(fronts: Fronts, window: float, ramp: float, outputs: NDArray[np.intp]) -> Inversion:
     def transfer(s: Complexes) -> tuple[Complexes, Floats, Floats]:
         return _flat(fronts.evaluate(s))
 

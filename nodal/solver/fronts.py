@@ -84,7 +84,11 @@ class Fronts:
     """Follows the delays of a system for a window of seconds; no more than `most` of them one by one."""
 
     def __init__(
-        self, system: System, source: Mapping[int, float], outputs: Sequence[Output], window: float,
+        self,
+        system: System,
+        source: Mapping[int, float],
+        outputs: Sequence[Output],
+        window: float,
         most: int,
     ) -> None:
         self.system, self.source, self.outputs = system, source, outputs

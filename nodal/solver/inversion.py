@@ -147,9 +147,7 @@ class Inversion:
         return result * growth
 
 
-def invert(
-    transfer: Transfer, jump: Floats, window: float, ramp: float = 0.0, outputs: int = 1
-) -> Inversion:
+def invert(transfer: Transfer, jump: Floats, window: float, ramp: float = 0.0, outputs: int = 1) -> Inversion:
     """Prepare the responses of stable transfer functions for the times up to `window` (s).
 
     `jump` (n,) is H(∞). The rows of `transfer` belong to `outputs` readings in turn (row k to reading k mod
@@ -212,9 +210,7 @@ def usable_probes(
     return usable, np.tile(np.where(largest == 0, 1.0, largest), count)
 
 
-def _tail(
-    s: Complexes, smooth: Complexes, measure: Floats, ramp: float, cut: bool
-) -> tuple[Tail, int]:
+def _tail(s: Complexes, smooth: Complexes, measure: Floats, ramp: float, cut: bool) -> tuple[Tail, int]:
     """(what H - H(∞) = `smooth` goes over to, index of the s where panels may end).
 
     They end where nothing is left, or, `cut`, where rounding takes over. There H - H(∞) goes with a power of
@@ -272,15 +268,18 @@ class Tail:
 
         early = (area(t) - area(t - ramp)) / ramp
         inside = np.maximum(t[None, :] + (_POINTS[:, None] - 1) * (ramp / 2), 0)
-        late = sum(
-            w / 2 * special.gammainc(power, corner * x) for w, x in zip(_WEIGHTS, inside, strict=True)
-        )
+        late = sum(w / 2 * special.gammainc(power, corner * x) for w, x in zip(_WEIGHTS, inside, strict=True))
         result = factor * np.where(t > 8 * ramp, late, early)
         return result
 
 
 def _panels(
-    transfer: Transfer, jump: Floats, tail: Tail, measure: Floats, shift: float, edges: Floats,
+    transfer: Transfer,
+    jump: Floats,
+    tail: Tail,
+    measure: Floats,
+    shift: float,
+    edges: Floats,
     ramp: float,
 ) -> tuple[Floats, Floats, Complexes, Floats]:
     """(centre, half, values, sum of what the polynomials leave out) of panels that are all fine enough."""

@@ -111,9 +111,7 @@ class Program:
             return
         if known is not None:
             del self.constants[at]
-            self._operations.append(
-                (np.multiply, self._view(source), self._number(-factor), self._view(at))
-            )
+            self._operations.append((np.multiply, self._view(source), self._number(-factor), self._view(at)))
             if known:
                 self._operations.append((np.add, at, self._number(known), at))
         elif abs(factor) == 1:

@@ -122,7 +122,7 @@ def _reduce(g: Floats, c: Floats) -> tuple[Floats, Floats] | None:
         diagonal = np.abs(np.diag(upper))
         if diagonal[-1] <= _RANK * diagonal[0]:
             return None  # singular at every s
-        free = q[:, len(algebraic):]
+        free = q[:, len(algebraic) :]
         g, c = g[:rank] @ free, c[:rank] @ free
 
 
@@ -139,9 +139,7 @@ def _polished(g: Floats, c: Floats, found: Complexes) -> Complexes:
     return result
 
 
-def _polish(
-    g: Floats, c: Floats, found: Complexes, result: Complexes, column: Floats, row: Floats
-) -> None:
+def _polish(g: Floats, c: Floats, found: Complexes, result: Complexes, column: Floats, row: Floats) -> None:
     for k, start in enumerate(found):
         if start.imag < 0:
             continue

@@ -103,10 +103,24 @@ def eliminate(
     starts: tuple[list[int], list[int], list[int]] = ([0], [0], [0])
 
     def order() -> Order:
-        arrays = [np.array(a, dtype=np.int32) for a in (
-            pivot, row, col, starts[0], lower, lower_row, starts[1], upper, upper_col, starts[2],
-            target, left, top,
-        )]
+        arrays = [
+            np.array(a, dtype=np.int32)
+            for a in (
+                pivot,
+                row,
+                col,
+                starts[0],
+                lower,
+                lower_row,
+                starts[1],
+                upper,
+                upper_col,
+                starts[2],
+                target,
+                left,
+                top,
+            )
+        ]
         return Order(size, slots, *arrays)
 
     for _ in range(size):
@@ -161,8 +175,13 @@ def eliminate(
 
 
 def _update(
-    numbers: list[Any], magnitudes: list[Any], pivot: int, lower: list[int], upper: list[int],
-    targets: list[int], flush: Any,
+    numbers: list[Any],
+    magnitudes: list[Any],
+    pivot: int,
+    lower: list[int],
+    upper: list[int],
+    targets: list[int],
+    flush: Any,
 ) -> None:
     """One step at one sample; `targets` row by row."""
     divisor = numbers[pivot]
@@ -178,8 +197,10 @@ def _update(
 
 
 def _choose(
-    heap: list[tuple[int, int, int]], lines: tuple[list[dict[int, int]], list[dict[int, int]]],
-    open_lines: tuple[list[bool], list[bool]], sizes: list[list[Any]],
+    heap: list[tuple[int, int, int]],
+    lines: tuple[list[dict[int, int]], list[dict[int, int]]],
+    open_lines: tuple[list[bool], list[bool]],
+    sizes: list[list[Any]],
     known: tuple[dict[int, list[Any]], dict[int, list[Any]]],
 ) -> tuple[int, int] | None:
     """The next pivot (row, col): the cheapest acceptable, else the largest; None where all is zero.
@@ -213,8 +234,10 @@ def _choose(
                     best, best_cost, best_share = (k, other), cost, share
                     if kind:
                         best = other, k
-            elif best is None and (fallback is None or share > fallback_share) and any(
-                at_sample[line[other]] for at_sample in sizes
+            elif (
+                best is None
+                and (fallback is None or share > fallback_share)
+                and any(at_sample[line[other]] for at_sample in sizes)
             ):
                 fallback, fallback_share = ((other, k) if kind else (k, other)), share
     for item in looked_at:

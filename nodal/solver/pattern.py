@@ -63,9 +63,11 @@ class Pattern:
         weight_of = np.array(weights, dtype=float)
         self.entry_g = np.bincount(entry_of, weight_of * self.g[term_of], minlength=len(index))
         self.entry_c = np.bincount(entry_of, weight_of * self.c[term_of], minlength=len(index))
-        self.function_shares: Shares = [
-            share for share in zip(entries, terms, weights, strict=True) if share[1] in self.functions
-        ] if self.functions else []
+        self.function_shares: Shares = (
+            [share for share in zip(entries, terms, weights, strict=True) if share[1] in self.functions]
+            if self.functions
+            else []
+        )
 
     @cached_property
     def taking(self) -> Any:
@@ -81,7 +83,8 @@ class Pattern:
         the unknowns followed by those."""
         places: dict[Weights, int] = {}
         at = [
-            weights[0][0] if len(weights) == 1 and weights[0][1] == 1.0
+            weights[0][0]
+            if len(weights) == 1 and weights[0][1] == 1.0
             else places.setdefault(weights, self.size + len(places))
             for weights in self.term_cols
         ]
@@ -158,7 +161,7 @@ class Pattern:
     def varying(self, s: Complexes, values: dict[int, Any], out: Complexes) -> None:
         """`matrix` without the rows of `constants`, in the order of `varying_entries`."""
         entries, coefficients, shares = self._varying
-        self._linear(coefficients, s, out[:len(entries)])
+        self._linear(coefficients, s, out[: len(entries)])
         for row, term, weight in shares:
             out[row] += values[term] * weight
 
@@ -247,18 +250,29 @@ class Giving:
         self._followed = np.flatnonzero(follows).tolist()
         behind = size - 1 + np.cumsum(follows)
         self._summands = (
-            np.concatenate((rows, behind[rows])), np.concatenate((columns, columns)),
+            np.concatenate((rows, behind[rows])),
+            np.concatenate((columns, columns)),
             np.concatenate((-weights * constant, -weights * linear)),
             (size + len(self._followed), size + len(differences)),
         )
         self._spoils = np.concatenate((pattern.spoils, pattern.spoils))
         # (row, column, term, weight, number that spoils it)
-        self._function = [
-            share for share in zip(
-                rows.tolist(), columns.tolist(), terms.tolist(), weights.tolist(), pattern.spoils.tolist(),
-                strict=True,
-            ) if share[2] in pattern.functions
-        ] if pattern.functions else []
+        self._function = (
+            [
+                share
+                for share in zip(
+                    rows.tolist(),
+                    columns.tolist(),
+                    terms.tolist(),
+                    weights.tolist(),
+                    pattern.spoils.tolist(),
+                    strict=True,
+                )
+                if share[2] in pattern.functions
+            ]
+            if pattern.functions
+            else []
+        )
 
     @cached_property
     def _first(self) -> Any:
@@ -287,7 +301,7 @@ class Giving:
         stride = _STRIDES[again]
         for row, column, term, weight, spoil in self._function:
             total[row] -= drops[column] * values[term] * (weight * _spoilt(spoil, stride))
-        return total[:self._size]
+        return total[: self._size]
 
 
 def take_differences(differences: list[Weights], drops: Sequence[Complexes]) -> None:
@@ -323,8 +337,11 @@ class Balance:
                 levels.append([])
             levels[level].append(share)
         self._levels = [
-            (np.array([k for k, _, _ in level]), np.array([t for _, t, _ in level]),
-             np.array([[w] for _, _, w in level], dtype=float))
+            (
+                np.array([k for k, _, _ in level]),
+                np.array([t for _, t, _ in level]),
+                np.array([[w] for _, _, w in level], dtype=float),
+            )
             for level in levels
         ]
 

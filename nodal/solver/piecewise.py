@@ -209,7 +209,8 @@ class Panels:
 
 
 def panels(
-    curves: Callable[[Floats], Floats], breaks: Sequence[float] | Floats,
+    curves: Callable[[Floats], Floats],
+    breaks: Sequence[float] | Floats,
     tolerance: Callable[[Floats], Floats],
 ) -> Panels:
     """Several functions at once, (n_functions, n_times), as `piecewise` does one; a tolerance each."""

@@ -140,8 +140,11 @@ class Realisation:
 
 
 def realise(
-    system: System, source: Mapping[int, float], outputs: Sequence[Mapping[int, float]],
-    frequencies: ArrayLike = (), pace: float = 1.0,
+    system: System,
+    source: Mapping[int, float],
+    outputs: Sequence[Mapping[int, float]],
+    frequencies: ArrayLike = (),
+    pace: float = 1.0,
 ) -> Realisation:
     """Realise every output of A(s) x = source; checked against the solver, also at `frequencies` (Hz).
 
@@ -170,11 +173,14 @@ def realise(
             residues.append(residue)
     count = len(outputs)
     found = Realisation(
-        infinity.direct, infinity.slope,
+        infinity.direct,
+        infinity.slope,
         np.concatenate([*poles, np.zeros(0, dtype=complex)]),
         np.concatenate([*modes, np.zeros(0, dtype=complex)]),
         np.concatenate([*residues, np.zeros((count, 0), dtype=complex)], axis=1),
-        tuple(clusters), np.zeros(count), np.zeros(count),
+        tuple(clusters),
+        np.zeros(count),
+        np.zeros(count),
     )
     return _checked(found, system, source, outputs, np.atleast_1d(np.asarray(frequencies, dtype=float)))
 
@@ -218,8 +224,10 @@ def _at_origin(
     arithmetic = MpArithmetic(_DIGITS)
     exacts = [Exact(pattern, arithmetic.context.mpf(10) ** -e, arithmetic) for e in _FAR]
     origin = round((_log_det(exacts[0]) - _log_det(exacts[1])) / (_FAR[1] - _FAR[0]))
-    far, near = ([exact.output(o, x) for o in outputs]
-                 for exact, x in ((exact, exact.solve(source)[0]) for exact in exacts))
+    far, near = (
+        [exact.output(o, x) for o in outputs]
+        for exact, x in ((exact, exact.solve(source)[0]) for exact in exacts)
+    )
     growth = 10 ** ((_FAR[1] - _FAR[0]) // 2)
     resting = [b == 0 or abs(b) < growth * abs(a) for a, b in zip(far, near, strict=True)]
     return origin, np.array(resting, dtype=bool)
@@ -262,7 +270,11 @@ class _Shifted:
 
 
 def _bands(
-    pattern: Pattern, degree: int, origin: int, pace: float, source: Mapping[int, float],
+    pattern: Pattern,
+    degree: int,
+    origin: int,
+    pace: float,
+    source: Mapping[int, float],
     outputs: Sequence[Mapping[int, float]],
 ) -> list[_Band]:
     if degree == 0:
@@ -381,7 +393,9 @@ def _band(form: _Shifted, chosen: NDArray[np.bool_]) -> _Band:
     inverse = scipy.linalg.solve_triangular(t[:count, :count], np.eye(count))
     return _Band(
         form.shift - 1 / np.diagonal(t)[:count],
-        form.shift * np.eye(count) - inverse, c[:, :count] @ inverse, inverse @ b[:count],
+        form.shift * np.eye(count) - inverse,
+        c[:, :count] @ inverse,
+        inverse @ b[:count],
     )
 
 
@@ -423,7 +437,10 @@ def _split(t: Complexes, c: Complexes, b: Complexes) -> list[Cluster]:
 
 
 def _checked(
-    found: Realisation, system: System, source: Mapping[int, float], outputs: Sequence[Mapping[int, float]],
+    found: Realisation,
+    system: System,
+    source: Mapping[int, float],
+    outputs: Sequence[Mapping[int, float]],
     frequencies: Floats,
 ) -> Realisation:
     """With `mismatch` and `largest` filled in."""
@@ -487,9 +504,7 @@ def phi2(z: Complexes) -> Complexes:
     return result
 
 
-def _advance(
-    cluster: Cluster, x: Any, u: Floats, slope: Floats, elapsed: Floats
-) -> Complexes:
+def _advance(cluster: Cluster, x: Any, u: Floats, slope: Floats, elapsed: Floats) -> Complexes:
     """x after `elapsed` seconds of x' = T x + B u, u' = slope; one column a time."""
     n = len(cluster.b)
     size = float(np.linalg.norm(cluster.b)) or 1.0

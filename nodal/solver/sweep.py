@@ -63,7 +63,10 @@ class Solution:
 
 
 def solve(
-    system: System, s: ArrayLike, sources: Sequence[Source], outputs: Sequence[Output],
+    system: System,
+    s: ArrayLike,
+    sources: Sequence[Source],
+    outputs: Sequence[Output],
     plan: Plan | None = None,
 ) -> Solution:
     """Outputs of A(s) x = b for every source at the points s (rad/s, complex, nonzero, shape (n_points,)).
@@ -77,7 +80,10 @@ def solve(
 
 
 def derivative(
-    system: System, s: ArrayLike, sources: Sequence[Source], outputs: Sequence[Output],
+    system: System,
+    s: ArrayLike,
+    sources: Sequence[Source],
+    outputs: Sequence[Output],
     plan: Plan | None = None,
 ) -> tuple[Solution, Solution]:
     """(values, d/ds of the values) as `solve`, from dx/ds = -A⁻¹ (dA/ds) x; sources do not depend on s.
@@ -110,8 +116,13 @@ class _Run:
     """One call of `solve` or `derivative`: its results, and the ladder of means that fills them."""
 
     def __init__(
-        self, system: System, s: Complexes, sources: Sequence[Source], outputs: Sequence[Output],
-        plan: Plan | None, slopes: bool,
+        self,
+        system: System,
+        s: Complexes,
+        sources: Sequence[Source],
+        outputs: Sequence[Output],
+        plan: Plan | None,
+        slopes: bool,
     ) -> None:
         # A difference times ten is taken times ten at the very end: ten times each voltage would round before
         # they cancel, and no correction would ever show it.
@@ -230,9 +241,7 @@ class _Run:
                 if elsewhere.values[0, 0, 0, 0] == 0 and elsewhere.error[0, 0, 0, 0] == 0:
                     self.values[:, k, j], self.error[:, k, j] = 0.0, 0.0
 
-    def _exact_results(
-        self, exact: Exact, source: Source
-    ) -> list[tuple[list[complex], list[float]]]:
+    def _exact_results(self, exact: Exact, source: Source) -> list[tuple[list[complex], list[float]]]:
         """(values, errors) of all outputs for one source, and those of the slopes where asked for."""
         x, correction = exact.solve(source)
         values = [exact.output(o, x) for o in self.outputs]
@@ -309,7 +318,7 @@ class _Block:
         wanted = frozenset(k for o in outputs for k in o)
         differences = self.plan.pattern.differences[0]
         drops = self.scratch.take("x", order.size + len(differences), len(self.s))
-        x = drops[:order.size]
+        x = drops[: order.size]
         x[:] = 0
         for place, value in places.items():
             x[place] = value
@@ -333,8 +342,8 @@ class _Block:
         w, spare = [None if a is None else a[part] for a in self.w], self.spare[part]
         functions = {k: v if np.ndim(v) == 0 else v[part] for k, v in self.functions.items()}
         more = self.scratch.take("more", len(drops), len(spare))
-        more[:order.size] = first[:, part]
-        kernel.solve(w, list(more[:order.size]), spare, kernel.passes(unknowns=wanted, rest=True))
+        more[: order.size] = first[:, part]
+        kernel.solve(w, list(more[: order.size]), spare, kernel.passes(unknowns=wanted, rest=True))
         take_differences(differences, list(more))
         more += drops[:, part]
         second = self.plan.giving.remainder(more, self.s[part], functions, again=True)

@@ -158,8 +158,10 @@ def main() -> None:
     results = {n: compare(f"ladder of {n}", ladder(n)) for n in (10, 13, 50, 200, 1000)}
     (_, few, short), (_, many, long) = results[50], results[1000]
     growth = math.log(1000 / 50)
-    print(f"50 to 1000 sections: multiply-adds grow with exponent {math.log(many / few) / growth:.3f},"
-          f" time with {math.log(long / short) / growth:.3f}")
+    print(
+        f"50 to 1000 sections: multiply-adds grow with exponent {math.log(many / few) / growth:.3f},"
+        f" time with {math.log(long / short) / growth:.3f}"
+    )
     subprocess.run([sys.executable, __file__, "memory"], check=True)
 
 

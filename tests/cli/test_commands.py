@@ -211,7 +211,11 @@ def test_several_sources_ask_for_a_drive():
 @pytest.mark.parametrize(
     ("text", "hint"),
     [
-        ("10mhz", "10MHz"), ("1,5", "hertz"), ("-1", "hertz"), ("5 V", "Hz"), ("nan", "hertz"),
+        ("10mhz", "10MHz"),
+        ("1,5", "hertz"),
+        ("-1", "hertz"),
+        ("5 V", "Hz"),
+        ("nan", "hertz"),
         ("1e999", "beyond"),
     ],
 )

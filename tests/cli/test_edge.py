@@ -148,11 +148,15 @@ def test_poles_of_a_second_order_network(run: Runner) -> None:
 
 def test_poles_and_zeros_of_a_twin_t() -> None:
     """(s² + 1)/(s² + 4 s + 1) with a third pair that cancels (Tuttle 1940)."""
-    found = nodal.loads(
-        "nodal 1\nsource s: a to ground = 1 V\nbranch r1: a to x = 1 Ω\nbranch r2: x to b = 1 Ω\n"
-        "branch c3: x to ground = 2 F\nbranch c1: a to y = 1 F\nbranch c2: y to b = 1 F\n"
-        "branch r3: y to ground = 0.5 Ω\nreading out: b to ground"
-    ).network().poles()
+    found = (
+        nodal.loads(
+            "nodal 1\nsource s: a to ground = 1 V\nbranch r1: a to x = 1 Ω\nbranch r2: x to b = 1 Ω\n"
+            "branch c3: x to ground = 2 F\nbranch c1: a to y = 1 F\nbranch c2: y to b = 1 F\n"
+            "branch r3: y to ground = 0.5 Ω\nreading out: b to ground"
+        )
+        .network()
+        .poles()
+    )
     assert [p.s for p in found.poles] == pytest.approx([-2 + 3**0.5, -1, -2 - 3**0.5], rel=1e-12)
     assert [p.s for p in found.cancelled["out"]] == pytest.approx([-1])
     zero = next(root for root in found.zeros["out"] or () if root.pair)

@@ -78,11 +78,14 @@ def test_grid_has_both_sides_of_a_jump() -> None:
 def test_grid_follows_decades() -> None:
     """A pole of 1 µs watched for 1 s: straight lines between 200 samples miss the curve by less than 0.1
     %."""
-    response = edge("""
+    response = edge(
+        """
     source s: in to ground = 1 V behind 1 kΩ
     branch c: in to ground = 1 nF
     reading out: in to ground
-    """, 1.0)
+    """,
+        1.0,
+    )
     grid = response.grid(200)
     t = np.geomspace(1e-9, 1, 5000)
     out = response.readings["out"]
@@ -92,13 +95,16 @@ def test_grid_follows_decades() -> None:
 def test_matched_square_root_line() -> None:
     """An RC line followed by one 1000 times longer: erfc(α/(2√t)), t50 = 1.09905466916 α², t90/t50 =
     28.8102673389 (Wigington and Nahman 1957): the long tail does not wrap round."""
-    out = edge("""
+    out = edge(
+        """
     stock rc { resistance 1 kΩ/m; capacitance 1 nF/m }
     source s: in to ground = 1 V
     cable near: in, ground to out, ground = 1 m of rc
     cable far: out, ground to end, ground = 1000 m of rc
     reading out: out to ground
-    """, 100e-6).readings["out"]
+    """,
+        100e-6,
+    ).readings["out"]
     t = np.geomspace(1e-9, 100e-6, 300)
     assert_allclose(out(t), special.erfc(np.sqrt(1e-6) / (2 * np.sqrt(t))), atol=1e-12)
     t50, t90 = crossing(out, 0.5, 1e-7, 1e-4), crossing(out, 0.9, 1e-7, 1e-4)
@@ -113,13 +119,16 @@ def test_front_of_a_lossy_line() -> None:
     r, inductance, c = 20.0, 250e-9, 100e-12
     t_line = 2 * math.sqrt(inductance * c)
     a = r / (2 * inductance)
-    out = edge("""
+    out = edge(
+        """
     stock lossy { resistance 20 Ω/m; inductance 250 nH/m; capacitance 100 pF/m }
     source s: in to ground = 1 V
     cable near: in, ground to out, ground = 2 m of lossy
     cable far: out, ground to end, ground = 40 m of lossy
     reading out: out to ground
-    """, 20 * t_line).readings["out"]
+    """,
+        20 * t_line,
+    ).readings["out"]
 
     def expected(t: float) -> float:
         if t < t_line:
@@ -140,13 +149,16 @@ def test_front_of_a_lossy_line() -> None:
 def test_skin_effect_of_a_long_matched_line() -> None:
     """Lossless inductance and capacitance with a √s resistance far above its corner: erfc(k/(2√(t - T))),
     k = R_k l √(2/ω_k)/(2 Z0) to first order in the loss (Wigington and Nahman 1957)."""
-    response = edge("""
+    response = edge(
+        """
     stock skin { impedance 50 Ω; velocity 0.66; skin 0.1 Ω/m at 1 GHz }
     source s: in to ground = 1 V behind 50 Ω
     cable w: in, ground to out, ground = 1 m of skin
     branch load: out to ground = 50 Ω
     reading out: out to ground times 2
-    """, 20e-9)
+    """,
+        20e-9,
+    )
     out = response.readings["out"]
     arrival = float(out.arrivals[1])
     k = 0.1 * math.sqrt(2 / (2 * math.pi * 1e9)) / (2 * 50)
@@ -158,13 +170,16 @@ def test_skin_effect_of_a_long_matched_line() -> None:
 @pytest.mark.parametrize("gain", [0.5, -0.5, -0.9])
 def test_delayed_feedback(gain: float) -> None:
     """An amplifier with nothing but a delay that feeds itself: 1 + g + g² + …, one term each delay."""
-    out = edge(f"""
+    out = edge(
+        f"""
     source s: in to ground = 1 V
     branch a: in to sum = 1 kΩ
     branch b: sum to back = 1 kΩ
     amplifier loop: sum, ground to back, ground {{ gain {2 * gain!r}; delay 10 ns }}
     reading out: sum to ground times 2
-    """, 210e-9).readings["out"]
+    """,
+        210e-9,
+    ).readings["out"]
     terms = np.cumsum([gain**n for n in range(21)])  # sum = (1 + 2 gain · the sum, delayed)/2
     assert_allclose(out(10e-9 * np.arange(21)), terms, rtol=1e-12)
     assert_allclose(out(10e-9 * np.arange(21) + 9e-9), terms, rtol=1e-12)
@@ -172,13 +187,16 @@ def test_delayed_feedback(gain: float) -> None:
 
 def test_front_at_the_end_of_the_window() -> None:
     """A front that arrives with the last instant is there, though sums of delays are rounded."""
-    out = edge("""
+    out = edge(
+        """
     source s: in to ground = 1 V
     branch a: in to sum = 1 kΩ
     branch b: sum to back = 1 kΩ
     amplifier loop: sum, ground to back, ground { gain 1; delay 10 ns }
     reading out: sum to ground times 2
-    """, 200e-9).readings["out"]
+    """,
+        200e-9,
+    ).readings["out"]
     assert sum([10e-9] * 20) > 200e-9
     assert out(200e-9) == pytest.approx(2 - 0.5**20, rel=1e-14)
 
@@ -194,8 +212,9 @@ reading out: out to ground
 def test_overshoot_of_a_series_circuit() -> None:
     """25 Ω, 278.5116 nH, 9.5 pF: 79.45619 % at 5.123818 ns for an ideal step (closed form)."""
     out = edge(SERIES, 100e-9).readings["out"]
-    top = optimize.minimize_scalar(lambda t: -float(out(t)), bounds=(4e-9, 6e-9), method="bounded",
-                                   options={"xatol": 1e-16})
+    top = optimize.minimize_scalar(
+        lambda t: -float(out(t)), bounds=(4e-9, 6e-9), method="bounded", options={"xatol": 1e-16}
+    )
     zeta = 12.5 * math.sqrt(9.5e-12 / 278.5116e-9)
     assert -top.fun - 1 == pytest.approx(math.exp(-math.pi * zeta / math.sqrt(1 - zeta**2)), rel=1e-13)
     assert -top.fun - 1 == pytest.approx(0.7945619, abs=1e-7)
@@ -203,15 +222,18 @@ def test_overshoot_of_a_series_circuit() -> None:
 
 
 @pytest.mark.parametrize("ramp", [0.0, 1e-9])
-@pytest.mark.parametrize("body", [
-    SERIES,
-    """
+@pytest.mark.parametrize(
+    "body",
+    [
+        SERIES,
+        """
     source s: tip to ground = 1 V
     branch upper: tip to out = 9 MΩ ∥ 10 pF
     branch lower: out to ground = 1 MΩ ∥ 100 pF
     reading out: out to ground
     """,
-])
+    ],
+)
 def test_both_methods_agree(monkeypatch: pytest.MonkeyPatch, body: str, ramp: float) -> None:
     """Poles and inversion within 1e-7 of each reading's own step, and within the sum of their estimates."""
     from nodal.solver import edges
@@ -250,11 +272,14 @@ def test_estimate_of_poles_counts_the_mismatch(monkeypatch: pytest.MonkeyPatch) 
 def test_slow_filter_behind_a_source() -> None:
     """1 kΩ into 2 nF with 50 Ω: from 1/21 to 1 with 2.1 µs (elementary), though far above its pole
     rounding spoils the determinant that tells where poles are."""
-    out = edge("""
+    out = edge(
+        """
     source s: in to ground = 1 V behind 1 kΩ
     branch filter: in to ground = 2 nF -- 50 Ω
     reading out: in to ground
-    """, 1e-3).readings["out"]
+    """,
+        1e-3,
+    ).readings["out"]
     assert out.method == POLES
     t = np.concatenate([[0.0], np.geomspace(1e-9, 1e-3, 50)])
     assert_allclose(out(t), 1 - 20 / 21 * np.exp(-t / 2.1e-6), rtol=1e-13)
@@ -262,13 +287,16 @@ def test_slow_filter_behind_a_source() -> None:
 
 def test_values_at_both_ends() -> None:
     """v(0+) = H(∞), v(∞) = H(0); 9 MΩ ∥ 10 pF over 1 MΩ ∥ 100 pF with 99 µs between (common practice)."""
-    response = edge("""
+    response = edge(
+        """
     under test { source s: tip to ground = 2 V }
     contact tip: tip to ground
     branch upper: tip to out = 9 MΩ ∥ 10 pF
     branch lower: out to ground = 1 MΩ ∥ 100 pF
     reading out: out to ground times 10
-    """, 1e-3)
+    """,
+        1e-3,
+    )
     out = response.readings["out"]
     assert_allclose(out([0, 99e-6]), [20 / 11, 2 - (2 - 20 / 11) / math.e], rtol=1e-13)
     assert out.final == 2
@@ -281,14 +309,17 @@ def test_values_at_both_ends() -> None:
 
 def test_balanced_output_is_zero() -> None:
     """A bridge in balance shows nothing but exact zeros."""
-    out = edge("""
+    out = edge(
+        """
     source s: in to ground = 1 V behind 50 Ω
     branch a: in to p = 1 kΩ ∥ 1 pF
     branch b: in to n = 1 kΩ ∥ 1 pF
     branch c: p to ground = 3 kΩ ∥ 7 pF
     branch d: n to ground = 3 kΩ ∥ 7 pF
     reading out: p to n
-    """, 1e-6).readings["out"]
+    """,
+        1e-6,
+    ).readings["out"]
     assert (out(np.linspace(0, 1e-6, 20)) == 0).all()
     assert out.error == 0
 
@@ -307,12 +338,15 @@ def test_impulse_names_the_reading() -> None:
 
 def test_growing_network_follows_its_poles() -> None:
     """A negative resistance: exp growth, poles in the right half plane (elementary)."""
-    out = edge("""
+    out = edge(
+        """
     source s: in to ground = 1 V behind 1 kΩ
     branch c: in to ground = 1 nF
     amplifier a: in, ground to in, ground { transconductance 2 mS }
     reading out: in to ground
-    """, 5e-6).readings["out"]
+    """,
+        5e-6,
+    ).readings["out"]
     t = np.linspace(0, 5e-6, 50)
     assert_allclose(out(t), np.expm1(t / 1e-6), rtol=1e-12)
 
@@ -355,13 +389,16 @@ def test_shipped_circuits(name: str) -> None:
 
 def test_many_passages() -> None:
     """A window of 100,000 passages of a lossy line: it ends at the divider of its resistances."""
-    out = edge("""
+    out = edge(
+        """
     stock lossy { resistance 10 Ω/m; inductance 250 nH/m; capacitance 100 pF/m }
     source s: in to ground = 1 V behind 25 Ω
     cable w: in, ground to out, ground = 2 m of lossy
     branch load: out to ground = 100 Ω
     reading out: out to ground
-    """, 1e-3).readings["out"]
+    """,
+        1e-3,
+    ).readings["out"]
     assert_allclose(out([1e-5, 1e-4, 1e-3]), 100 / 145, rtol=1e-11)
     assert out([1e-8])[0] == pytest.approx(math.exp(-10 / 50 * 2 / 2) * 8 / 9, rel=0.03)
 

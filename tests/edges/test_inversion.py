@@ -75,8 +75,11 @@ CASES: dict[str, tuple[Curve, Curve, float]] = {
     "two equal poles": (lambda s: 1 / (1 + 0.1 * s) ** 2, lambda t: special.gammainc(2, t / 0.1), 0.0),
     "half a second order": (lambda s: 1e6 / (s * s + 1e3 * s + 1e6), second_order(0.5, 1e3), 0.0),
     "ringing": (lambda s: 1e6 / (s * s + 0.2 * s + 1e6), second_order(1e-4, 1e3), 0.0),
-    "jump": (lambda s: 1 / 11 + (1 / 10 - 1 / 11) / (1 + 99e-6 * s),
-             lambda t: 0.1 - (0.1 - 1 / 11) * np.exp(-t / 99e-6), 1 / 11),
+    "jump": (
+        lambda s: 1 / 11 + (1 / 10 - 1 / 11) / (1 + 99e-6 * s),
+        lambda t: 0.1 - (0.1 - 1 / 11) * np.exp(-t / 99e-6),
+        1 / 11,
+    ),
     "matched √s line": (lambda s: np.exp(-0.1 * np.sqrt(s)), erfc(0.1), 0.0),
     "very short √s line": (lambda s: np.exp(-1e-7 * np.sqrt(s)), erfc(1e-7), 0.0),
     "very long √s line": (lambda s: np.exp(-3 * np.sqrt(s)), erfc(3), 0.0),
@@ -144,8 +147,11 @@ def test_ramp(ramp: float) -> None:
 
 def test_noisy_transfer_function_ends_in_closed_form() -> None:
     """Where rounding takes over, what is left of H goes on as a power of s: one pole and a √s line."""
-    for h, expected in ((lambda s: 1 / (1 + 0.1 * s), lambda t: -np.expm1(-t / 0.1)),
-                        (lambda s: 1 / np.sqrt(1 + s), lambda t: special.erf(np.sqrt(t)))):
+    for h, expected in (
+        (lambda s: 1 / (1 + 0.1 * s), lambda t: -np.expm1(-t / 0.1)),
+        (lambda s: 1 / np.sqrt(1 + s), lambda t: special.erf(np.sqrt(t))),
+    ):
+
         def transfer(s: Any, h: Curve = h) -> Any:
             values = h(s)[None]
             return values, np.where(np.abs(s) > 1e9, 1.0, 0.0)[None], np.abs(values)

@@ -53,8 +53,10 @@ def ladder(sections: int, r: float, henry: float, c: float, load: float) -> tupl
         current = sections + 1 + k
         along = ((k, 1.0), (k + 1, -1.0))
         terms += [
-            Term(along, ((current, 1.0),), 1.0), Term(((current, 1.0),), along, 1.0),
-            own(current, -r, -henry), own(k + 1, 0.0, c),
+            Term(along, ((current, 1.0),), 1.0),
+            Term(((current, 1.0),), along, 1.0),
+            own(current, -r, -henry),
+            own(k + 1, 0.0, c),
         ]
     return System(2 * sections + 1, tuple(terms)), {0: 1 / 50}, [{sections: 1.0}]
 
@@ -160,13 +162,16 @@ def test_ramp(ramp: float) -> None:
     nothing."""
     found = realise(*buffered([1.0, 3.0]))
     with mpmath.workdps(60):
+
         def area(t: Any) -> Any:
             if t <= 0:
                 return mpmath.mpf(0)
             return t - 4 + (9 * mpmath.exp(-t / 3) - mpmath.exp(-t)) / 2
 
-        expected = [float((area(mpmath.mpf(t)) - area(mpmath.mpf(t) - mpmath.mpf(ramp))) / mpmath.mpf(ramp))
-                    for t in SECONDS[::7]]
+        expected = [
+            float((area(mpmath.mpf(t)) - area(mpmath.mpf(t) - mpmath.mpf(ramp))) / mpmath.mpf(ramp))
+            for t in SECONDS[::7]
+        ]
     assert_allclose(found.edge(SECONDS[::7], ramp)[0], expected, rtol=1e-11, atol=1e-16)
 
 

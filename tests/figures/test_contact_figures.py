@@ -48,7 +48,8 @@ def test_the_least_impedance_of_a_series_resonance_is_its_resistance():
     r, inductance, c = 1e-3, 100e-9, 10e-12
     f0 = 1 / (2 * math.pi * math.sqrt(inductance * c))
     response = Analytic(
-        impedance={"touch": lambda s: r + s * inductance + 1 / (s * c)}, poles=(f0,),
+        impedance={"touch": lambda s: r + s * inductance + 1 / (s * c)},
+        poles=(f0,),
         grid=SweepGrid(1e3, 1e9, 20.0),
     )
     found = extreme(call("impedance", "touch"), response, which="min")
@@ -67,7 +68,8 @@ def test_a_tiny_disturbance_keeps_its_digits():
 
 def test_error_compares_the_display_with_what_was_there():
     response = Analytic(
-        {"screen": lambda s: 0.98 * 0.5 + 0 * s}, undisturbed={"touch": lambda s: -0.5 + 0 * s},
+        {"screen": lambda s: 0.98 * 0.5 + 0 * s},
+        undisturbed={"touch": lambda s: -0.5 + 0 * s},
         loaded={"other": lambda s: 1 + 0 * s},
     )
     found = evaluate(call("error", "screen", "touch"), response, at=1.0)

@@ -293,14 +293,17 @@ def test_a_contact_that_is_not_all() -> None:
     reading out: m to ground
     step over 1 µs
     """
-    assert "meets the circuit under test at \"ground\" too" in result(body, "rise", "touch").message
+    assert 'meets the circuit under test at "ground" too' in result(body, "rise", "touch").message
 
 
 # In the language
 
 
 def test_in_requirements() -> None:
-    text = "nodal 1\n" + ONE_POLE + """
+    text = (
+        "nodal 1\n"
+        + ONE_POLE
+        + """
     step over 40 µs
     require ra: rise(out) = 2.2 µs ± 1 %
     require rb: settling(out, 2 %) <= 4 µs
@@ -309,6 +312,7 @@ def test_in_requirements() -> None:
     require re: overshoot(out, s) <= 1 %
     require rf: rise(out) <= 2 µs
     """
+    )
     found = checks.evaluate(nodal.loads(text))
     assert [r.status for r in found] == ["pass"] * 5 + ["fail"]
     assert found[3].figure == "response_settling_time(out, 15 µs, true)"

@@ -168,7 +168,8 @@ def test_group_delay_of_one_pole():
 def test_rejection_compares_two_drives():
     response = Analytic(
         {"screen": {"difference": lambda s: 2.0 + 0 * s, "common": lambda s: 1e-3 * (1 + s / WC)}},
-        drives=("difference", "common"), default_drive=None,
+        drives=("difference", "common"),
+        default_drive=None,
     )
     found = evaluate(call("rejection", "screen", "difference", "common"), response, at=FC)
     assert found.value == close(2e3 / math.sqrt(2))

@@ -101,10 +101,13 @@ def test_values_from_outside_are_warned_of_too() -> None:
 
 
 def test_spread_below_zero_is_said_once_for_all_sections() -> None:
-    text = DIVIDER + """assembly x(p to q; c) { branch b: p to q = c }
+    text = (
+        DIVIDER
+        + """assembly x(p to q; c) { branch b: p to q = c }
     chain w: 9 of x(tip to plug; c = 1 Ω ± 3 Ω)
     branch even: tip to plug = 1 pF ± 1 pF ∥ 1 pF ± 100 % with k = 2
     """
+    )
     assert [f.code for f in nodal.loads(text).diagnostics] == ["spread-below-zero"]
 
 
@@ -138,9 +141,12 @@ def test_allow_in_one_section_holds_for_all(name: str) -> None:
 
 
 def test_couplings_inside_show_the_place_of_use() -> None:
-    text = DIVIDER + """assembly x(p to q) { branch a: p to q = 1 Ω; coupling k: a with a = 0.1 }
+    text = (
+        DIVIDER
+        + """assembly x(p to q) { branch a: p to q = 1 Ω; coupling k: a with a = 0.1 }
     chain c: 3 of x(tip to plug)
     """
+    )
     with pytest.raises(nodal.DesignError) as caught:
         nodal.loads(text)
     (finding,) = caught.value.diagnostics

@@ -50,7 +50,7 @@ def sensitivity(system, s, source, output):
     step = 1 + 2.0**-40
     for k, term in enumerate(system.terms):
         moved = Term(term.rows, term.cols, term.g * step, term.c * step, term.f)
-        other = System(system.size, (*system.terms[:k], moved, *system.terms[k + 1:]), system.functions)
+        other = System(system.size, (*system.terms[:k], moved, *system.terms[k + 1 :]), system.functions)
         total += abs(reference(other, s, source, [output])[0] / base - 1) * 2**40
     return float(total)
 
@@ -71,7 +71,7 @@ def test_random_networks(example, exponents):
                 floor = max(abs(complex(v)) for v in parts)
                 assert abs(solution.values[0, at, k]) <= 1000 * EPSILON * floor
                 continue
-            error = worst_error(solution.values[0, at:at + 1, k], expected[at:at + 1])
+            error = worst_error(solution.values[0, at : at + 1, k], expected[at : at + 1])
             if error > 1e-10 and solution.error[0, at, k] <= 1e-10:
                 bound = 1000 * EPSILON * sensitivity(system, complex(point), source, output)
                 assert error <= bound, (exponents[k], output)
@@ -116,7 +116,7 @@ def test_ladder_at_extreme_values(sections):
         expected = reference(system, complex(point), {drive: 1.0}, outputs, digits=120)
         for at in range(2):
             if abs(expected[at]) > 1e-290:
-                assert worst_error(solution.values[0, at:at + 1, k], expected[at:at + 1]) < 1e-10
+                assert worst_error(solution.values[0, at : at + 1, k], expected[at : at + 1]) < 1e-10
 
 
 def low_pass():
@@ -197,10 +197,13 @@ def test_a_poor_plan_is_replaced():
         assert worst_error(solution.values[0, :, k], expected) < 1e-10
 
 
-@pytest.mark.parametrize("call", [
-    lambda system: solve(system, [1j, 2j], [{1: 1.0}], [{0: 1.0}, {2: 1.0}]),
-    lambda system: limit(system, [{1: 1.0}], [{0: 1.0}]),
-])
+@pytest.mark.parametrize(
+    "call",
+    [
+        lambda system: solve(system, [1j, 2j], [{1: 1.0}], [{0: 1.0}, {2: 1.0}]),
+        lambda system: limit(system, [{1: 1.0}], [{0: 1.0}]),
+    ],
+)
 def test_a_floating_island_is_named(call):
     net = Sketch(5)
     net.resistor(1, 0, 1.0)

@@ -21,26 +21,39 @@ class Analytic(Response):
     """Readings, contacts and drives as functions of s = jω; `slopes` are the derivatives dH/ds."""
 
     def __init__(
-        self, readings: dict[str, Transfer | dict[str, Transfer]] | None = None, *,
-        slopes: dict[str, Transfer] | None = None, loaded: dict[str, Transfer] | None = None,
-        undisturbed: dict[str, Transfer] | None = None, change: dict[str, Transfer] | None = None,
-        impedance: dict[str, Transfer] | None = None, density: Callable[[Any], Any] | None = None,
-        poles: tuple[float, ...] = (), grid: SweepGrid | None = GRID,
-        drives: tuple[str, ...] = ("source",), default_drive: str | None = "source", unit: str = "V",
+        self,
+        readings: dict[str, Transfer | dict[str, Transfer]] | None = None,
+        *,
+        slopes: dict[str, Transfer] | None = None,
+        loaded: dict[str, Transfer] | None = None,
+        undisturbed: dict[str, Transfer] | None = None,
+        change: dict[str, Transfer] | None = None,
+        impedance: dict[str, Transfer] | None = None,
+        density: Callable[[Any], Any] | None = None,
+        poles: tuple[float, ...] = (),
+        grid: SweepGrid | None = GRID,
+        drives: tuple[str, ...] = ("source",),
+        default_drive: str | None = "source",
+        unit: str = "V",
     ) -> None:
         self.curves = readings or {}
         self.slopes = slopes or {}
         self.contact_curves = {
-            "loaded": loaded or {}, "undisturbed": undisturbed or {}, "change": change or {},
+            "loaded": loaded or {},
+            "undisturbed": undisturbed or {},
+            "change": change or {},
             "impedance": impedance or {},
         }
         self.density = density
         self.poles = poles
         names = dict.fromkeys(name for curves in self.contact_curves.values() for name in curves)
         self.network = Network(
-            nodes=("ground", "node"), parts=(), contacts=tuple(Contact(name, 1, 0) for name in names),
+            nodes=("ground", "node"),
+            parts=(),
+            contacts=tuple(Contact(name, 1, 0) for name in names),
             readings=tuple(Reading(name, 1, 0, unit=unit) for name in self.curves),
-            drives=tuple(Drive(name, ((name, 1.0),)) for name in drives), default_drive=default_drive,
+            drives=tuple(Drive(name, ((name, 1.0),)) for name in drives),
+            default_drive=default_drive,
             grid=grid,
         )
 

@@ -110,7 +110,10 @@ CALL: tuple[Code, ...] = (
         "A sweep has 2,000,000 points at most.",
     ),
     Code(
-        "no-solution", "error", "{reason}", "",
+        "no-solution",
+        "error",
+        "{reason}",
+        "",
         "The network was readable but has no unique solution at some frequency, so nothing can be printed.",
     ),
     Code(

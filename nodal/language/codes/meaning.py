@@ -10,7 +10,7 @@ MEANING: tuple[Code, ...] = (
     Code(
         "unknown-name",
         "error",
-        "there is no {what} \"{unknown}\"",
+        'there is no {what} "{unknown}"',
         "{hint}",
         "A name is used that nothing declares. Names are case-sensitive; nodes "
         "are one namespace, everything declared is another. Inside an assembly "
@@ -28,7 +28,7 @@ MEANING: tuple[Code, ...] = (
     Code(
         "duplicate-name",
         "error",
-        "the name \"{duplicate}\" is declared twice",
+        'the name "{duplicate}" is declared twice',
         "choose another name for one of them",
         "Everything that is declared shares one namespace: values, sources, "
         "branches, stocks, cables, readings and so on. In a case a statement that "
@@ -44,23 +44,17 @@ MEANING: tuple[Code, ...] = (
         "error",
         "this value refers to itself: {names}",
         "give one of them a value that does not depend on the others",
-        "A `let` may use other lets in any order, but not itself, directly or "
-        "through others.",
-        (
-            _FRAME + "let p = 2 * q\nlet q = p\nbranch t: a to ground = p * 1 Ω",
-        ),
+        "A `let` may use other lets in any order, but not itself, directly or through others.",
+        (_FRAME + "let p = 2 * q\nlet q = p\nbranch t: a to ground = p * 1 Ω",),
     ),
     Code(
         "dotted-let",
         "error",
-        "\"{name_}\" has a dot: arguments of a place are set in a case",
-        "write `case NAME {{ let {name_} = VALUE }}`, or give the argument where "
-        "the assembly is used",
+        '"{name_}" has a dot: arguments of a place are set in a case',
+        "write `case NAME {{ let {name_} = VALUE }}`, or give the argument where the assembly is used",
         "`let place.argument = VALUE` overrides an argument that was given where "
         "the assembly is used, in one case.",
-        (
-            _FRAME + "let n.skew = 1 %",
-        ),
+        (_FRAME + "let n.skew = 1 %",),
     ),
     Code(
         "wrong-dimension",
@@ -98,9 +92,7 @@ MEANING: tuple[Code, ...] = (
         "this divisor is zero",
         "",
         "The value after `/` is exactly zero.",
-        (
-            _FRAME + "let z = 0\nbranch t: a to ground = 1 Ω / z",
-        ),
+        (_FRAME + "let z = 0\nbranch t: a to ground = 1 Ω / z",),
     ),
     Code(
         "negative-root",
@@ -108,9 +100,7 @@ MEANING: tuple[Code, ...] = (
         "the square root of a negative value",
         "",
         "The argument of `sqrt` is below zero.",
-        (
-            _FRAME + "branch t: a to ground = sqrt(-4) * 1 Ω",
-        ),
+        (_FRAME + "branch t: a to ground = sqrt(-4) * 1 Ω",),
     ),
     Code(
         "overflow",
@@ -128,11 +118,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "this number is too small to compute with",
         "write 0 if that is meant",
-        "The number is not zero but below the smallest floating-point number, "
-        "about 5e-324 in SI units.",
-        (
-            _FRAME + "branch t: a to ground = 1e-400 Ω",
-        ),
+        "The number is not zero but below the smallest floating-point number, about 5e-324 in SI units.",
+        (_FRAME + "branch t: a to ground = 1e-400 Ω",),
     ),
     Code(
         "formula-too-long",
@@ -142,7 +129,8 @@ MEANING: tuple[Code, ...] = (
         "Lets that each use another several times grow without bound when they "
         "are written out, as they have to be where tolerances take part.",
         (
-            _FRAME + "let x0 = 1 Ω ± 1 %\n"
+            _FRAME
+            + "let x0 = 1 Ω ± 1 %\n"
             + "".join(f"let x{i} = x{i - 1} + x{i - 1}\n" for i in range(1, 20))
             + "branch t: a to ground = x19",
         ),
@@ -166,12 +154,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{what} is above 1",
         "write a fraction between 0 and 1",
-        "The velocity of a cable is a fraction of that of light; the shield's "
-        "coupling is 1 at most.",
-        (
-            _FRAME + "stock k { impedance 50 Ω; velocity 1.2 }\ncable c: a, ground to b, "
-            "ground = 1 m of k",
-        ),
+        "The velocity of a cable is a fraction of that of light; the shield's coupling is 1 at most.",
+        (_FRAME + "stock k { impedance 50 Ω; velocity 1.2 }\ncable c: a, ground to b, ground = 1 m of k",),
     ),
     Code(
         "network-in-arithmetic",
@@ -193,20 +177,16 @@ MEANING: tuple[Code, ...] = (
         "Tolerance, trim, ratings, drift, loss and names belong to a value as it "
         "stands at its place. A toleranced `let` can take part in arithmetic: its "
         "spread goes along.",
-        (
-            _FRAME + "branch t: a to ground = 2 * (1 Ω ± 1 %)",
-        ),
+        (_FRAME + "branch t: a to ground = 2 * (1 Ω ± 1 %)",),
     ),
     Code(
         "qualified-in-arithmetic",
         "error",
-        "arithmetic would lose what \"{text}\" is qualified by besides ±",
+        'arithmetic would lose what "{text}" is qualified by besides ±',
         "qualify the result instead",
         "A `let` with trim, ratings, drift or loss keeps them where its name "
         "stands alone. What they would be after arithmetic is not defined.",
-        (
-            _FRAME + "let x = 1 Ω rated 5 V\nbranch t: a to ground = 2 * x",
-        ),
+        (_FRAME + "let x = 1 Ω rated 5 V\nbranch t: a to ground = 2 * x",),
     ),
     Code(
         "qualifier-twice",
@@ -240,9 +220,7 @@ MEANING: tuple[Code, ...] = (
         "a tolerance below zero",
         "write its half-width: ± 1 %",
         "`±` is followed by the half-width of the interval, zero or more.",
-        (
-            _FRAME + "branch t: a to ground = 1 Ω ± -1 %",
-        ),
+        (_FRAME + "branch t: a to ground = 1 Ω ± -1 %",),
     ),
     Code(
         "percent-of-zero",
@@ -250,9 +228,7 @@ MEANING: tuple[Code, ...] = (
         "a percentage of zero is zero",
         "write the half-width with its unit",
         "A relative tolerance of a value that is zero allows nothing.",
-        (
-            _FRAME + "reading m: a to ground\nrequire w: phase(m) at 1 Hz = 0 ° ± 1 %",
-        ),
+        (_FRAME + "reading m: a to ground\nrequire w: phase(m) at 1 Hz = 0 ° ± 1 %",),
     ),
     Code(
         "trim-reversed",
@@ -260,9 +236,7 @@ MEANING: tuple[Code, ...] = (
         "the trim range runs from {low} down to {high}",
         "write the smaller end first",
         "`trim` is followed by the lower and the upper end of the range.",
-        (
-            _FRAME + "branch t: a to ground = 9 pF trim 10 pF to 8 pF",
-        ),
+        (_FRAME + "branch t: a to ground = 9 pF trim 10 pF to 8 pF",),
     ),
     Code(
         "trim-misses-value",
@@ -270,9 +244,7 @@ MEANING: tuple[Code, ...] = (
         "the trim range from {low} to {high} does not contain the value, {value}",
         "",
         "A part that can be trimmed is set somewhere within its range.",
-        (
-            _FRAME + "branch t: a to ground = 20 pF trim 5 pF to 10 pF",
-        ),
+        (_FRAME + "branch t: a to ground = 20 pF trim 5 pF to 10 pF",),
     ),
     Code(
         "wrong-arguments",
@@ -292,27 +264,22 @@ MEANING: tuple[Code, ...] = (
         "the formulas hold for thin wire: write the inductance itself",
         "The inductance formulas of wire, rectangle and circle assume a wire that "
         "is thin against its length or the loop.",
-        (
-            _FRAME + "branch t: a to ground = wire(4 mm, 1 mm)",
-        ),
+        (_FRAME + "branch t: a to ground = wire(4 mm, 1 mm)",),
     ),
     Code(
         "inner-node",
         "error",
-        "\"{node}\" is a node inside a branch or an assembly: it can be read, not "
-        "connected to",
+        '"{node}" is a node inside a branch or an assembly: it can be read, not connected to',
         "split the branch in two and name the node, or read it with `reading`",
         "Nodes inside, such as `tip.1` or `column.7.bottom`, are there to be "
         "looked at; connecting to them would change what the branch or assembly "
         "says it is.",
-        (
-            _FRAME + "branch t: a to ground = 1 Ω -- 1 pF\nbranch u: t.1 to ground = 1 Ω",
-        ),
+        (_FRAME + "branch t: a to ground = 1 Ω -- 1 pF\nbranch u: t.1 to ground = 1 Ω",),
     ),
     Code(
         "unknown-let",
         "error",
-        "there is no value or argument \"{unknown}\" to set",
+        'there is no value or argument "{unknown}" to set',
         "{hint}",
         "Values can be set from outside by the names that `let` gives them, and "
         "arguments of places as place.argument.",
@@ -320,20 +287,18 @@ MEANING: tuple[Code, ...] = (
     Code(
         "override-form",
         "error",
-        "the value given for \"{name_}\" is no single value",
+        'the value given for "{name_}" is no single value',
         "write a number with its unit, as in 12 mm",
         "A value set from outside is written as in a `let` statement.",
     ),
     Code(
         "source-outside",
         "error",
-        "the source \"{source}\" stands outside `under test`",
+        'the source "{source}" stands outside `under test`',
         "move it into the braces of `under test`",
         "Where a file says what is under test, that is the whole circuit before "
         "it is touched, its sources included.",
-        (
-            _FRAME + "under test { branch u: a to ground = 1 kΩ }",
-        ),
+        (_FRAME + "under test { branch u: a to ground = 1 kΩ }",),
     ),
     Code(
         "source-network",
@@ -342,47 +307,38 @@ MEANING: tuple[Code, ...] = (
         "write `{right}`",
         "A voltage source has its impedance in series (`behind`), a current "
         "source in parallel (`shunted by`).",
-        (
-            _FRAME + "source i: b to ground = 1 A behind 50 Ω",
-        ),
+        (_FRAME + "source i: b to ground = 1 A behind 50 Ω",),
     ),
     Code(
         "source-twice",
         "error",
-        "the source \"{source}\" stands twice in this drive",
+        'the source "{source}" stands twice in this drive',
         "keep one of them, with the sum of the weights",
         "A drive gives each source one weight.",
-        (
-            _FRAME + "drive d: s by 1, s by 2",
-        ),
+        (_FRAME + "drive d: s by 1, s by 2",),
     ),
     Code(
         "mixed-drive",
         "error",
-        "the source \"{source}\" is in {unit}, the others of this drive in {other}",
+        'the source "{source}" is in {unit}, the others of this drive in {other}',
         "make two drives",
         "Results are per unit of a drive, so the sources that move together must "
         "all be in volts or all in amperes.",
-        (
-            _FRAME + "source i: a to ground = 1 A\ndrive d: s by 1, i by 1",
-        ),
+        (_FRAME + "source i: a to ground = 1 A\ndrive d: s by 1, i by 1",),
     ),
     Code(
         "coupling-without-inductor",
         "error",
-        "\"{word}\" is no inductor and has none in it",
+        '"{word}" is no inductor and has none in it',
         "couple inductors: BRANCH.L",
         "Magnetic coupling is between two inductors, named as parts (`tip.L`) or "
         "by a branch that holds just one.",
-        (
-            _FRAME + "branch t: a to ground = 1 Ω\nbranch u: a to ground = 1 nH\ncoupling k: "
-            "t with u = 0.1",
-        ),
+        (_FRAME + "branch t: a to ground = 1 Ω\nbranch u: a to ground = 1 nH\ncoupling k: t with u = 0.1",),
     ),
     Code(
         "coupling-ambiguous",
         "error",
-        "there are several inductors in \"{word}\": {names}",
+        'there are several inductors in "{word}": {names}',
         "name the one you mean",
         "A branch can be named in a coupling only if it holds a single inductor.",
         (
@@ -393,12 +349,10 @@ MEANING: tuple[Code, ...] = (
     Code(
         "coupling-itself",
         "error",
-        "\"{inductor}\" cannot be coupled to itself",
+        '"{inductor}" cannot be coupled to itself',
         "",
         "A coupling takes two different inductors.",
-        (
-            _FRAME + "branch t: a to ground = 1 nH\ncoupling k: t.L with t = 0.1",
-        ),
+        (_FRAME + "branch t: a to ground = 1 nH\ncoupling k: t.L with t = 0.1",),
     ),
     Code(
         "coupling-twice",
@@ -418,15 +372,12 @@ MEANING: tuple[Code, ...] = (
         "",
         "The mutual inductance of two coils is at most the geometric mean of "
         "their inductances: a coefficient of 1.",
-        (
-            _FRAME + "branch t: a to ground = 1 nH\nbranch u: a to ground = 1 nH\ncoupling "
-            "k: t with u = 1.1",
-        ),
+        (_FRAME + "branch t: a to ground = 1 nH\nbranch u: a to ground = 1 nH\ncoupling k: t with u = 1.1",),
     ),
     Code(
         "field-twice",
         "error",
-        "the field \"{field}\" is given twice",
+        'the field "{field}" is given twice',
         "keep one of them",
         "Each field of a stock or an amplifier may be given once.",
         (
@@ -452,8 +403,7 @@ MEANING: tuple[Code, ...] = (
         "error",
         "{given} needs {missing}",
         "",
-        "Impedance and velocity belong together; an amplifier needs a gain or a "
-        "transconductance.",
+        "Impedance and velocity belong together; an amplifier needs a gain or a transconductance.",
         (
             _FRAME + "stock k { impedance 50 Ω }\ncable c: a, ground to b, ground = 1 m of k",
             _FRAME + "amplifier u: a, ground to b, ground { delay 1 ns }",
@@ -467,9 +417,7 @@ MEANING: tuple[Code, ...] = (
         "Most fields have one value; skin, attenuation and common_mode have a "
         "value and the frequency it holds at, poles and zeros a list of "
         "frequencies, each with `q` for a pair.",
-        (
-            _FRAME + "stock k { skin 1 Ω/m }\ncable c: a, ground to b, ground = 1 m of k",
-        ),
+        (_FRAME + "stock k { skin 1 Ω/m }\ncable c: a, ground to b, ground = 1 m of k",),
     ),
     Code(
         "attenuation-too-small",
@@ -488,26 +436,19 @@ MEANING: tuple[Code, ...] = (
         "shield-without-fields",
         "error",
         "the shield ends on different nodes, {near} and {far}, but the stock "
-        "\"{stock}\" says nothing about a shield",
-        "give the stock shield_resistance or shield_inductance, or end the shield "
-        "on one node",
+        '"{stock}" says nothing about a shield',
+        "give the stock shield_resistance or shield_inductance, or end the shield on one node",
         "A cable whose shield joins two nodes is a conductor between them. "
         "Without its resistance or inductance it would be a short.",
-        (
-            _FRAME + "stock k { capacitance 1 pF/m; resistance 1 Ω/m }\ncable c: a, ground "
-            "to b, e = 1 m of k",
-        ),
+        (_FRAME + "stock k { capacitance 1 pF/m; resistance 1 Ω/m }\ncable c: a, ground to b, e = 1 m of k",),
     ),
     Code(
         "too-many-zeros",
         "error",
         "more zeros than poles",
         "give as many poles as zeros",
-        "The gain of an amplifier cannot grow without bound with frequency. A "
-        "pair counts as two.",
-        (
-            _FRAME + "amplifier u: a, ground to b, ground { gain 1; zeros 1 MHz }",
-        ),
+        "The gain of an amplifier cannot grow without bound with frequency. A pair counts as two.",
+        (_FRAME + "amplifier u: a, ground to b, ground { gain 1; zeros 1 MHz }",),
     ),
     Code(
         "misplaced",
@@ -521,7 +462,7 @@ MEANING: tuple[Code, ...] = (
         (
             _FRAME + "omit s",
             _FRAME + "assembly x(p to q) { reading m: p to q }",
-            _FRAME + "case x { include \"y.nodal\" }",
+            _FRAME + 'case x { include "y.nodal" }',
             _FRAME + "case nominal { let x = 1 }",
         ),
     ),
@@ -530,11 +471,8 @@ MEANING: tuple[Code, ...] = (
         "error",
         "`{kind}` is given twice",
         "keep one of them",
-        "A design has one title, one sweep, one edge or step, and one "
-        "temperature; a case may have its own.",
-        (
-            _FRAME + "sweep 1 Hz to 2 Hz, 3 per decade\nsweep 1 Hz to 3 Hz, 3 per decade",
-        ),
+        "A design has one title, one sweep, one edge or step, and one temperature; a case may have its own.",
+        (_FRAME + "sweep 1 Hz to 2 Hz, 3 per decade\nsweep 1 Hz to 3 Hz, 3 per decade",),
     ),
     Code(
         "range-reversed",
@@ -542,9 +480,7 @@ MEANING: tuple[Code, ...] = (
         "the range from {low} to {high} is empty",
         "write the lower frequency first",
         "A sweep or range of frequencies runs upward.",
-        (
-            _FRAME + "sweep 2 Hz to 1 Hz, 3 per decade",
-        ),
+        (_FRAME + "sweep 2 Hz to 1 Hz, 3 per decade",),
     ),
     Code(
         "outside-window",
@@ -552,9 +488,7 @@ MEANING: tuple[Code, ...] = (
         "{time} is beyond the time watched, {window}",
         "watch for longer: `over TIME`",
         "The edge, and the time at which the top is read, lie within the time watched.",
-        (
-            _FRAME + "edge 2 ns over 1 ns",
-        ),
+        (_FRAME + "edge 2 ns over 1 ns",),
     ),
     Code(
         "sweep-too-long",
@@ -562,9 +496,7 @@ MEANING: tuple[Code, ...] = (
         "the sweep has more than {limit} points",
         "take fewer points per decade",
         "The number of frequencies in a sweep is limited.",
-        (
-            _FRAME + "sweep 1 Hz to 1 GHz, 1e9 per decade",
-        ),
+        (_FRAME + "sweep 1 Hz to 1 GHz, 1e9 per decade",),
     ),
     Code(
         "too-many-parts",
@@ -573,10 +505,7 @@ MEANING: tuple[Code, ...] = (
         "",
         "The number of parts, places and sections of chains is limited. It is "
         "counted before anything is built.",
-        (
-            _FRAME + "assembly x(p to q) { branch r: p to q = 1 Ω }\nchain c: 1000000000 of "
-            "x(a to ground)",
-        ),
+        (_FRAME + "assembly x(p to q) { branch r: p to q = 1 Ω }\nchain c: 1000000000 of x(a to ground)",),
     ),
     Code(
         "too-much-text",
@@ -587,9 +516,16 @@ MEANING: tuple[Code, ...] = (
         "differs from the others. The length of all that is limited, so that a short text cannot ask for "
         "endless work.",
         (
-            _FRAME + "assembly x(p to q) { branch r: p to q = 1 Ω" + " + 0 Ω" * 2000 + " }\n"
-            + "assembly y(p to q) { " + "; ".join(f"place u{i}: x(p to q)" for i in range(40)) + " }\n"
-            + "assembly z(p to q) { " + "; ".join(f"place u{i}: y(p to q)" for i in range(40)) + " }\n"
+            _FRAME
+            + "assembly x(p to q) { branch r: p to q = 1 Ω"
+            + " + 0 Ω" * 2000
+            + " }\n"
+            + "assembly y(p to q) { "
+            + "; ".join(f"place u{i}: x(p to q)" for i in range(40))
+            + " }\n"
+            + "assembly z(p to q) { "
+            + "; ".join(f"place u{i}: y(p to q)" for i in range(40))
+            + " }\n"
             + "place c: z(a to ground)",
         ),
     ),
@@ -601,9 +537,16 @@ MEANING: tuple[Code, ...] = (
         "The nodes by which places and sections of chains are connected are counted, each as often as it is "
         "named. Their number is limited.",
         (
-            _FRAME + "assembly x(" + ", ".join(f"p{i}" for i in range(60)) + " to "
-            + ", ".join(f"q{i}" for i in range(60)) + ") { branch r: p1 to q1 = 1 Ω }\nchain c: 100000 of x("
-            + ", ".join(["a"] * 60) + " to " + ", ".join(["b"] * 60) + ")",
+            _FRAME
+            + "assembly x("
+            + ", ".join(f"p{i}" for i in range(60))
+            + " to "
+            + ", ".join(f"q{i}" for i in range(60))
+            + ") { branch r: p1 to q1 = 1 Ω }\nchain c: 100000 of x("
+            + ", ".join(["a"] * 60)
+            + " to "
+            + ", ".join(["b"] * 60)
+            + ")",
         ),
     ),
     Code(
@@ -612,9 +555,7 @@ MEANING: tuple[Code, ...] = (
         "`=` needs a tolerance",
         "write = VALUE ± TOLERANCE",
         "Computed figures are never exactly equal to a number; say how near is near enough.",
-        (
-            _FRAME + "reading m: a to ground\nrequire w: gain(m) at 1 Hz = 1",
-        ),
+        (_FRAME + "reading m: a to ground\nrequire w: gain(m) at 1 Hz = 1",),
     ),
     Code(
         "figure-arguments",
@@ -624,9 +565,7 @@ MEANING: tuple[Code, ...] = (
         "Each figure takes certain arguments, in this order; what stands in "
         "brackets may be left out. `nodal explain` of a figure's name is in the "
         "reference.",
-        (
-            _FRAME + "reading m: a to ground\nrequire w: gain() at 1 Hz >= 1",
-        ),
+        (_FRAME + "reading m: a to ground\nrequire w: gain() at 1 Hz >= 1",),
     ),
     Code(
         "figure-argument-kind",
@@ -634,9 +573,7 @@ MEANING: tuple[Code, ...] = (
         "{wanted} is expected here",
         "",
         "Readings, contacts and drives are given to figures by name.",
-        (
-            _FRAME + "reading m: a to ground\nrequire w: gain(3 Hz) at 1 Hz >= 1",
-        ),
+        (_FRAME + "reading m: a to ground\nrequire w: gain(3 Hz) at 1 Hz >= 1",),
     ),
     Code(
         "figure-range",
@@ -658,9 +595,7 @@ MEANING: tuple[Code, ...] = (
         "leave `with` out",
         "The impedance seen at a contact and the noise of a reading do not depend "
         "on which source moves; rejection names its drives itself.",
-        (
-            _FRAME + "require w: impedance(s) with s at 1 Hz >= 1 Ω",
-        ),
+        (_FRAME + "require w: impedance(s) with s at 1 Hz >= 1 Ω",),
     ),
     Code(
         "which-drive",
@@ -669,37 +604,28 @@ MEANING: tuple[Code, ...] = (
         "write `with DRIVE`, or declare a drive; there are: {names}",
         "With several sources the first `drive` is the default; without any drive "
         "each requirement says which one it is about.",
-        (
-            _FRAME + "source t: b to ground = 1 V\nreading m: a to ground\nrequire w: "
-            "gain(m) at 1 Hz >= 1",
-        ),
+        (_FRAME + "source t: b to ground = 1 V\nreading m: a to ground\nrequire w: gain(m) at 1 Hz >= 1",),
     ),
     Code(
         "not-a-formal-node",
         "error",
-        "\"{node}\" cannot be a node of an assembly's own",
+        '"{node}" cannot be a node of an assembly\'s own',
         "write a plain name; ground is the same everywhere",
-        "The nodes in an assembly's parentheses are its own names for what it is "
-        "connected to.",
-        (
-            _FRAME + "assembly x(ground to q) { branch r: ground to q = 1 Ω }",
-        ),
+        "The nodes in an assembly's parentheses are its own names for what it is connected to.",
+        (_FRAME + "assembly x(ground to q) { branch r: ground to q = 1 Ω }",),
     ),
     Code(
         "wrong-nodes-of-use",
         "error",
         "{assembly} has {wanted} {where}, here it has {found}",
         "",
-        "An assembly is used with as many nodes before `to`, after `to` and after "
-        "`with` as it declares.",
-        (
-            _FRAME + "assembly x(p to q) { branch r: p to q = 1 Ω }\nplace u: x(a, b to ground)",
-        ),
+        "An assembly is used with as many nodes before `to`, after `to` and after `with` as it declares.",
+        (_FRAME + "assembly x(p to q) { branch r: p to q = 1 Ω }\nplace u: x(a, b to ground)",),
     ),
     Code(
         "argument-twice",
         "error",
-        "the argument \"{argument}\" is given twice",
+        'the argument "{argument}" is given twice',
         "keep one of them",
         "Each parameter of an assembly takes one value.",
         (
@@ -710,12 +636,10 @@ MEANING: tuple[Code, ...] = (
     Code(
         "argument-missing",
         "error",
-        "the argument \"{argument}\" of {assembly} is missing",
+        'the argument "{argument}" of {assembly} is missing',
         "write {argument} = VALUE after the `;`",
         "A parameter without a default has to be given wherever the assembly is used.",
-        (
-            _FRAME + "assembly x(p to q; v) { branch r: p to q = v }\nplace u: x(a to ground)",
-        ),
+        (_FRAME + "assembly x(p to q; v) { branch r: p to q = v }\nplace u: x(a to ground)",),
     ),
     Code(
         "assembly-recursion",
@@ -723,9 +647,7 @@ MEANING: tuple[Code, ...] = (
         "this assembly uses itself: {names}",
         "",
         "An assembly may be built from others, but not from itself.",
-        (
-            _FRAME + "assembly x(p to q) { place y: x(p to q) }",
-        ),
+        (_FRAME + "assembly x(p to q) { place y: x(p to q) }",),
     ),
     Code(
         "assembly-too-deep",
@@ -734,7 +656,8 @@ MEANING: tuple[Code, ...] = (
         "",
         "Assemblies within assemblies are limited in depth.",
         (
-            _FRAME + "".join(f"assembly x{i}(p to q) {{ place y: x{i + 1}(p to q) }}\n" for i in range(60))
+            _FRAME
+            + "".join(f"assembly x{i}(p to q) {{ place y: x{i + 1}(p to q) }}\n" for i in range(60))
             + "assembly x60(p to q) { branch r: p to q = 1 Ω }",
         ),
     ),
@@ -764,14 +687,12 @@ MEANING: tuple[Code, ...] = (
     Code(
         "include-outside",
         "error",
-        "\"{target}\" is outside {root}",
+        '"{target}" is outside {root}',
         "",
         "Included files stay inside the repository, or the folder of the first "
         "file where that is in none; symbolic links are followed before this is "
         "checked.",
-        (
-            _FRAME + "include \"../../../../../../../../../../../../../../../../../../etc/x.nodal\"",
-        ),
+        (_FRAME + 'include "../../../../../../../../../../../../../../../../../../etc/x.nodal"',),
     ),
     Code(
         "include-loop",
@@ -790,12 +711,10 @@ MEANING: tuple[Code, ...] = (
     Code(
         "include-unreadable",
         "error",
-        "\"{target}\" cannot be included: {reason}",
+        '"{target}" cannot be included: {reason}',
         "",
         "The included file cannot be opened or is no text.",
-        (
-            _FRAME + "include \"no_such_file.nodal\"",
-        ),
+        (_FRAME + 'include "no_such_file.nodal"',),
     ),
     Code(
         "spread-below-zero",
@@ -814,21 +733,17 @@ MEANING: tuple[Code, ...] = (
     Code(
         "unused-let",
         "warning",
-        "the value \"{unused}\" is not used",
+        'the value "{unused}" is not used',
         "use it, delete it, or write: allow unused-let: {unused}",
         "A named value that nothing uses is often a misspelling elsewhere.",
-        (
-            _FRAME + "let x = 1 Ω",
-        ),
+        (_FRAME + "let x = 1 Ω",),
     ),
     Code(
         "unused-stock",
         "warning",
-        "the stock \"{unused}\" is not used",
+        'the stock "{unused}" is not used',
         "use it, delete it, or write: allow unused-stock: {unused}",
         "No cable is cut from this stock.",
-        (
-            _FRAME + "stock k { capacitance 1 pF/m }",
-        ),
+        (_FRAME + "stock k { capacitance 1 pF/m }",),
     ),
 )
