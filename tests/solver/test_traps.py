@@ -222,7 +222,7 @@ def test_a_difference_fifty_digits_below_its_voltages():
 
 
 def test_a_difference_beyond_the_digits_of_its_pair():
-    """Nodes alike to 22 digits at the top of a plan for 16 decades: flagged or right (many-digit reference)."""
+    """Nodes alike to 22 digits at the top of a plan for 16 decades: flagged or right (many digits)."""
     net = Sketch(12)
     net.inductor(1, 0, 4.465363456351825e-05)
     net.inductor(2, 1, 0.1595823594175724)
