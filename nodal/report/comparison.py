@@ -21,7 +21,7 @@ from nodal.studies.compare import Change, Comparison, Judged, Moved
 from nodal.studies.facts import ROUNDING, distinct
 
 _WHOLE = ("added", "gone", "renamed")
-FRACTIONS = ("flatness", "peaking", "error", "disturbance")
+FRACTIONS = ("flatness", "peaking", "error", "disturbance", "overshoot", "preshoot", "droop")
 """Figures that are parts of one, shown in percent: how far they moved is told in percentage points."""
 _STYLES = {"pass": "green", "fail": "red", "error": "red"}
 
