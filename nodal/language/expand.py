@@ -122,7 +122,7 @@ class _Expansion:
             self.idle_stocks()
         except TooLarge:
             network = None
-        failed = any(finding.severity == "error" for finding in self.collector.found[self.before :])
+        failed = self.failed_since(self.before)
         lets = {name: let.value for name, let in self.scope.lets.items() if let.value is not None}
         return Expanded(None if failed else network, self.used_names | self.scope.used, lets, self.uses)
 
@@ -196,13 +196,26 @@ class _Expansion:
 
     def parts(self) -> None:
         for item in self.items:
-            statement = item.statement
+            statement, before = item.statement, len(self.collector.found)
             self.top.side = "test" if item.under_test else "chain"
             if isinstance(statement, syntax.Source):
                 self.guarded(self.source, statement, item)
             else:
                 self.guarded(self.piece, statement, self.top)
+            name = name_of(statement)
+            if name is not None and self.failed_since(before):
+                self.evaluator.lost |= {name.text}  # what should be inside is missing, and that has been said
         self.top.side = "chain"
+
+    def failed_since(self, before: int) -> bool:
+        """Whether an error is among the findings from this one on."""
+        return any(finding.severity == "error" for finding in self.collector.found[before:])
+
+    def name_nodes(self, use: syntax.Use, frame: Frame) -> None:
+        """The nodes of a use exist, whatever may be wrong with it."""
+        for word in (*use.left, *use.right, *use.shared):
+            if "." not in word.text:
+                frame.node(word)
 
     def piece(self, statement: syntax.Statement, frame: Frame) -> None:
         """Statements that may stand in an assembly too."""
@@ -296,6 +309,7 @@ class _Expansion:
 
     def place(self, place: syntax.Place, frame: Frame) -> None:
         name = frame.prefix + place.name.text
+        self.name_nodes(place.use, frame)
         assembly = self.assembly(place.use)
         arguments = evaluate_arguments(place.use, assembly, frame, self.overridden(name, assembly))
         left, right, shared = bind_nodes(place.use, assembly, frame)
@@ -309,6 +323,7 @@ class _Expansion:
 
     def chain(self, chain: syntax.Chain, frame: Frame) -> None:
         name = frame.prefix + chain.name.text
+        self.name_nodes(chain.use, frame)
         assembly = self.assembly(chain.use)
         count = section_count(chain, self.evaluator, frame.scope)
         if len(assembly.left) != len(assembly.right):
@@ -379,7 +394,7 @@ class _Expansion:
                 if parts + added * count * self.pending > MOST_PARTS:
                     self.evaluator.report("too-many-parts", chain.count.span, limit=f"{MOST_PARTS:,}")
                     raise TooLarge
-            if any(finding.severity == "error" for finding in self.collector.found[errors:]):
+            if self.failed_since(errors):
                 break  # the other sections would say the same
 
     def check_effort(self, assembly: syntax.Assembly, count: int, span: syntax.Span) -> None:

@@ -421,6 +421,9 @@ class _Run:
     def _help(self, begin: int, lexeme: Lexeme, expected: set[str], block: str) -> str:
         word = self.lexemes[begin].text
         if lexeme.type in ("NUMBER", "NAME", "DOTTED", "LPAR") and expected & _OPERATORS:
+            at = self.lexemes.index(lexeme, begin)
+            if at - begin >= 2 and self.lexemes[at - 1].text in FORMS and self.lexemes[at - 2].type in _OPERATORS:
+                return f'the line before ends in "{self.lexemes[at - 2].text}" and so goes on here'
             return "between two values stands an operator: ∥ (or ||), --, +, -, * or /"
         if lexeme.type == "NUMBER" and "NAME" in expected:
             return "a name begins with a letter"

@@ -219,6 +219,24 @@ def test_mistakes_inside_show_the_place_of_use_and_are_said_once() -> None:
     assert whole[use.start : use.end] == "x(a to ground)"
 
 
+@pytest.mark.parametrize(
+    ("statement", "code"),
+    [
+        ("place p: section(a to b with ground; r = 1 V)", "wrong-dimension"),
+        ("place p: section(a to b with ground; r = 1 Ω, q = 1)", "unknown-name"),
+        ("place p: section(a to b; r = 1 Ω)", "wrong-nodes-of-use"),
+        ("place p: sectoin(a to b; r = 1 Ω)", "unknown-name"),
+        ("chain p: 0 of section(a to b with ground; r = 1 Ω)", "section-count"),
+    ],
+)
+def test_what_follows_from_a_mistake_in_a_use_is_not_said(statement: str, code: str) -> None:
+    """That its nodes, inner nodes and parts are missing."""
+    text = SECTION + f"{statement}\nreading m: b to p.leak.1\nreading n: p.2.bottom to ground\n"
+    text += "branch l: b to ground = 1 nH\nreading o: b to nowhere\n"
+    assert [f.code for f in run(text)[1]] == [code, "unknown-name"]
+    assert "nowhere" in run(text)[1][-1].message
+
+
 # Cases
 
 BASE = """let l = 110 mm
