@@ -422,8 +422,10 @@ class _Run:
         word = self.lexemes[begin].text
         if lexeme.type in ("NUMBER", "NAME", "DOTTED", "LPAR") and expected & _OPERATORS:
             at = self.lexemes.index(lexeme, begin)
-            if at - begin >= 2 and self.lexemes[at - 1].text in FORMS and self.lexemes[at - 2].type in _OPERATORS:
-                return f'the line before ends in "{self.lexemes[at - 2].text}" and so goes on here'
+            if at >= begin + 2 and self.lexemes[at - 1].text in FORMS:  # a statement taken for a value
+                joint, taken = self.lexemes[at - 2 : at]
+                if joint.type in _OPERATORS:
+                    return f'no value stands between "{joint.text}" and "{taken.text}"; such a line goes on'
             return "between two values stands an operator: ∥ (or ||), --, +, -, * or /"
         if lexeme.type == "NUMBER" and "NAME" in expected:
             return "a name begins with a letter"

@@ -55,6 +55,7 @@ def test_every_code_of_a_text_has_examples() -> None:
         ("let é = 3", "name-form", "é", "write e"),
         ("brnch a: b to c = 1 Ω", "unknown-statement", "brnch", "did you mean branch"),
         ("branch a: b to c = 1 Ω 2 Ω", "syntax", "2 Ω", "operator"),
+        ("branch a: b to c = 1 Ω --\nbranch d: b to c = 1 Ω", "syntax", "d", 'between "--" and "branch"'),
         ("branch a: b, c = 1 Ω", "syntax", ",", "branch NAME: NODE to NODE = NETWORK"),
         ("branch a: b = 1 Ω", "node-count", "=", "NODE to NODE"),
         ("cable c: a to b = 1 m of s", "node-count", "to", "CORE, SHIELD to CORE, SHIELD"),
