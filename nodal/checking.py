@@ -6,9 +6,11 @@ included by others: only its text is checked.
 
 from __future__ import annotations
 
+import contextlib
 import multiprocessing
 import os
 import signal
+import threading
 from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import Future, ProcessPoolExecutor
 from concurrent.futures.process import BrokenProcessPool
@@ -241,22 +243,39 @@ def _each(work: Callable[[str], _Answer], paths: Sequence[str], jobs: int | None
         return
     methods = multiprocessing.get_all_start_methods()
     context = multiprocessing.get_context("forkserver" if "forkserver" in methods else "spawn")
-    if "forkserver" in methods:
-        context.set_forkserver_preload(["nodal.checking", "nodal.measured"])
+    others = set(multiprocessing.active_children())
     pool = ProcessPoolExecutor(workers, context, initializer=_start)
     try:
-        # Standard input belongs to this process.
-        started: list[Future[_Answer] | None] = [
-            None if path == STANDARD_INPUT else pool.submit(work, path) for path in paths
-        ]
+        with _uninterrupted():
+            # Standard input belongs to this process.
+            started: list[Future[_Answer] | None] = [
+                None if path == STANDARD_INPUT else pool.submit(work, path) for path in paths
+            ]
         for path, future in zip(paths, started, strict=True):
             yield work(path) if future is None else future.result()
     except BrokenProcessPool as error:
         collector = Collector()
         collector.add("process-died", None)
         raise DesignError(collector.found, {}) from error
+    except BaseException:
+        for child in set(multiprocessing.active_children()) - others:
+            child.terminate()
+        raise
     finally:
         pool.shutdown(wait=False, cancel_futures=True)
+
+
+@contextlib.contextmanager
+def _uninterrupted() -> Iterator[None]:
+    """Processes that are started in here are not interrupted from the terminal before they are set up."""
+    if threading.current_thread() is not threading.main_thread():
+        yield
+        return
+    handler = signal.signal(signal.SIGINT, signal.SIG_IGN)
+    try:
+        yield
+    finally:
+        signal.signal(signal.SIGINT, handler)
 
 
 def _start() -> None:

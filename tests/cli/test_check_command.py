@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import math
 import os
+import signal
 import subprocess
 import sys
 from pathlib import Path
@@ -390,3 +391,20 @@ def test_nothing_to_record(folder) -> None:
     assert result.exit_code == 0
     assert "nothing to record" in result.stdout
     assert not (folder / "probe.figures.toml").exists()
+
+
+@pytest.mark.parametrize("everyone", [True, False])
+def test_an_interrupt_ends_it_without_a_word(folder, everyone) -> None:
+    """A worker waits for a file that never comes: a pipe, held open by the test."""
+    os.mkfifo(folder / "pipe.nodal")
+    for name in ("x.nodal", "y.nodal"):
+        (folder / name).write_text(LOW_PASS)
+    command = [sys.executable, "-m", "nodal", "check", "x.nodal", "y.nodal", "pipe.nodal", "-j", "2"]
+    pipes = {"stdout": subprocess.PIPE, "stderr": subprocess.PIPE}
+    with (
+        subprocess.Popen(command, cwd=folder, text=True, start_new_session=True, **pipes) as process,
+        (folder / "pipe.nodal").open("w"),  # opens once a worker reads
+    ):
+        (os.killpg if everyone else os.kill)(process.pid, signal.SIGINT)
+        out, err = process.communicate()
+    assert (process.returncode, out, err) == (130, "", "")
