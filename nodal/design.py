@@ -9,7 +9,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
 from typing import TYPE_CHECKING, Any
@@ -86,11 +86,9 @@ class Design:
     def network(self, case: str | None = None, **lets: float | str) -> Model:
         """The network of a case (None: nominal), ready to be evaluated.
 
-        `lets` set values in place of what the file or the case says: a number in SI units, or text ("12 mm ±
-        1 mm").
-        Arguments of places have dotted names: `design.network(**{"n.skew": 0.01})`. Raises DesignError where
-        that
-        gives no network, KeyError for a case that does not exist.
+        `lets` set values in place of what the file or the case says: a number in SI units, or text
+        ("12 mm ± 1 mm"). Arguments of places have dotted names: `design.network(**{"n.skew": 0.01})`. Raises DesignError
+        where that gives no network, KeyError for a case that does not exist.
         """
         case = case or NOMINAL
         if case not in self.cases:
@@ -241,6 +239,9 @@ class Model:
     diagnostics: tuple[Diagnostic, ...] = field(default=(), compare=False)
     """Warnings and notes that the design has not, because of values given in a call."""
 
+    def __repr__(self) -> str:
+        return f"<Model {self.network.title!r}, case {self.case}, {len(self.network.parts)} parts>"
+
     @cached_property
     def response(self) -> Response:
         """Curves at any frequency, planned once."""
@@ -251,9 +252,13 @@ class Model:
     def sweep(self, frequencies: ArrayLike, *, drive: str | None = None) -> Sweep:
         """Readings, contacts and nodes at `frequencies` (Hz, any shape, 0 included), per unit of the drive.
 
-        Raises KeyError for a drive that does not exist, ValueError where a drive has to be chosen.
+        Raises KeyError for a drive that does not exist, ValueError where a drive has to be chosen or a
+        frequency is negative or not finite.
         """
-        return Sweep(self, np.asarray(frequencies, dtype=np.float64), self.drive(drive))
+        f = np.asarray(frequencies, dtype=np.float64)
+        if not (np.isfinite(f) & (f >= 0)).all():
+            raise ValueError("frequencies have to be finite numbers of hertz, zero or more")
+        return Sweep(self, f, self.drive(drive))
 
     def edge(
         self, *, drive: str | None = None, ramp: float | None = None, window: float | None = None
@@ -299,30 +304,48 @@ class Model:
 
 @dataclass(frozen=True)
 class Sweep:
-    """Curves at the given frequencies; complex arrays of their shape, per unit of the drive. KeyError: no
-    such name."""
+    """Curves at the given frequencies; complex arrays of their shape, per unit of the drive.
+
+    A name that does not exist is a KeyError that says which is nearest.
+    """
 
     model: Model
     frequencies: NDArray[np.float64]
     """Hz."""
     drive: str
 
+    def __repr__(self) -> str:
+        return f"<Sweep of {self.model!r}, {self.frequencies.size} frequencies, drive {self.drive}>"
+
     def reading(self, name: str) -> NDArray[np.complex128]:
         """What a reading displays, `times` included."""
+        _known("reading", name, [reading.name for reading in self.model.network.readings])
         return self.model.response.reading(self.frequencies, name, self.drive).values
 
     def voltage(self, node: str) -> NDArray[np.complex128]:
         """V: a node against ground."""
+        _known("node", node, self.model.network.nodes)
         return self.model.response.node(self.frequencies, node, self.drive).values
 
     def impedance(self, contact: str) -> NDArray[np.complex128]:
         """Ω: the chain alone seen at a contact."""
+        self._contact(contact)
         return self.model.response.impedance(self.frequencies, contact).values
 
     def loaded(self, contact: str) -> NDArray[np.complex128]:
         """V: at a contact with the chain connected."""
+        self._contact(contact)
         return self.model.response.loaded(self.frequencies, contact, self.drive).values
 
     def undisturbed(self, contact: str) -> NDArray[np.complex128]:
         """V: at a contact of the circuit alone. Raises `nodal.response.Unavailable` where there is none."""
+        self._contact(contact)
         return self.model.response.undisturbed(self.frequencies, contact, self.drive).values
+
+    def _contact(self, name: str) -> None:
+        _known("contact", name, [contact.name for contact in self.model.network.contacts])
+
+
+def _known(kind: str, name: str, names: Sequence[str]) -> None:
+    if name not in names:
+        raise KeyError(f"no {kind} {name!r}; {nearest(name, names)}")

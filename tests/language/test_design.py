@@ -161,3 +161,16 @@ def test_unknown_cases_and_drives() -> None:
         design.network().sweep([1.0])
     with pytest.raises(KeyError, match="drive"):
         design.network().sweep([1.0], drive="q")
+
+
+def test_unknown_names_and_frequencies_of_a_sweep_are_told():
+    model = nodal.loads("nodal 1\nsource s: tip to ground = 1 V\nreading screen: tip to ground\n").network()
+    sweep = model.sweep([1.0])
+    assert len(repr(model)) < 100
+    assert len(repr(sweep)) < 200
+    for ask in (lambda: sweep.reading("scren"), lambda: sweep.voltage("tp"), lambda: sweep.impedance("ss")):
+        with pytest.raises(KeyError, match=r"no .* '.*'; "):
+            ask()
+    for wrong in (-1.0, float("nan"), float("inf")):
+        with pytest.raises(ValueError, match="zero or more"):
+            model.sweep([1.0, wrong])
