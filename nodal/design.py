@@ -87,8 +87,8 @@ class Design:
         """The network of a case (None: nominal), ready to be evaluated.
 
         `lets` set values in place of what the file or the case says: a number in SI units, or text
-        ("12 mm ± 1 mm"). Arguments of places have dotted names: `design.network(**{"n.skew": 0.01})`. Raises DesignError
-        where that gives no network, KeyError for a case that does not exist.
+        ("12 mm ± 1 mm"). Arguments of places have dotted names: `design.network(**{"n.skew": 0.01})`. Raises
+        DesignError where that gives no network, KeyError for a case that does not exist.
         """
         case = case or NOMINAL
         if case not in self.cases:
