@@ -199,7 +199,7 @@ def held_together(network: Network, parts: Iterable[Part]) -> list[int]:
 
 
 def references(network: Network, parts: Sequence[Part], held: Sequence[int]) -> list[tuple[int, int]]:
-    """Pairs to merge so that every floating piece of one side has a reference (design §2.6).
+    """Pairs to merge so that every floating piece of one side has a reference.
 
     That is the second node of a contact where it has one, which counts as ground; a piece that a contact
     touches with its first node alone stands at the voltage of the second.

@@ -2,7 +2,7 @@
 
 A `Response` turns a `Network` into systems once (the whole network; the circuit under test alone; the chain
 alone), plans each once, and evaluates at any array of frequencies in Hz; 0 is the limit as the frequency
-goes to zero. Everything is per unit of the drive (design §2.4: amplitudes are the drive's weights).
+goes to zero. Everything is per unit of the drive: amplitudes are the drive's weights.
 """
 
 from __future__ import annotations
@@ -432,7 +432,7 @@ class Response:
         return run.solve(self._test, [self._excited(self._test, drive)], outputs)[0]
 
     def change(self, frequencies: ArrayLike, contact: str, drive: str | None = None) -> Curve:
-        """(loaded - undisturbed) / undisturbed, computed as such (design §2.6), never as a difference.
+        """(loaded - undisturbed) / undisturbed, computed as such, never as a difference.
 
         Where the chain joins nodes of the circuit without any impedance the change is no small one, and the
         difference serves. Raises `Unavailable` where there is no undisturbed voltage.
