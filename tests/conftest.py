@@ -2,7 +2,11 @@
 
 from __future__ import annotations
 
+import os
+
 from hypothesis import HealthCheck, Phase, settings
+
+os.environ["COLUMNS"] = "100"  # tables are as wide here as on any terminal
 
 settings.register_profile(
     "repeatable",
